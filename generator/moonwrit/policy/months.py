@@ -1,0 +1,98 @@
+"""The month as a policy yields it, with its basis, margin, standing and evidence."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from datetime import date, datetime, timedelta
+from typing import Literal
+
+Basis = Literal["arithmetic", "calculated", "sighted", "completed", "adopted", "tabulated"]
+Standing = Literal["expected", "settled", "amended"]
+Closeness = Literal["fixed", "wide", "close", "edge"]
+
+
+@dataclass(frozen=True, slots=True)
+class Margin:
+    """How far the deciding quantity is from the value at which the date would flip.
+
+    ``margin`` = value - threshold in ``unit``, positive where the test is met; ``day_share`` is the
+    same as a share of what the quantity usually changes from one evening to the next (signed).
+    ``closeness``: ``edge`` below 0.02 of a day's change, ``close`` below 0.15, ``wide`` beyond;
+    ``fixed`` where nothing is measured and the date cannot flip (arithmetic, tables): then the
+    numbers are None and ``quantity`` and ``unit`` are empty.
+    """
+
+    quantity: str
+    value: float | None
+    threshold: float | None
+    margin: float | None
+    unit: str
+    day_share: float | None
+    closeness: Closeness
+
+
+@dataclass(frozen=True, slots=True)
+class Finding:
+    """One comparison of the test on the deciding evening. ``frame`` says how the quantity is measured."""
+
+    quantity: str
+    frame: str
+    place: str
+    value: float | None
+    comparison: Literal[">=", ">", "<=", "<"]
+    threshold: float
+    unit: str
+    met: bool
+    margin: float | None
+
+
+@dataclass(frozen=True, slots=True)
+class Evidence:
+    """What the start of a month rests on.
+
+    ``evening`` is the 29th evening of the month before: the one that was asked. ``met`` is the
+    test's answer there (None for arithmetic and tables). ``circumstances`` maps names with units to
+    numbers, or to ISO 8601 UTC strings for instants, None where the event does not happen;
+    it is empty where no sky was asked. ``notes`` are sentences in the site's source language.
+    """
+
+    evening: date
+    met: bool | None
+    place: str | None = None
+    conjunction: datetime | None = None
+    findings: tuple[Finding, ...] = ()
+    circumstances: Mapping[str, float | str | None] = field(default_factory=dict)
+    notes: tuple[str, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Month:
+    """One lunar month. ``eve`` is the civil date on whose evening it begins; ``starts`` the first day."""
+
+    year: int
+    month: int
+    starts: date
+    length: int
+    basis: Basis
+    standing: Standing
+    policy: str
+    margin: Margin
+    evidence: Evidence
+
+    @property
+    def eve(self) -> date:
+        return self.starts - timedelta(days=1)
+
+    @property
+    def ends(self) -> date:
+        """The civil date of the last day, included."""
+        return self.starts + timedelta(days=self.length - 1)
+
+    @property
+    def ordinal(self) -> int:
+        """Months since Muharram of the year 1 (which is 0)."""
+        return (self.year - 1) * 12 + self.month - 1
+
+
+FIXED = Margin("", None, None, None, "", None, "fixed")
