@@ -1,8 +1,9 @@
-"""The circumstances of evenings: the astronomy of crescents at places, as arrays [lunation, evening, place]."""
+"""The circumstances of evenings: the astronomy of crescents, as arrays [lunation, evening, place]."""
 
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 import numpy.typing as npt
@@ -13,6 +14,7 @@ from moonwrit.sky.horizon import (
     MOON_RADIUS_KM,
     STANDARD,
     Crossing,
+    Direction,
     Horizon,
     Places,
     crossing,
@@ -30,9 +32,9 @@ class Instant:
     """Sun and Moon at one instant of each evening; all [lunation, evening, place], NaN without the instant.
 
     Altitudes and azimuths are of the centres, airless unless named otherwise; ``_topo`` as seen from
-    the place, ``_geo`` from the Earth's centre against the place's zenith. ``arcl`` elongation (arc of light),
-    ``arcv`` arc of vision (Moon's altitude minus the Sun's), ``daz`` relative azimuth (Sun's minus the
-    Moon's, -180 to 180). ``width`` in arcmin: semi-diameter x (1 - cos ARCL).
+    the place, ``_geo`` from the Earth's centre against the place's zenith. ``arcl`` elongation (arc of
+    light), ``arcv`` arc of vision (Moon's altitude minus the Sun's), ``daz`` relative azimuth (Sun's minus
+    the Moon's, -180 to 180). ``width`` in arcmin: semi-diameter x (1 - cos ARCL).
     """
 
     tt: Array
@@ -64,65 +66,101 @@ class Instant:
         return airless + refraction_deg(airless) if refracted else airless
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True)
 class Circumstances:
-    """The evenings of civil dates at places; all [lunation, evening, place] unless said.
+    """The evenings of civil dates at places; all arrays [lunation, evening, place] unless said.
 
-    ``day`` [lunation, evening] proleptic Gregorian ordinal of the evening's civil date. ``noon_tt`` the
-    Sun's upper culmination of that date. ``sunset_tt`` is NaN where ``sunset_state`` is not CROSSES;
-    ``moonset_tt`` is the setting after the Moon's culmination nearest to the Sun's, so that it may come
-    before sunset, and ``lag_min`` (moonset minus sunset) is then negative. ``age_h`` counts from the
-    geocentric conjunction to sunset. ``best`` is the best time, sunset + 4/9 lag (Bruin 1977;
-    Yallop 1997), or sunset itself where the Moon sets first or not at all.
+    ``day`` [lunation, evening] proleptic Gregorian ordinal of the evening's civil date: each row's dates
+    must lie inside its window (``windows`` and ``conjunction_tt`` [lunation]). What is asked for is
+    computed once, when first asked for.
     """
 
-    day: Integers
+    sky: Ephemeris
+    windows: Windows
     conjunction_tt: Array
-    noon_tt: Array
-    sunset_tt: Array
-    sunset_state: States
-    moonset_tt: Array
-    moonset_state: States
-    sunset: Instant
-    best: Instant
+    day: Integers
+    places: Places
+    horizon: Horizon = STANDARD
+
+    @cached_property
+    def noon_tt(self) -> Array:
+        """The Sun's upper culmination of the civil date."""
+        return noon_tt(self.sky, self.windows, self.day, self.places)
+
+    @cached_property
+    def _sunset(self) -> tuple[Array, States]:
+        return crossing(self.windows, "sun", "set", self.noon_tt, self.places, self.horizon)
+
+    @cached_property
+    def _moonset(self) -> tuple[Array, States]:
+        moon_noon = culmination(self.windows, "moon", self.noon_tt, self.places)
+        return crossing(self.windows, "moon", "set", moon_noon, self.places, self.horizon)
 
     @property
+    def sunset_tt(self) -> Array:
+        """The evening's sunset; NaN where ``sunset_state`` is not CROSSES."""
+        return self._sunset[0]
+
+    @property
+    def sunset_state(self) -> States:
+        return self._sunset[1]
+
+    @property
+    def moonset_tt(self) -> Array:
+        """The setting after the Moon's culmination nearest to the Sun's; it may come before sunset."""
+        return self._moonset[0]
+
+    @property
+    def moonset_state(self) -> States:
+        return self._moonset[1]
+
+    @cached_property
     def lag_min(self) -> Array:
-        return (self.moonset_tt - self.sunset_tt) * 1440
+        """Moonset minus sunset in minutes: negative where the Moon sets first; plus or minus infinity where
+        it stays above or below the horizon; NaN without a sunset."""
+        lag = (self.moonset_tt - self.sunset_tt) * 1440
+        lag = np.where(self.moonset_state == Crossing.STAYS_ABOVE, np.inf, lag)
+        lag = np.where(self.moonset_state == Crossing.STAYS_BELOW, -np.inf, lag)
+        return np.where(np.isnan(self.sunset_tt), np.nan, lag)
 
-    @property
+    @cached_property
     def age_h(self) -> Array:
+        """Hours from the geocentric conjunction to sunset, negative before it."""
         return (self.sunset_tt - self.conjunction_tt[:, None, None]) * 24
 
-    @property
-    def age_at_best_h(self) -> Array:
-        return (self.best.tt - self.conjunction_tt[:, None, None]) * 24
+    @cached_property
+    def best_tt(self) -> Array:
+        """Best time: sunset + 4/9 lag (Bruin 1977, as in Yallop 1997); sunset itself where the Moon sets
+        first or does not set."""
+        lag = np.where(np.isfinite(self.lag_min), self.lag_min, 0)
+        return self.sunset_tt + 4 / 9 * np.maximum(lag, 0) / 1440
 
+    @cached_property
+    def sunset(self) -> Instant:
+        return at_instant(self.windows, self.sunset_tt, self.places)
 
-def circumstances(
-    sky: Ephemeris,
-    windows: Windows,
-    conjunction_tt: Array,
-    day: Integers,
-    places: Places,
-    horizon: Horizon = STANDARD,
-) -> Circumstances:
-    """The evenings of civil dates ``day`` [lunation, evening] at ``places``.
+    @cached_property
+    def best(self) -> Instant:
+        return at_instant(self.windows, self.best_tt, self.places)
 
-    Each row's dates must lie inside its window (``windows`` and ``conjunction_tt`` [lunation]).
-    """
-    noon = noon_tt(sky, windows, day, places)
-    sunset, sunset_state = crossing(windows, "sun", "set", noon, places, horizon)
-    moonset, moonset_state = crossing(
-        windows, "moon", "set", culmination(windows, "moon", noon, places), places, horizon
-    )
-    moonset = np.where(sunset_state == Crossing.CROSSES, moonset, np.nan)
-    lag = np.nan_to_num(moonset - sunset)
-    best = sunset + 4 / 9 * np.maximum(lag, 0)
-    return Circumstances(
-        day, conjunction_tt, noon, sunset, sunset_state, moonset, moonset_state,
-        at_instant(windows, sunset, places), at_instant(windows, best, places),
-    )
+    def at_sun_depression(self, depression_deg: float) -> Instant:
+        """When the Sun's centre is that far below the horizon after sunset (airless)."""
+        tt, _ = crossing(
+            self.windows, "sun", "set", self.noon_tt, self.places, altitude_deg=-depression_deg
+        )
+        return at_instant(self.windows, tt, self.places)
+
+    def dawn_tt(self, depression_deg: float = 18.0) -> Array:
+        """Dawn that ends the evening's night: the Sun's centre at that depression, before the noon of the
+        next civil date."""
+        next_noon = noon_tt(self.sky, self.windows, self.day + 1, self.places)
+        return crossing(
+            self.windows, "sun", "rise", next_noon, self.places, altitude_deg=-depression_deg
+        )[0]
+
+    def at_places(self, places: Places) -> Circumstances:
+        """The same evenings elsewhere."""
+        return Circumstances(self.sky, self.windows, self.conjunction_tt, self.day, places, self.horizon)
 
 
 def at_instant(windows: Windows, tt: Array, places: Places) -> Instant:
@@ -130,10 +168,8 @@ def at_instant(windows: Windows, tt: Array, places: Places) -> Instant:
     sun, moon = direction(windows, "sun", tt, places), direction(windows, "moon", tt, places)
     sun_geo = direction(windows, "sun", tt, places, geocentric=True)
     moon_geo = direction(windows, "moon", tt, places, geocentric=True)
-    arcv_topo, daz_topo, arcl_topo = _arcs(sun.altitude_rad, sun.azimuth_rad, moon.altitude_rad, moon.azimuth_rad)
-    arcv_geo, daz_geo, arcl_geo = _arcs(
-        sun_geo.altitude_rad, sun_geo.azimuth_rad, moon_geo.altitude_rad, moon_geo.azimuth_rad
-    )
+    arcv_topo, daz_topo, arcl_topo = _arcs(sun, moon)
+    arcv_geo, daz_geo, arcl_geo = _arcs(sun_geo, moon_geo)
     semidiameter = moon.moon_semidiameter_rad
     # Phase angle i at the Moon: tan i = R sin(psi) / (D - R cos(psi)). Meeus ch. 48.
     phase = np.arctan2(
@@ -161,12 +197,13 @@ def at_instant(windows: Windows, tt: Array, places: Places) -> Instant:
     )
 
 
-def _arcs(sun_alt: Array, sun_az: Array, moon_alt: Array, moon_az: Array) -> tuple[Array, Array, Array]:
-    """ARCV, DAZ and ARCL in radians, from altitudes and azimuths."""
-    arcv = moon_alt - sun_alt
-    daz = np.remainder(sun_az - moon_az + np.pi, 2 * np.pi) - np.pi
+def _arcs(sun: Direction, moon: Direction) -> tuple[Array, Array, Array]:
+    """ARCV, DAZ and ARCL in radians."""
+    arcv = moon.altitude_rad - sun.altitude_rad
+    daz = np.remainder(sun.azimuth_rad - moon.azimuth_rad + np.pi, 2 * np.pi) - np.pi
     # Haversines keep their precision where the arcs are small.
-    haversine = np.sin(arcv / 2) ** 2 + np.cos(sun_alt) * np.cos(moon_alt) * np.sin(daz / 2) ** 2
+    across = np.cos(sun.altitude_rad) * np.cos(moon.altitude_rad) * np.sin(daz / 2) ** 2
+    haversine = np.sin(arcv / 2) ** 2 + across
     return arcv, daz, 2 * np.arcsin(np.sqrt(np.clip(haversine, 0, 1)))
 
 

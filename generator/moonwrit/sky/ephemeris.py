@@ -58,7 +58,8 @@ class Windows:
 
     def scaled(self, tt: Array) -> Array:
         """``tt`` [window, ...] as the series' own variable, -1 to 1 inside the window."""
-        return (tt - _trailing(self.centre_tt, tt.ndim)) / self.half_days
+        x: Array = (tt - _trailing(self.centre_tt, tt.ndim)) / self.half_days
+        return x
 
 
 def _trailing(values: Array, ndim: int) -> Array:
@@ -77,7 +78,8 @@ def series(coefficients: Array, x: Array) -> Array:
     b2 = b1
     for k in range(len(c) - 1, 0, -1):
         b1, b2 = c[k] + twice * b1 - b2, b1
-    return c[0] + x * b1 - b2
+    total: Array = c[0] + x * b1 - b2
+    return total
 
 
 def vector(coefficients: Array, x: Array) -> tuple[Array, Array, Array]:
@@ -148,7 +150,8 @@ class Ephemeris:
 
     def tt(self, ut: Array) -> Array:
         """UT1 -> TT, both Julian dates; delta-T changes by far less than a second over its own size."""
-        return ut + self.timescale.delta_t_function(ut) / 86400  # type: ignore[attr-defined, no-any-return]
+        tt: Array = ut + self.timescale.delta_t_function(ut) / 86400  # type: ignore[attr-defined]
+        return tt
 
     def span_text(self) -> str:
         first, last = (

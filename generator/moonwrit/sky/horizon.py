@@ -9,7 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from datetime import datetime, timedelta, timezone
+from datetime import UTC, datetime, timedelta
 from enum import IntEnum
 from functools import cache
 from typing import Literal
@@ -32,8 +32,9 @@ Turn = Literal["rise", "set"]
 
 _DAYS_PER_TURN = {"sun": 1.0, "moon": 1.0350501}
 """Mean interval between upper culminations."""
-_STEEP_DEG = 58.0
-"""Beyond this latitude the Moon can graze the horizon and Newton's method can miss it."""
+_STEEP_DEG = 60.5
+"""Beyond this latitude (90 less the Moon's greatest declination) it can graze the horizon, and Newton's
+method can miss that."""
 
 
 class Crossing(IntEnum):
@@ -66,12 +67,16 @@ STANDARD = Horizon()
 @dataclass(frozen=True, slots=True)
 class Places:
     """Places as arrays [place]: geodetic degrees (north, east positive), metres; ``zones`` say which civil
-    date a noon belongs to (None: the date of local mean time)."""
+    date a noon belongs to (None, or no zones at all: the date of local mean time).
+
+    A search that moves its points from evening to evening gives [lunation, evening, place] arrays, no zones,
+    and latitudes within 60 degrees.
+    """
 
     latitude_deg: Array
     longitude_deg: Array
     elevation_m: Array
-    zones: tuple[ZoneInfo | None, ...]
+    zones: tuple[ZoneInfo | None, ...] = ()
 
     @staticmethod
     def of(rows: Sequence[tuple[float, float, float, ZoneInfo | None]]) -> Places:
@@ -81,6 +86,13 @@ class Places:
 
     def __len__(self) -> int:
         return len(self.latitude_deg)
+
+    def pick(self, which: npt.NDArray[np.bool_] | npt.NDArray[np.intp]) -> Places:
+        """Some of the places [place], as a mask or as indices."""
+        zones = np.array(self.zones or [None] * len(self), dtype=object)[which]
+        return Places(
+            self.latitude_deg[which], self.longitude_deg[which], self.elevation_m[which], tuple(zones)
+        )
 
     def observer_km(self) -> tuple[Array, Array]:
         """Distance from the axis and height above the equator's plane, of each place."""
@@ -104,10 +116,13 @@ class Direction:
 
     @property
     def moon_semidiameter_rad(self) -> Array:
-        return np.arcsin(MOON_RADIUS_KM / self.distance_km)
+        semidiameter: Array = np.arcsin(MOON_RADIUS_KM / self.distance_km)
+        return semidiameter
 
 
-def direction(windows: Windows, body: Body, tt: Array, places: Places, *, geocentric: bool = False) -> Direction:
+def direction(
+    windows: Windows, body: Body, tt: Array, places: Places, *, geocentric: bool = False
+) -> Direction:
     """The body as seen from ``places`` at ``tt`` [window, ..., place].
 
     ``geocentric``: seen from the Earth's centre, against the place's own zenith.
@@ -155,7 +170,8 @@ def _hour_angle(windows: Windows, body: Body, tt: Array, places: Places) -> Arra
     theta = series(windows.gast_rad, x) + np.radians(places.longitude_deg)
     coefficients = windows.sun_km if body == "sun" else windows.moon_km
     right_ascension = np.arctan2(series(coefficients[:, 1], x), series(coefficients[:, 0], x))
-    return np.remainder(theta - right_ascension + np.pi, 2 * np.pi) - np.pi
+    angle: Array = np.remainder(theta - right_ascension + np.pi, 2 * np.pi) - np.pi
+    return angle
 
 
 def crossing(
@@ -171,25 +187,25 @@ def crossing(
 
     ``culmination_tt`` [window, evening, place]. ``altitude_deg`` replaces the horizon by a fixed
     airless altitude of the centre (twilight). Returns TT (NaN where it does not happen) and the
-    Crossing of each. Up to 58 degrees of latitude by Newton's method in hour angle; beyond, the
+    Crossing of each. Up to 60.5 degrees of latitude by Newton's method in hour angle; beyond, the
     altitude is sampled through the turn and the first crossing bracketed (a peep above the horizon or a
     dip below it shorter than about four minutes counts as none).
     """
+    steep = np.abs(places.latitude_deg) > _STEEP_DEG
+    if not steep.any():
+        return _newton(windows, body, turn, culmination_tt, places, horizon, altitude_deg)
     tt = np.full(culmination_tt.shape, np.nan)
     state = np.zeros(culmination_tt.shape, dtype=np.int8)
-    steep = np.abs(places.latitude_deg) > _STEEP_DEG
     for solve, pick in ((_newton, ~steep), (_bracket, steep)):
-        if pick.any():
-            chosen = Places(
-                places.latitude_deg[pick], places.longitude_deg[pick], places.elevation_m[pick], ()
-            )
-            tt[..., pick], state[..., pick] = solve(
-                windows, body, turn, culmination_tt[..., pick], chosen, horizon, altitude_deg
-            )
+        tt[..., pick], state[..., pick] = solve(
+            windows, body, turn, culmination_tt[..., pick], places.pick(pick), horizon, altitude_deg
+        )
     return tt, state
 
 
-def _target(body: Body, seen: Direction, places: Places, horizon: Horizon, altitude_deg: float | None) -> Array:
+def _target(
+    body: Body, seen: Direction, places: Places, horizon: Horizon, altitude_deg: float | None
+) -> Array:
     if altitude_deg is None:
         return _horizon_rad(body, seen, places, horizon)
     return np.full_like(seen.altitude_rad, np.radians(altitude_deg))
@@ -266,12 +282,13 @@ def noon_tt(sky: Ephemeris, windows: Windows, day: Integers, places: Places) -> 
     ``day`` [window, evening] proleptic Gregorian ordinals -> [window, evening, place]. The culmination of
     date D is the one that the place's clocks put on D, whatever side of the date line it keeps.
     """
-    shift = np.stack(
-        [_day_shift(zone, float(longitude), day)
-         for zone, longitude in zip(places.zones, places.longitude_deg, strict=True)],
-        axis=-1,
-    )
-    near_ut = day[..., None] + 1721424.5 + 0.5 - places.longitude_deg / 360 + shift
+    near_ut = day[..., None] + 1721424.5 + 0.5 - places.longitude_deg / 360
+    if any(places.zones):
+        near_ut = near_ut + np.stack(
+            [_day_shift(zone, float(longitude), day)
+             for zone, longitude in zip(places.zones, places.longitude_deg, strict=True)],
+            axis=-1,
+        )
     return culmination(windows, "sun", sky.tt(near_ut), places)
 
 
@@ -289,7 +306,7 @@ def _shift_changes(zone: ZoneInfo, longitude_deg: float) -> tuple[tuple[int, int
     """(first day, shift) in order. A place changes it only by moving to the other side of the date line."""
 
     def shift(day: int) -> int:
-        noon = datetime(1, 1, 1, 12, tzinfo=timezone.utc) + timedelta(days=day - 1 - longitude_deg / 360)
+        noon = datetime(1, 1, 1, 12, tzinfo=UTC) + timedelta(days=day - 1 - longitude_deg / 360)
         offset = noon.astimezone(zone).utcoffset() or timedelta(0)
         return -round((offset / timedelta(days=1)) - longitude_deg / 360)
 
