@@ -122,7 +122,8 @@ class Ephemeris:
 
         def of_date(name: str) -> Array:
             seen = earth.observe(self.kernel[name]).apparent(deflectors=())  # type: ignore[index]
-            return np.einsum("ijn,jn->in", to_date, seen.xyz.km).reshape(3, nodes, -1)
+            turned: Array = np.einsum("ijn,jn->in", to_date, seen.xyz.km).reshape(3, nodes, -1)
+            return turned
 
         gast = (t.gast * (np.pi / 12)).reshape(nodes, -1)
         steady = gast[0] + _SIDEREAL_RAD_PER_DAY * half_days * (x - x[0])[:, None]

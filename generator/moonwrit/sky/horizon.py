@@ -151,9 +151,8 @@ def direction(
 def _horizon_rad(body: Body, seen: Direction, places: Places, horizon: Horizon) -> Array:
     """Airless altitude of the body's centre when its upper limb is on the horizon."""
     fixed = np.radians(horizon.refraction_deg + horizon.dip_deg(places.elevation_m))
-    if body == "sun":
-        return -fixed - np.radians(horizon.sun_semidiameter_deg)
-    return -fixed - seen.moon_semidiameter_rad
+    disc: Array = np.radians(horizon.sun_semidiameter_deg) if body == "sun" else seen.moon_semidiameter_rad
+    return -fixed - disc
 
 
 def culmination(windows: Windows, body: Body, near_tt: Array, places: Places) -> Array:
