@@ -1,0 +1,52 @@
+# Needs Python 3.11 or newer and make; everything else is installed into .venv from the lock.
+#
+#   make site        the site of content/, built into output/
+#   make test        style, types, layers, tests
+#   make judges      the programs that the tests are held against, where the machine lacks them
+#   make benchmarks  tests/benchmarks/, alone on the machine
+#   make lock        requirements.lock again, after a change of pyproject.toml
+#   make clean       removes whatever make has made
+
+PYTHON ?= python3
+BIN := .venv/bin
+READY := .venv/.ready
+
+.PHONY: site test judges benchmarks lock clean
+
+site: $(READY)
+	$(BIN)/moonwrit publish
+
+# The tests come last, so that their own summary is the last line.
+test: $(READY)
+	$(BIN)/ruff check
+	$(BIN)/mypy
+	$(BIN)/lint-imports
+	$(BIN)/pytest -n 2
+
+judges:
+	.ci/judges
+
+benchmarks: $(READY)
+	$(BIN)/pytest tests/benchmarks -o python_files='bench_*.py' --benchmark-only
+
+# Versions already locked are kept where they still fit; delete the lock first to take the newest of all.
+lock: | $(BIN)/python
+	$(BIN)/python -m pip install --quiet uv
+	$(BIN)/uv pip compile pyproject.toml --quiet --output-file requirements.lock \
+		--universal --python-version 3.11 --fork-strategy fewest --all-extras \
+		--generate-hashes --no-emit-index-url --custom-compile-command 'make lock'
+
+clean:
+	rm -rf .venv .judges .benchmarks .hypothesis .import_linter_cache .mypy_cache .pytest_cache .ruff_cache dist
+	find output -mindepth 1 ! -name .gitkeep -delete
+	find generator tests -name __pycache__ -prune -exec rm -rf {} +
+
+$(READY): requirements.lock pyproject.toml | $(BIN)/python
+	$(BIN)/python -m pip install --quiet --require-hashes -r requirements.lock
+	$(BIN)/python -m pip install --quiet --no-deps --no-build-isolation -e .
+	touch $@
+
+$(BIN)/python:
+	@$(PYTHON) -c 'import sys; sys.exit(sys.version_info < (3, 11))' || \
+		{ echo 'Moonwrit needs Python 3.11 or newer; name it: make PYTHON=/path/to/python3' >&2; exit 1; }
+	$(PYTHON) -m venv .venv
