@@ -5,7 +5,8 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from datetime import date, datetime, timedelta
-from typing import Literal
+from types import MappingProxyType
+from typing import Literal, NamedTuple
 
 Basis = Literal["arithmetic", "calculated", "sighted", "completed", "adopted", "tabulated"]
 Standing = Literal["expected", "settled", "amended"]
@@ -47,6 +48,16 @@ class Finding:
     margin: float | None
 
 
+class Note(NamedTuple):
+    """A sentence with named places for values, kept apart so that it can be translated."""
+
+    text: str
+    values: Mapping[str, str | int | float] = MappingProxyType({})
+
+    def __str__(self) -> str:
+        return self.text % self.values
+
+
 @dataclass(frozen=True, slots=True)
 class Evidence:
     """What the start of a month rests on.
@@ -54,7 +65,7 @@ class Evidence:
     ``evening`` is the 29th evening of the month before: the one that was asked. ``met`` is the
     test's answer there (None for arithmetic and tables). ``circumstances`` maps names with units to
     numbers, or to ISO 8601 UTC strings for instants, None where the event does not happen;
-    it is empty where no sky was asked. ``notes`` are sentences in the site's source language.
+    it is empty where no sky was asked. ``notes`` say what was unusual about it.
     """
 
     evening: date
@@ -63,7 +74,7 @@ class Evidence:
     conjunction: datetime | None = None
     findings: tuple[Finding, ...] = ()
     circumstances: Mapping[str, float | str | None] = field(default_factory=dict)
-    notes: tuple[str, ...] = ()
+    notes: tuple[Note, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

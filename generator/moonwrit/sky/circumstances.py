@@ -158,9 +158,18 @@ class Circumstances:
             self.windows, "sun", "rise", next_noon, self.places, altitude_deg=-depression_deg
         )[0]
 
-    def at_places(self, places: Places) -> Circumstances:
-        """The same evenings elsewhere."""
-        return Circumstances(self.sky, self.windows, self.conjunction_tt, self.day, places, self.horizon)
+
+@dataclass(frozen=True, slots=True)
+class Evenings:
+    """Evenings of civil dates before any place is chosen; shapes as in Circumstances."""
+
+    sky: Ephemeris
+    windows: Windows
+    conjunction_tt: Array
+    day: Integers
+
+    def at(self, places: Places) -> Circumstances:
+        return Circumstances(self.sky, self.windows, self.conjunction_tt, self.day, places)
 
 
 def at_instant(windows: Windows, tt: Array, places: Places) -> Instant:

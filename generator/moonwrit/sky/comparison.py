@@ -206,7 +206,8 @@ def conjunction_before_hour(hour: float) -> Quantity:
         gap: Array = (deadline_ut - c.sky.ut(c.conjunction_tt)[:, None, None]) * 24
         return np.broadcast_to(gap, c.sunset_tt.shape)
 
-    return Quantity("conjunction before the hour", f"before {hour:02g}:00 UT of the date", "h", 24.0, of)
+    of_day = "of the day before" if hour < 0 else "of the date"
+    return Quantity("conjunction before the hour", f"before {hour % 24 or 24:g}:00 UT {of_day}", "h", 24.0, of)
 
 
 def conjunction_before_dawn(depression_deg: float = 18.0) -> Quantity:

@@ -97,7 +97,8 @@ def yallop_width_arcmin(c: Circumstances) -> Array:
     parallax = np.radians(best.moon_parallax_deg)
     semidiameter = 0.27245 * parallax
     topocentric = semidiameter * (1 + np.sin(np.radians(best.moon_altitude_geo_deg)) * np.sin(parallax))
-    return np.degrees(topocentric * (1 - np.cos(np.radians(best.arcl_geo_deg)))) * 60
+    width: Array = np.degrees(topocentric * (1 - np.cos(np.radians(best.arcl_geo_deg)))) * 60
+    return width
 
 
 def _yallop_q(c: Circumstances) -> Array:

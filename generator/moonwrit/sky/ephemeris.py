@@ -56,6 +56,19 @@ class Windows:
             self.gast_rad[..., pick], self.obliquity_rad[..., pick],
         )
 
+    def replaced(self, at: npt.NDArray[np.intp], other: Windows) -> Windows:
+        """A copy whose windows ``at`` are those of ``other``, which are equally wide."""
+        def put(mine: Array, theirs: Array) -> Array:
+            out = mine.copy()
+            out[..., at] = theirs
+            return out
+
+        return Windows(
+            put(self.centre_tt, other.centre_tt), self.half_days, put(self.sun_km, other.sun_km),
+            put(self.moon_km, other.moon_km), put(self.gast_rad, other.gast_rad),
+            put(self.obliquity_rad, other.obliquity_rad),
+        )
+
     def scaled(self, tt: Array) -> Array:
         """``tt`` [window, ...] as the series' own variable, -1 to 1 inside the window."""
         x: Array = (tt - _trailing(self.centre_tt, tt.ndim)) / self.half_days

@@ -94,6 +94,16 @@ class Places:
             self.latitude_deg[which], self.longitude_deg[which], self.elevation_m[which], tuple(zones)
         )
 
+    def joined(self, other: Places) -> Places:
+        """These places [place] and then the others."""
+        mine, theirs = self.zones or (None,) * len(self), other.zones or (None,) * len(other)
+        return Places(
+            np.concatenate([self.latitude_deg, other.latitude_deg]),
+            np.concatenate([self.longitude_deg, other.longitude_deg]),
+            np.concatenate([self.elevation_m, other.elevation_m]),
+            mine + theirs,
+        )
+
     def observer_km(self) -> tuple[Array, Array]:
         """Distance from the axis and height above the equator's plane, of each place."""
         phi = np.radians(self.latitude_deg)

@@ -1,0 +1,147 @@
+"""Methods: a policy made ready to answer, whatever its kind, and the months it yields."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, replace
+from datetime import date, timedelta
+from typing import Literal
+
+import numpy as np
+
+from moonwrit.calendars import Tabular
+from moonwrit.errors import RequestError
+from moonwrit.policy.conditions import Condition, evidence
+from moonwrit.policy.months import FIXED, Basis, Evidence, Margin, Month, Note, Standing
+from moonwrit.policy.uncertainty import uncertainty_note
+from moonwrit.policy.walk import Era, Questions, Step, walk
+
+
+@dataclass(frozen=True)
+class Method:
+    """A policy that can be asked for months. Exactly one of ``eras``, ``tabular``, ``table`` and ``adopts``.
+
+    ``table`` maps the ordinal of a month to its first day. ``adopts`` names authorities of which the first to
+    begin a month decides. ``note`` says what is inferred, unverified or our own choice about it.
+    """
+
+    name: str
+    title: str
+    source: str
+    decided_by: Literal["record", "calculation"]
+    eras: tuple[Era, ...] = ()
+    tabular: Tabular | None = None
+    table: Mapping[int, date] | None = None
+    adopts: tuple[Method, ...] = ()
+    note: str = ""
+
+    def months(self, first_year: int, last_year: int) -> tuple[Month, ...]:
+        """The months of Hijri years ``first_year`` to ``last_year``, both included.
+
+        Raises RequestError where the method cannot answer for one of them.
+        """
+        first, last = (first_year - 1) * 12, last_year * 12 - 1
+        if self.tabular is not None:
+            return tuple(self._arithmetic(self.tabular, ordinal) for ordinal in range(first, last + 1))
+        if self.table is not None:
+            return self._tabulated(self.table, first, last)
+        if self.adopts:
+            return self._adopted(first_year, last_year)
+        return self._computed(first, last)
+
+    @property
+    def standing(self) -> Standing:
+        return "settled" if self.decided_by == "calculation" else "expected"
+
+    def _month(
+        self, ordinal: int, starts: date, length: int, basis: Basis, evidence: Evidence
+    ) -> Month:
+        return Month(
+            ordinal // 12 + 1, ordinal % 12 + 1, starts, length, basis, self.standing, self.name, FIXED, evidence
+        )
+
+    def _arithmetic(self, tabular: Tabular, ordinal: int) -> Month:
+        year, month = ordinal // 12 + 1, ordinal % 12 + 1
+        starts = tabular.month_start(year, month)
+        before = tabular.month_start(ordinal // 12 + (month > 1), (month - 2) % 12 + 1) if ordinal else None
+        evening = (before + timedelta(days=28)) if before else starts - timedelta(days=1)
+        return self._month(
+            ordinal, starts, tabular.month_length(year, month), "arithmetic", Evidence(evening, None)
+        )
+
+    def _tabulated(self, table: Mapping[int, date], first: int, last: int) -> tuple[Month, ...]:
+        missing = [n for n in range(first, last + 2) if n not in table]
+        if missing:
+            n = missing[0]
+            raise RequestError(
+                f"the table of {self.title} has no month {n // 12 + 1}-{n % 12 + 1:02d}",
+                "add it (the month after the last one too, which ends it), or ask for fewer years",
+            )
+        out = []
+        for n in range(first, last + 1):
+            evening = table.get(n - 1, table[n] - timedelta(days=29)) + timedelta(days=28)
+            length = (table[n + 1] - table[n]).days
+            out.append(self._month(n, table[n], length, "tabulated", Evidence(evening, None)))
+        return tuple(out)
+
+    def _adopted(self, first_year: int, last_year: int) -> tuple[Month, ...]:
+        per_authority = [authority.months(first_year, last_year) for authority in self.adopts]
+        chosen = [min(same, key=lambda month: month.starts) for same in zip(*per_authority, strict=True)]
+        titles = {authority.name: authority.title for authority in self.adopts}
+        out = []
+        for index, month in enumerate(chosen):
+            note = Note("Adopted from %(authority)s.", {"authority": titles[month.policy]})
+            length = month.length
+            if index + 1 < len(chosen):
+                length = (chosen[index + 1].starts - month.starts).days
+            out.append(replace(
+                month, basis="adopted", standing=self.standing, policy=self.name, length=length,
+                evidence=replace(month.evidence, notes=(note, *month.evidence.notes)),
+            ))
+        return tuple(out)
+
+    def _computed(self, first: int, last: int) -> tuple[Month, ...]:
+        questions, steps = walk(self.eras, first, last)
+        found = self._evidence(questions, steps[:-1])
+        out = []
+        for step, after, (why, margin) in zip(steps, steps[1:], found, strict=False):
+            starts = date.fromordinal(step.start)
+            month = self._month(
+                step.ordinal, starts, after.start - step.start, "calculated" if step.met else "completed", why
+            )
+            notes = _notes(step) + uncertainty_note(margin, starts)
+            out.append(replace(
+                month, margin=margin, evidence=replace(why, met=step.met, notes=(*why.notes, *notes))
+            ))
+        return tuple(out)
+
+    def _evidence(self, questions: Questions, steps: list[Step]) -> list[tuple[Evidence, Margin]]:
+        """Evidence and margin of each step, era by era."""
+        by_condition: dict[int, list[int]] = {}
+        conditions: dict[int, Condition] = {}
+        for index, step in enumerate(steps):
+            condition = questions.condition(step.ordinal)
+            conditions[id(condition)] = condition
+            by_condition.setdefault(id(condition), []).append(index)
+        out: dict[int, tuple[Evidence, Margin]] = {}
+        for key, indices in by_condition.items():
+            rows = np.array([steps[i].ordinal - int(questions.moons.ordinal[0]) for i in indices])
+            days = np.array([[steps[i].evening] for i in indices])
+            answers = evidence(conditions[key], questions.evenings(rows, days))
+            out.update(zip(indices, answers, strict=True))
+        return [out[i] for i in range(len(steps))]
+
+
+def _notes(step: Step) -> tuple[Note, ...]:
+    """What the walk had to do against the sky."""
+    if step.met_28th:
+        return (Note(
+            "The test was met on the 28th evening already. A month has at least 29 days, so the month before "
+            "was given 29.",
+        ),)
+    if not step.met_30th:
+        return (Note(
+            "The test is not met on the 30th evening either. A month has at most 30 days, so the month begins "
+            "all the same.",
+        ),)
+    return ()

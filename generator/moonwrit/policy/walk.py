@@ -1,0 +1,124 @@
+"""The month walk: month by month, 29 or 30 days, by what the condition says on each 29th evening.
+
+A month that begins on civil date S has its 29th evening on S + 28. If the condition of the next month is met
+there, the next month begins on the morrow; if not, thirty days are completed. No month has 28 or 31 days,
+whatever the sky does, unless the community has recorded so.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from moonwrit.errors import RequestError
+from moonwrit.policy.conditions import Condition
+from moonwrit.sky import Array, Evenings, Lunations, lunations, span
+from moonwrit.sky.comparison import met
+from moonwrit.sky.lunation import Integers
+
+LEAD_IN_MONTHS = 24
+"""The walk begins this many months before the first that is asked for, on the first evening that meets the
+condition. Walks from different beginnings meet within a few months; tests hold this for every policy."""
+
+_BEFORE = 1
+_EVENINGS = 4
+"""Evenings looked at around each conjunction: from the day before its UTC date to two days after."""
+
+
+@dataclass(frozen=True, slots=True)
+class Era:
+    """A condition, from the month of ordinal ``first`` on."""
+
+    first: int
+    condition: Condition
+
+
+@dataclass(frozen=True, slots=True)
+class Step:
+    """The start of one month: ``start`` its first day and ``evening`` the 29th evening before it, as civil
+    ordinals; ``met`` the condition's answer then; ``met_28th`` whether it was met an evening earlier
+    already; ``met_30th`` its answer an evening later."""
+
+    ordinal: int
+    start: int
+    evening: int
+    met: bool
+    met_28th: bool
+    met_30th: bool
+
+
+class Questions:
+    """The condition's answers around every conjunction of a span, and anywhere else when asked."""
+
+    def __init__(self, eras: tuple[Era, ...], first: int, last: int) -> None:
+        self.eras = eras
+        self.moons: Lunations = lunations(first, last)
+        self.days = self.moons.day[:, None] + np.arange(_EVENINGS) - _BEFORE
+        self.answers = met(self._shares(np.arange(len(self.moons)), self.days))
+
+    def condition(self, ordinal: int) -> Condition:
+        return [era.condition for era in self.eras if era.first <= ordinal][-1]
+
+    def met(self, row: int, day: int) -> bool:
+        column = day - int(self.days[row, 0])
+        if 0 <= column < _EVENINGS:
+            return bool(self.answers[row, column])
+        return bool(met(self._shares(np.array([row]), np.array([[day]])))[0, 0])
+
+    def evenings(self, rows: Integers, days: Integers) -> Evenings:
+        """Evenings ``days`` [row, evening] of the lunations ``rows``; a row whose dates lie outside the
+        lunation's own window gets a window of its own."""
+        moons = self.moons
+        windows = moons.windows[rows]
+        first, last = self.days[rows, 0], self.days[rows, -1]
+        away = np.flatnonzero((days.min(axis=1) < first) | (days.max(axis=1) > last))
+        if len(away):
+            middle = days[away].mean(axis=1) + 1721424.5 + 1.0
+            windows = windows.replaced(away, moons.ephemeris.windows(middle, windows.half_days))
+        return Evenings(moons.ephemeris, windows, moons.conjunction_tt[rows], days)
+
+    def _shares(self, rows: Integers, days: Integers) -> Array:
+        shares = np.full(days.shape, np.nan)
+        ordinals = self.moons.ordinal[rows]
+        for index, era in enumerate(self.eras):
+            until = self.eras[index + 1].first if index + 1 < len(self.eras) else np.inf
+            mine = np.flatnonzero((ordinals >= era.first) & (ordinals < until))
+            if len(mine):
+                shares[mine] = era.condition.share(self.evenings(rows[mine], days[mine]))
+        return shares
+
+
+def walk(eras: tuple[Era, ...], first: int, last: int) -> tuple[Questions, list[Step]]:
+    """The starts of the months of ordinal ``first`` to ``last`` + 1.
+
+    Raises RequestError where a month lies outside the ephemeris or before the first era.
+    """
+    earliest, latest = span()
+    earliest = max(earliest, eras[0].first)
+    if first < earliest or last >= latest:
+        raise RequestError(
+            f"this policy can be computed from the year {-(-earliest // 12) + 1} to {latest // 12} AH, and "
+            f"the year {(first if first < earliest else last) // 12 + 1} was asked for",
+            "choose years inside that span",
+        )
+    begin = max(earliest, first - LEAD_IN_MONTHS)
+    questions = Questions(eras, begin, last + 1)
+    start = _first_start(questions)
+    steps = [Step(begin, start, start - 1, True, False, True)]
+    for row in range(1, last + 2 - begin):
+        evening = start + 28
+        is_met = questions.met(row, evening)
+        start += 29 if is_met else 30
+        steps.append(Step(
+            begin + row, start, evening, is_met,
+            questions.met(row, evening - 1), is_met or questions.met(row, evening + 1),
+        ))
+    return questions, steps[first - begin:]
+
+
+def _first_start(questions: Questions) -> int:
+    """The morrow of the first evening that meets the condition; of the last looked at, where none does."""
+    answers = questions.answers[0]
+    column = int(np.argmax(answers)) if answers.any() else _EVENINGS - 1
+    return int(questions.days[0, column]) + 1
