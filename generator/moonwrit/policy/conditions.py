@@ -9,8 +9,8 @@ from datetime import date, datetime
 import numpy as np
 
 from moonwrit.policy.months import Closeness, Evidence, Finding, Margin, Note
-from moonwrit.policy.scopes import AtPlaces, Scope, Verdict
-from moonwrit.sky import Array, Circumstances, Evenings, Places
+from moonwrit.policy.scopes import AtPlaces, Flags, Scope, Verdict
+from moonwrit.sky import Circumstances, Evenings, Places
 from moonwrit.sky.comparison import All, Comparison, Rule, met
 from moonwrit.sky.described import described, instant
 
@@ -29,9 +29,9 @@ class Scoped:
     rule: Rule
     scope: Scope
 
-    def share(self, evenings: Evenings) -> Array:
+    def met(self, evenings: Evenings) -> Flags:
         """[lunation, evening]"""
-        return self.scope.decide(self.rule, evenings).share
+        return self.scope.met(self.rule, evenings)
 
 
 @dataclass(frozen=True)
@@ -40,9 +40,12 @@ class Every:
 
     parts: tuple[Condition, ...]
 
-    def share(self, evenings: Evenings) -> Array:
-        least: Array = np.minimum.reduce([part.share(evenings) for part in self.parts])
-        return least
+    def met(self, evenings: Evenings) -> Flags:
+        answers = self.parts[0].met(evenings)
+        for part in self.parts[1:]:
+            if answers.any():
+                answers[answers] = part.met(evenings.chosen(answers))[:, 0]
+        return answers
 
 
 @dataclass(frozen=True)
@@ -51,9 +54,12 @@ class Either:
 
     parts: tuple[Condition, ...]
 
-    def share(self, evenings: Evenings) -> Array:
-        most: Array = np.maximum.reduce([part.share(evenings) for part in self.parts])
-        return most
+    def met(self, evenings: Evenings) -> Flags:
+        answers = self.parts[0].met(evenings)
+        for part in self.parts[1:]:
+            if not answers.all():
+                answers[~answers] = part.met(evenings.chosen(~answers))[:, 0]
+        return answers
 
 
 Condition = Scoped | Every | Either

@@ -75,17 +75,23 @@ def _umm_al_qura(_: NamedPlace | None) -> Method:
     )
 
 
-def _umm_al_qura_inferred(_: NamedPlace | None) -> Method:
+def _umm_al_qura_table(_: NamedPlace | None) -> Method:
     rule = Any((
         Comparison(conjunction_before_hour(-3), ">", 0.0),
         Comparison(lag(), ">=", 19.75),
     ))
     return Method(
-        "umm-al-qura-inferred", "Umm al-Qura, as the table runs from 1451 on",
-        "inferred from the table that ICU and java.time carry; published nowhere known",
+        "umm-al-qura-table", "Umm al-Qura, as the table in software runs",
+        "the published rules for 1420 to 1451/3; before and after, inferred from the table that ICU and java.time "
+        "carry, and published nowhere known",
         "calculation",
-        eras=(Era(_year(1393), Scoped(rule, MAKKAH.scope())),),
-        note="A rule found by fitting a table, not one that its makers have stated.",
+        eras=(
+            Era(_year(1411), Scoped(rule, MAKKAH.scope())),
+            Era(_year(1420), _at("moonset-after-sunset", MAKKAH)),
+            Era(_year(1423), _at("moon-up-after-conjunction", MAKKAH)),
+            Era(_year(1451) + 3, Scoped(rule, MAKKAH.scope())),
+        ),
+        note="The rule for 1411-1419 and from 1451/4 on was found by fitting a table; its makers have not stated it.",
     )
 
 
@@ -144,7 +150,7 @@ def _tabular(name: str, _: NamedPlace | None) -> Method:
 def _makers() -> dict[str, Callable[[NamedPlace | None], Method]]:
     makers: dict[str, Callable[[NamedPlace | None], Method]] = {
         "umm-al-qura": _umm_al_qura,
-        "umm-al-qura-inferred": _umm_al_qura_inferred,
+        "umm-al-qura-table": _umm_al_qura_table,
         "istanbul-1978": _istanbul_1978,
         "istanbul-2016": _istanbul_2016,
     }

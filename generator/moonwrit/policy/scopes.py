@@ -6,18 +6,25 @@ Shares are signed (see ``sky.comparison``): the test is met in the scope where t
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any, Protocol
 
 import numpy as np
 import numpy.typing as npt
 
 from moonwrit.sky import Array, Evenings, Places
-from moonwrit.sky.comparison import Rule
+from moonwrit.sky.comparison import Rule, met
 from moonwrit.sky.land import Outline
 
 MAX_LATITUDE_DEG = 60.0
 """Searches over the Earth stay between 60 degrees south and north: beyond, a sunset may fail."""
+
+
+Flags = npt.NDArray[np.bool_]
+
+_HOPELESS = -0.5
+"""A coarse search that falls short by half a day's change or more is not improved to a success by a finer one:
+the steps of the coarse grids change a share by less than a third of that."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -34,6 +41,9 @@ class Scope(Protocol):
     """Where a test must hold."""
 
     def decide(self, rule: Rule, evenings: Evenings) -> Verdict: ...
+
+    def met(self, rule: Rule, evenings: Evenings) -> Flags:
+        """Only whether it is met, [lunation, evening]: a search may stop as soon as that is certain."""
 
 
 @dataclass(frozen=True)
@@ -84,6 +94,10 @@ class AtPlaces:
         )
 
 
+    def met(self, rule: Rule, evenings: Evenings) -> Flags:
+        return met(self.decide(rule, evenings).share)
+
+
 @dataclass(frozen=True, slots=True)
 class Before:
     """A deadline: a UT hour of the evening's civil date (24 = its end), or the dawn at a place."""
@@ -131,6 +145,9 @@ class Anywhere:
             latitude = np.clip(np.broadcast_to(around, (*shape[:-1], 2)), -MAX_LATITUDE_DEG, MAX_LATITUDE_DEG)
         assert best is not None
         return best
+
+    def met(self, rule: Rule, evenings: Evenings) -> Flags:
+        return _coarse_to_fine(replace(self, step_deg=2 * self.step_deg, halvings=0), self, rule, evenings)
 
     def _along(self, rule: Rule, evenings: Evenings, latitude: Array, deadline: Array | None) -> Verdict:
         flat = np.zeros(latitude.shape)
@@ -184,6 +201,21 @@ class Within:
             share = np.where(self.outline.contains(near_lon, near_lat), share, -np.inf)
             best = _better(best, _best_of(np.nan_to_num(share, nan=-np.inf), near_lat, near_lon))
         return best
+
+    def met(self, rule: Rule, evenings: Evenings) -> Flags:
+        if self.needed > 0:
+            return met(self.decide(rule, evenings).share)
+        return _coarse_to_fine(replace(self, step_deg=3 * self.step_deg, halvings=0), self, rule, evenings)
+
+
+def _coarse_to_fine(coarse: Scope, fine: Scope, rule: Rule, evenings: Evenings) -> Flags:
+    """Success in the coarse search is success; only evenings that narrowly failed there are searched finely."""
+    share = coarse.decide(rule, evenings).share
+    answers = met(share)
+    unsure = ~answers & (share > _HOPELESS)
+    if unsure.any():
+        answers[unsure] = met(fine.decide(rule, evenings.chosen(unsure)).share)[:, 0]
+    return answers
 
 
 def _best_of(share: Array, latitude: Array, longitude: Array) -> Verdict:

@@ -13,8 +13,8 @@ import numpy as np
 
 from moonwrit.errors import RequestError
 from moonwrit.policy.conditions import Condition
-from moonwrit.sky import Array, Evenings, Lunations, lunations, span
-from moonwrit.sky.comparison import met
+from moonwrit.policy.scopes import Flags
+from moonwrit.sky import Evenings, Lunations, lunations, span
 from moonwrit.sky.lunation import Integers
 
 LEAD_IN_MONTHS = 24
@@ -55,7 +55,7 @@ class Questions:
         self.eras = eras
         self.moons: Lunations = lunations(first, last)
         self.days = self.moons.day[:, None] + np.arange(_EVENINGS) - _BEFORE
-        self.answers = met(self._shares(np.arange(len(self.moons)), self.days))
+        self.answers = self._met(np.arange(len(self.moons)), self.days)
 
     def condition(self, ordinal: int) -> Condition:
         return [era.condition for era in self.eras if era.first <= ordinal][-1]
@@ -64,7 +64,7 @@ class Questions:
         column = day - int(self.days[row, 0])
         if 0 <= column < _EVENINGS:
             return bool(self.answers[row, column])
-        return bool(met(self._shares(np.array([row]), np.array([[day]])))[0, 0])
+        return bool(self._met(np.array([row]), np.array([[day]]))[0, 0])
 
     def evenings(self, rows: Integers, days: Integers) -> Evenings:
         """Evenings ``days`` [row, evening] of the lunations ``rows``; a row whose dates lie outside the
@@ -78,15 +78,15 @@ class Questions:
             windows = windows.replaced(away, moons.ephemeris.windows(middle, windows.half_days))
         return Evenings(moons.ephemeris, windows, moons.conjunction_tt[rows], days)
 
-    def _shares(self, rows: Integers, days: Integers) -> Array:
-        shares = np.full(days.shape, np.nan)
+    def _met(self, rows: Integers, days: Integers) -> Flags:
+        answers = np.zeros(days.shape, dtype=bool)
         ordinals = self.moons.ordinal[rows]
         for index, era in enumerate(self.eras):
             until = self.eras[index + 1].first if index + 1 < len(self.eras) else np.inf
             mine = np.flatnonzero((ordinals >= era.first) & (ordinals < until))
             if len(mine):
-                shares[mine] = era.condition.share(self.evenings(rows[mine], days[mine]))
-        return shares
+                answers[mine] = era.condition.met(self.evenings(rows[mine], days[mine]))
+        return answers
 
 
 def walk(eras: tuple[Era, ...], first: int, last: int) -> tuple[Questions, list[Step]]:

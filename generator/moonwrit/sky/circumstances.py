@@ -19,50 +19,147 @@ from moonwrit.sky.horizon import (
     Places,
     crossing,
     culmination,
-    direction,
+    in_meridian,
     noon_tt,
+    seen_from,
 )
 from moonwrit.sky.lunation import Integers
 
 States = npt.NDArray[np.int8]
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True)
 class Instant:
-    """Sun and Moon at one instant of each evening; all [lunation, evening, place], NaN without the instant.
+    """Sun and Moon at one instant ``tt`` of each evening; all [lunation, evening, place], NaN without it.
 
     Altitudes and azimuths are of the centres, airless unless named otherwise; ``_topo`` as seen from
     the place, ``_geo`` from the Earth's centre against the place's zenith. ``arcl`` elongation (arc of
     light), ``arcv`` arc of vision (Moon's altitude minus the Sun's), ``daz`` relative azimuth (Sun's minus
-    the Moon's, -180 to 180). ``width`` in arcmin: semi-diameter x (1 - cos ARCL).
+    the Moon's, -180 to 180). ``width`` in arcmin: semi-diameter x (1 - cos ARCL). What is asked for is
+    computed once, when first asked for.
     """
 
+    windows: Windows
     tt: Array
-    sun_altitude_deg: Array
-    sun_azimuth_deg: Array
-    moon_altitude_topo_deg: Array
-    moon_altitude_geo_deg: Array
-    moon_azimuth_deg: Array
-    moon_semidiameter_deg: Array
-    moon_parallax_deg: Array
-    arcl_topo_deg: Array
-    arcl_geo_deg: Array
-    arcv_topo_deg: Array
-    arcv_geo_deg: Array
-    daz_topo_deg: Array
-    daz_geo_deg: Array
-    width_topo_arcmin: Array
-    width_geo_arcmin: Array
-    illuminated_share: Array
+    places: Places
+
+    @cached_property
+    def _sun_km(self) -> tuple[Array, Array, Array]:
+        return in_meridian(self.windows, "sun", self.tt, self.places)
+
+    @cached_property
+    def _moon_km(self) -> tuple[Array, Array, Array]:
+        return in_meridian(self.windows, "moon", self.tt, self.places)
+
+    @cached_property
+    def _sun(self) -> Direction:
+        return seen_from(self.places, *self._sun_km)
+
+    @cached_property
+    def _moon(self) -> Direction:
+        return seen_from(self.places, *self._moon_km)
+
+    @cached_property
+    def _sun_geo(self) -> Direction:
+        return seen_from(self.places, *self._sun_km, geocentric=True)
+
+    @cached_property
+    def _moon_geo(self) -> Direction:
+        return seen_from(self.places, *self._moon_km, geocentric=True)
+
+    @property
+    def sun_altitude_deg(self) -> Array:
+        return np.degrees(self._sun.altitude_rad)
+
+    @property
+    def sun_azimuth_deg(self) -> Array:
+        return np.degrees(self._sun.azimuth_rad)
+
+    @property
+    def moon_altitude_topo_deg(self) -> Array:
+        return np.degrees(self._moon.altitude_rad)
+
+    @property
+    def moon_altitude_geo_deg(self) -> Array:
+        return np.degrees(self._moon_geo.altitude_rad)
+
+    @property
+    def moon_azimuth_deg(self) -> Array:
+        return np.degrees(self._moon.azimuth_rad)
+
+    @property
+    def moon_semidiameter_deg(self) -> Array:
+        """Topocentric."""
+        return np.degrees(self._moon.moon_semidiameter_rad)
+
+    @property
+    def moon_parallax_deg(self) -> Array:
+        """Equatorial horizontal parallax."""
+        parallax: Array = np.degrees(np.arcsin(EARTH_RADIUS_KM / self._moon_distance_km))
+        return parallax
+
+    @property
+    def _moon_distance_km(self) -> Array:
+        return _length(self._moon_km)
+
+    @cached_property
+    def arcl_topo_deg(self) -> Array:
+        axis_km, height_km = self.places.observer_km()
+        (sun_out, sun_east, sun_north), (out, east, north) = self._sun_km, self._moon_km
+        return np.degrees(_angle_rad(
+            (sun_out - axis_km, sun_east, sun_north - height_km), (out - axis_km, east, north - height_km)
+        ))
+
+    @cached_property
+    def arcl_geo_deg(self) -> Array:
+        return np.degrees(_angle_rad(self._sun_km, self._moon_km))
+
+    @property
+    def arcv_topo_deg(self) -> Array:
+        return np.degrees(self._moon.altitude_rad - self._sun.altitude_rad)
+
+    @property
+    def arcv_geo_deg(self) -> Array:
+        return np.degrees(self._moon_geo.altitude_rad - self._sun_geo.altitude_rad)
+
+    @property
+    def daz_topo_deg(self) -> Array:
+        return np.degrees(_turned(self._sun.azimuth_rad - self._moon.azimuth_rad))
+
+    @property
+    def daz_geo_deg(self) -> Array:
+        return np.degrees(_turned(self._sun_geo.azimuth_rad - self._moon_geo.azimuth_rad))
+
+    @property
+    def width_topo_arcmin(self) -> Array:
+        return self.moon_semidiameter_deg * 60 * (1 - np.cos(np.radians(self.arcl_topo_deg)))
+
+    @property
+    def width_geo_arcmin(self) -> Array:
+        semidiameter = np.degrees(np.arcsin(MOON_RADIUS_KM / self._moon_distance_km))
+        width: Array = semidiameter * 60 * (1 - np.cos(np.radians(self.arcl_geo_deg)))
+        return width
+
+    @property
+    def illuminated_share(self) -> Array:
+        """Illuminated part of the disc, 0 to 1, from the phase angle i at the Moon, geocentric:
+        tan i = R sin(psi) / (D - R cos(psi)). Meeus ch. 48."""
+        psi = np.radians(self.arcl_geo_deg)
+        sun_km = _length(self._sun_km)
+        phase = np.arctan2(sun_km * np.sin(psi), self._moon_distance_km - sun_km * np.cos(psi))
+        share: Array = (1 + np.cos(phase)) / 2
+        return share
 
     @property
     def moon_altitude_refracted_deg(self) -> Array:
         """Apparent altitude of the Moon's centre: airless topocentric altitude plus refraction."""
-        return self.moon_altitude_topo_deg + refraction_deg(self.moon_altitude_topo_deg)
+        return self.limb_altitude_deg(0, refracted=True)
 
     def limb_altitude_deg(self, limb: int, *, refracted: bool) -> Array:
         """Topocentric altitude of the Moon's limb: +1 upper, 0 centre, -1 lower."""
-        airless = self.moon_altitude_topo_deg + limb * self.moon_semidiameter_deg
+        airless = self.moon_altitude_topo_deg
+        if limb:
+            airless = airless + limb * self.moon_semidiameter_deg
         return airless + refraction_deg(airless) if refracted else airless
 
 
@@ -137,18 +234,18 @@ class Circumstances:
 
     @cached_property
     def sunset(self) -> Instant:
-        return at_instant(self.windows, self.sunset_tt, self.places)
+        return Instant(self.windows, self.sunset_tt, self.places)
 
     @cached_property
     def best(self) -> Instant:
-        return at_instant(self.windows, self.best_tt, self.places)
+        return Instant(self.windows, self.best_tt, self.places)
 
     def at_sun_depression(self, depression_deg: float) -> Instant:
         """When the Sun's centre is that far below the horizon after sunset (airless)."""
         tt, _ = crossing(
             self.windows, "sun", "set", self.noon_tt, self.places, altitude_deg=-depression_deg
         )
-        return at_instant(self.windows, tt, self.places)
+        return Instant(self.windows, tt, self.places)
 
     def dawn_tt(self, depression_deg: float = 18.0) -> Array:
         """Dawn that ends the evening's night: the Sun's centre at that depression, before the noon of the
@@ -171,49 +268,33 @@ class Evenings:
     def at(self, places: Places) -> Circumstances:
         return Circumstances(self.sky, self.windows, self.conjunction_tt, self.day, places)
 
-
-def at_instant(windows: Windows, tt: Array, places: Places) -> Instant:
-    """Sun and Moon at ``tt`` [window, ..., place]; NaN where ``tt`` is."""
-    sun, moon = direction(windows, "sun", tt, places), direction(windows, "moon", tt, places)
-    sun_geo = direction(windows, "sun", tt, places, geocentric=True)
-    moon_geo = direction(windows, "moon", tt, places, geocentric=True)
-    arcv_topo, daz_topo, arcl_topo = _arcs(sun, moon)
-    arcv_geo, daz_geo, arcl_geo = _arcs(sun_geo, moon_geo)
-    semidiameter = moon.moon_semidiameter_rad
-    # Phase angle i at the Moon: tan i = R sin(psi) / (D - R cos(psi)). Meeus ch. 48.
-    phase = np.arctan2(
-        sun_geo.distance_km * np.sin(arcl_geo),
-        moon_geo.distance_km - sun_geo.distance_km * np.cos(arcl_geo),
-    )
-    return Instant(
-        tt,
-        np.degrees(sun.altitude_rad),
-        np.degrees(sun.azimuth_rad),
-        np.degrees(moon.altitude_rad),
-        np.degrees(moon_geo.altitude_rad),
-        np.degrees(moon.azimuth_rad),
-        np.degrees(semidiameter),
-        np.degrees(np.arcsin(EARTH_RADIUS_KM / moon_geo.distance_km)),
-        np.degrees(arcl_topo),
-        np.degrees(arcl_geo),
-        np.degrees(arcv_topo),
-        np.degrees(arcv_geo),
-        np.degrees(daz_topo),
-        np.degrees(daz_geo),
-        np.degrees(semidiameter * (1 - np.cos(arcl_topo))) * 60,
-        np.degrees(np.arcsin(MOON_RADIUS_KM / moon_geo.distance_km) * (1 - np.cos(arcl_geo))) * 60,
-        (1 + np.cos(phase)) / 2,
-    )
+    def chosen(self, mask: npt.NDArray[np.bool_]) -> Evenings:
+        """The evenings where ``mask`` [lunation, evening] is true, each as a row of its own."""
+        rows, columns = np.nonzero(mask)
+        return Evenings(
+            self.sky, self.windows[rows], self.conjunction_tt[rows], self.day[rows, columns][:, None]
+        )
 
 
-def _arcs(sun: Direction, moon: Direction) -> tuple[Array, Array, Array]:
-    """ARCV, DAZ and ARCL in radians."""
-    arcv = moon.altitude_rad - sun.altitude_rad
-    daz = np.remainder(sun.azimuth_rad - moon.azimuth_rad + np.pi, 2 * np.pi) - np.pi
-    # Haversines keep their precision where the arcs are small.
-    across = np.cos(sun.altitude_rad) * np.cos(moon.altitude_rad) * np.sin(daz / 2) ** 2
-    haversine = np.sin(arcv / 2) ** 2 + across
-    return arcv, daz, 2 * np.arcsin(np.sqrt(np.clip(haversine, 0, 1)))
+Vector = tuple[Array, Array, Array]
+
+
+def _length(a: Vector) -> Array:
+    length: Array = np.sqrt(a[0] ** 2 + a[1] ** 2 + a[2] ** 2)
+    return length
+
+
+def _angle_rad(a: Vector, b: Vector) -> Array:
+    """The angle between two vectors, precise at any size."""
+    cross = (a[1] * b[2] - a[2] * b[1], a[2] * b[0] - a[0] * b[2], a[0] * b[1] - a[1] * b[0])
+    angle: Array = np.arctan2(_length(cross), a[0] * b[0] + a[1] * b[1] + a[2] * b[2])
+    return angle
+
+
+def _turned(angle_rad: Array) -> Array:
+    """An angle from -pi to pi."""
+    turned: Array = np.remainder(angle_rad + np.pi, 2 * np.pi) - np.pi
+    return turned
 
 
 def refraction_deg(airless_deg: Array) -> Array:

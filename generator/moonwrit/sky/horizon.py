@@ -130,32 +130,37 @@ class Direction:
         return semidiameter
 
 
-def direction(
-    windows: Windows, body: Body, tt: Array, places: Places, *, geocentric: bool = False
-) -> Direction:
-    """The body as seen from ``places`` at ``tt`` [window, ..., place].
-
-    ``geocentric``: seen from the Earth's centre, against the place's own zenith.
-    """
+def in_meridian(windows: Windows, body: Body, tt: Array, places: Places) -> tuple[Array, Array, Array]:
+    """The body's geocentric vector in km, turned into each place's meridian: outward from the axis along it,
+    east, and north along the axis. ``tt`` [window, ..., place]."""
     x = windows.scaled(tt)
     theta = series(windows.gast_rad, x) + np.radians(places.longitude_deg)
     cosine, sine = np.cos(theta), np.sin(theta)
-    east, north, up = vector(windows.sun_km if body == "sun" else windows.moon_km, x)
-    # Turned into the place's meridian: X out along it, Y east, Z north along the axis.
-    out_x, out_y = east * cosine + north * sine, north * cosine - east * sine
+    first, second, north = vector(windows.sun_km if body == "sun" else windows.moon_km, x)
+    return first * cosine + second * sine, second * cosine - first * sine, north
+
+
+def seen_from(places: Places, out: Array, east: Array, north: Array, *, geocentric: bool = False) -> Direction:
+    """The direction of a vector ``in_meridian``, from the places or, ``geocentric``, from the Earth's centre
+    against the places' own zeniths."""
     if not geocentric:
         axis_km, height_km = places.observer_km()
-        out_x, up = out_x - axis_km, up - height_km
+        out, north = out - axis_km, north - height_km
     phi = np.radians(places.latitude_deg)
     sin_phi, cos_phi = np.sin(phi), np.cos(phi)
-    distance = np.sqrt(out_x**2 + out_y**2 + up**2)
+    distance = np.sqrt(out**2 + east**2 + north**2)
     return Direction(
-        np.arcsin((out_x * cos_phi + up * sin_phi) / distance),
-        np.remainder(np.arctan2(out_y, up * cos_phi - out_x * sin_phi), 2 * np.pi),
-        np.arcsin(up / distance),
-        np.arctan2(-out_y, out_x),
+        np.arcsin((out * cos_phi + north * sin_phi) / distance),
+        np.remainder(np.arctan2(east, north * cos_phi - out * sin_phi), 2 * np.pi),
+        np.arcsin(north / distance),
+        np.arctan2(-east, out),
         distance,
     )
+
+
+def direction(windows: Windows, body: Body, tt: Array, places: Places) -> Direction:
+    """The body as seen from ``places`` at ``tt`` [window, ..., place]."""
+    return seen_from(places, *in_meridian(windows, body, tt, places))
 
 
 def _horizon_rad(body: Body, seen: Direction, places: Places, horizon: Horizon) -> Array:
