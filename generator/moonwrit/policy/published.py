@@ -4,13 +4,13 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
-from functools import cache, partial
 from zoneinfo import ZoneInfo
 
 from moonwrit.calendars import TABULAR_NAMES, tabular_by_name
 from moonwrit.errors import RequestError, did_you_mean
 from moonwrit.policy.conditions import Either, Every, Scoped
 from moonwrit.policy.methods import Method
+from moonwrit.policy.names import CRITERIA, graded_name, published_names
 from moonwrit.policy.scopes import Anywhere, AtPlaces, Before, Within
 from moonwrit.policy.walk import Era
 from moonwrit.sky import Places
@@ -21,7 +21,7 @@ from moonwrit.sky.comparison import (
     conjunction_before_hour,
     lag,
 )
-from moonwrit.sky.criteria import CRITERIA, Criterion, criterion
+from moonwrit.sky.criteria import Criterion, criterion
 from moonwrit.sky.land import american_mainland
 
 
@@ -58,7 +58,7 @@ def _at(rule_of: str, place: NamedPlace) -> Scoped:
     return Scoped(criterion(rule_of).rule(), place.scope())
 
 
-def _umm_al_qura(_: NamedPlace | None) -> Method:
+def _umm_al_qura() -> Method:
     by_midnight = Scoped(Comparison(conjunction_before_hour(24), ">", 0.0), MAKKAH.scope())
     return Method(
         "umm-al-qura", "Umm al-Qura",
@@ -75,7 +75,7 @@ def _umm_al_qura(_: NamedPlace | None) -> Method:
     )
 
 
-def _umm_al_qura_table(_: NamedPlace | None) -> Method:
+def _umm_al_qura_table() -> Method:
     rule = Any((
         Comparison(conjunction_before_hour(-3), ">", 0.0),
         Comparison(lag(), ">=", 19.75),
@@ -91,11 +91,12 @@ def _umm_al_qura_table(_: NamedPlace | None) -> Method:
             Era(_year(1423), _at("moon-up-after-conjunction", MAKKAH)),
             Era(_year(1451) + 3, Scoped(rule, MAKKAH.scope())),
         ),
-        note="The rule for 1411-1419 and from 1451/4 on was found by fitting a table; its makers have not stated it.",
+        note="The rule for 1411-1419 and from 1451/4 on was found by fitting a table; its makers have not stated "
+        "it.",
     )
 
 
-def _istanbul_1978(_: NamedPlace | None) -> Method:
+def _istanbul_1978() -> Method:
     rule = criterion("istanbul-5-8").rule()
     return Method(
         "istanbul-1978", "Istanbul 1978", criterion("istanbul-5-8").source, "calculation",
@@ -105,7 +106,7 @@ def _istanbul_1978(_: NamedPlace | None) -> Method:
     )
 
 
-def _istanbul_2016(_: NamedPlace | None) -> Method:
+def _istanbul_2016() -> Method:
     rule = criterion("istanbul-5-8").rule()
     return Method(
         "istanbul-2016", "Istanbul 2016",
@@ -138,7 +139,7 @@ def _here(
     )
 
 
-def _tabular(name: str, _: NamedPlace | None) -> Method:
+def _tabular(name: str) -> Method:
     return Method(
         name, f"Tabular calendar ({name.removeprefix('tabular-')})",
         "arithmetic of thirty-year cycles; R. H. van Gent, The Islamic calendar, Utrecht University (web)",
@@ -146,29 +147,12 @@ def _tabular(name: str, _: NamedPlace | None) -> Method:
     )
 
 
-@cache
-def _makers() -> dict[str, Callable[[NamedPlace | None], Method]]:
-    makers: dict[str, Callable[[NamedPlace | None], Method]] = {
-        "umm-al-qura": _umm_al_qura,
-        "umm-al-qura-table": _umm_al_qura_table,
-        "istanbul-1978": _istanbul_1978,
-        "istanbul-2016": _istanbul_2016,
-    }
-    makers.update({name: partial(_tabular, name) for name in TABULAR_NAMES})
-    for test in CRITERIA.values():
-        if not test.grades:
-            makers[test.name] = partial(_here, test.name, test, None, test.title)
-        labels = [grade.label for grade in test.grades]
-        for index, label in enumerate(labels):
-            name = f"{test.name.split('-')[0]}-{label.lower()}"
-            span = f"class {label}" if index == 0 else f"classes {labels[0]} to {label}"
-            makers[name] = partial(_here, name, test, tuple(labels[: index + 1]), f"{test.title}, {span}")
-    return makers
-
-
-def published_names() -> tuple[str, ...]:
-    """Every published policy's name."""
-    return tuple(_makers())
+_WHOLE: dict[str, Callable[[], Method]] = {
+    "umm-al-qura": _umm_al_qura,
+    "umm-al-qura-table": _umm_al_qura_table,
+    "istanbul-1978": _istanbul_1978,
+    "istanbul-2016": _istanbul_2016,
+}
 
 
 def published(name: str, place: NamedPlace | None = None) -> Method:
@@ -176,8 +160,16 @@ def published(name: str, place: NamedPlace | None = None) -> Method:
 
     Raises RequestError for an unknown name, or a place that is missing.
     """
-    try:
-        make = _makers()[name]
-    except KeyError:
-        raise RequestError(f'policy "{name}" is not known', did_you_mean(name, _makers())) from None
-    return make(place)
+    if name in _WHOLE:
+        return _WHOLE[name]()
+    if name in TABULAR_NAMES:
+        return _tabular(name)
+    for test_name, labels in CRITERIA.items():
+        test = criterion(test_name)
+        if name == test_name and not labels:
+            return _here(name, test, None, test.title, place)
+        for index, label in enumerate(labels):
+            if name == graded_name(test_name, label):
+                span = f"class {label}" if index == 0 else f"classes {labels[0]} to {label}"
+                return _here(name, test, labels[: index + 1], f"{test.title}, {span}", place)
+    raise RequestError(f'policy "{name}" is not known', did_you_mean(name, published_names()))

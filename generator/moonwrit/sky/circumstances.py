@@ -132,7 +132,8 @@ class Instant:
 
     @property
     def width_topo_arcmin(self) -> Array:
-        return self.moon_semidiameter_deg * 60 * (1 - np.cos(np.radians(self.arcl_topo_deg)))
+        width: Array = self.moon_semidiameter_deg * 60 * (1 - np.cos(np.radians(self.arcl_topo_deg)))
+        return width
 
     @property
     def width_geo_arcmin(self) -> Array:

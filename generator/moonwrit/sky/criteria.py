@@ -289,6 +289,13 @@ CRITERIA: dict[str, Criterion] = {c.name: c for c in (
         fixed=_shaukat(),
     ),
     Criterion(
+        "danjon-7", "Danjon limit of 7 degrees",
+        "A. Danjon, 1932-1936, as listed by A. H. Sultan, The Observatory 127, 53 (2007); others "
+        "find 5 to 7.5 degrees",
+        "topocentric elongation at best time: a floor below which no crescent is seen, not a criterion of its own",
+        fixed=Comparison(elongation("topocentric", "best-time"), ">=", 7.0),
+    ),
+    Criterion(
         "mabims-1995", "MABIMS 1995 (2-3-8)",
         "altitude of 2 deg, and elongation of 3 deg or age of 8 h: a BMKG expert quoted by aktual.com, 2015; some "
         "authors ask all three",

@@ -1,0 +1,265 @@
+"""From a policy as the content declares it to a method that can be asked."""
+
+from __future__ import annotations
+
+import csv
+import io
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, replace
+from datetime import date
+from typing import TypeVar
+
+from moonwrit.calendars import Tabular
+from moonwrit.content import Content
+from moonwrit.content import policies as declared
+from moonwrit.content.models import in_language
+from moonwrit.errors import ContentError, RequestError, did_you_mean
+from moonwrit.policy.conditions import Condition, Either, Every, Scoped
+from moonwrit.policy.methods import Method
+from moonwrit.policy.names import published_names
+from moonwrit.policy.published import NamedPlace, published
+from moonwrit.policy.scopes import Anywhere, AtPlaces, Before, Scope, Within
+from moonwrit.policy.walk import Era
+from moonwrit.sky import Places
+from moonwrit.sky import comparison as compare
+from moonwrit.sky.criteria import criterion
+
+T = TypeVar("T")
+
+
+def method(name: str, content: Content | None = None, place: NamedPlace | None = None) -> Method:
+    """The method of a policy of the content, or of a published one.
+
+    ``place`` fills the place that a published policy leaves open. Raises ContentError where a declaration
+    is at fault, RequestError for an unknown name.
+    """
+    if content is not None and name in content.policies:
+        return _Reader(content, name, (name,)).method()
+    known = published_names()
+    if name not in known:
+        names = [*known, *(content.policies if content else ())]
+        raise RequestError(f'policy "{name}" is not known', did_you_mean(name, names))
+    return published(name, place)
+
+
+def named_place(content: Content, place_id: str) -> NamedPlace:
+    """A place of the content by the name that the site's language gives it."""
+    place = content.places[place_id]
+    name = in_language(place.name, content.site.language)
+    return NamedPlace(name, place.latitude, place.longitude, place.elevation, place.zone)
+
+
+@dataclass(frozen=True)
+class _Reader:
+    """Reads one declaration. ``trail`` holds the names that led here: a policy may not adopt itself."""
+
+    content: Content
+    name: str
+    trail: tuple[str, ...]
+
+    @property
+    def policy(self) -> declared.Policy:
+        return self.content.policies[self.name]
+
+    def method(self) -> Method:
+        policy, language = self.policy, self.content.site.language
+        base = Method(
+            self.name,
+            in_language(policy.name, language),
+            in_language(policy.source, language) if policy.source else "",
+            policy.decided_by,
+        )
+        if policy.published is not None:
+            place = named_place(self.content, policy.place) if policy.place else None
+            known = self._pointing(("published",), lambda: published(str(policy.published), place))
+            return replace(
+                known, name=self.name, title=base.title, source=base.source or known.source,
+                decided_by=policy.decided_by,
+            )
+        if policy.arithmetic is not None:
+            return replace(base, tabular=Tabular(policy.arithmetic.pattern, policy.arithmetic.epoch))
+        if policy.table is not None:
+            return replace(base, table=self._table(policy.table))
+        if policy.adopts is not None:
+            return replace(base, adopts=tuple(
+                self._adopted(adopted, index) for index, adopted in enumerate(policy.adopts)
+            ))
+        assert policy.clause is not None
+        return replace(base, eras=(Era(0, self._condition(policy.clause, ())),))
+
+    def _pointing(self, path: tuple[str | int, ...], make: Callable[[], T]) -> T:
+        """Run ``make``; a RequestError becomes a ContentError at the declaration's line."""
+        try:
+            return make()
+        except RequestError as fault:
+            raise self.content.error("policies.yaml", (self.name, *path), fault.what, fault.mend) from None
+
+    def _adopted(self, adopted: str, index: int) -> Method:
+        if adopted in self.trail:
+            raise self.content.error(
+                "policies.yaml", (self.name, "adopts", index),
+                f'policy "{adopted}" adopts itself in the end', "let one of them decide",
+            )
+        if adopted in self.content.policies:
+            return _Reader(self.content, adopted, (*self.trail, adopted)).method()
+        return self._pointing(("adopts", index), lambda: published(adopted))
+
+    # --- clauses ------------------------------------------------------------------------------
+
+    def _condition(self, clause: declared.Clause, path: tuple[str | int, ...]) -> Condition:
+        if clause.every is not None:
+            return Every(tuple(self._condition(c, (*path, "every", i)) for i, c in enumerate(clause.every)))
+        if clause.either is not None:
+            return Either(tuple(self._condition(c, (*path, "either", i)) for i, c in enumerate(clause.either)))
+        assert clause.test is not None
+        assert clause.where is not None
+        test = clause.test
+        rule = self._pointing((*path, "test"), lambda: _rule(test))
+        return Scoped(rule, self._scope(clause.where))
+
+    def _scope(self, where: declared.Where) -> Scope:
+        if where.place is not None:
+            return self._at([where.place], 1.0)
+        if where.any_of is not None:
+            return self._at(self._place_ids(where.any_of), 0.0)
+        if where.every_of is not None:
+            return self._at(self._place_ids(where.every_of), 1.0)
+        if where.of is not None:
+            return self._at(self._place_ids(where.of), where.share or 1.0)
+        if where.of_area is not None:
+            return Within(self.content.outline(where.of_area), where.share or 1.0, step_deg=0.5)
+        if where.within is not None:
+            return Within(self.content.outline(where.within), step_deg=0.5)
+        if where.shares_night_with is not None:
+            night = named_place(self.content, where.shares_night_with)
+            return Anywhere(Before(dawn_at=Places.of([night.row])))
+        return Anywhere(None if where.before is None else self._deadline(where.before))
+
+    def _deadline(self, before: declared.Deadline) -> Before:
+        if before.dawn_at is None:
+            return Before(hour_ut=before.hour_ut)
+        dawn_at = Places.of([named_place(self.content, before.dawn_at).row])
+        return Before(dawn_at=dawn_at, depression_deg=before.depression or 18.0)
+
+    def _place_ids(self, named: list[str] | str) -> list[str]:
+        return named if isinstance(named, list) else list(self.content.regions[named].places)
+
+    def _at(self, ids: list[str], needed: float) -> AtPlaces:
+        places = [named_place(self.content, place_id) for place_id in ids]
+        fallback = [self._fallback(place) for place in places] if self.policy.fallback else []
+        return AtPlaces(
+            tuple(place.name for place in places),
+            Places.of([place.row for place in places]),
+            needed,
+            fallback=Places.of([place.row for place in fallback]) if fallback else None,
+            fallback_names=tuple(place.name for place in fallback),
+        )
+
+    def _fallback(self, place: NamedPlace) -> NamedPlace:
+        instead = self.policy.fallback
+        assert instead is not None
+        if instead.place is not None:
+            return named_place(self.content, instead.place)
+        assert instead.latitude is not None
+        side = "N" if instead.latitude >= 0 else "S"
+        return replace(
+            place, name=f"{abs(instead.latitude):g} {side} on the meridian of {place.name}",
+            latitude_deg=instead.latitude,
+        )
+
+    # --- tables -------------------------------------------------------------------------------
+
+    def _table(self, file: str) -> Mapping[int, date]:
+        """A community's own table: a CSV file with columns year, month and starts."""
+        path = self.content.folder / file
+        if path.resolve().parent != self.content.folder.resolve():
+            raise self.content.error(
+                "policies.yaml", (self.name, "table"), f'the table "{file}" lies outside the content folder',
+                "keep it beside policies.yaml and give its name alone",
+            )
+        try:
+            text = path.read_text(encoding="utf-8-sig")
+        except FileNotFoundError:
+            raise self.content.error(
+                "policies.yaml", (self.name, "table"), f'there is no file "{file}"', "put it beside policies.yaml"
+            ) from None
+        except (UnicodeDecodeError, OSError) as fault:
+            raise ContentError(path, 0, f"the table cannot be read ({fault})", "save it as UTF-8 text") from None
+        return _starts(path, text)
+
+
+def _starts(path: object, text: str) -> Mapping[int, date]:
+    rows = csv.DictReader(io.StringIO(text))
+    if set(rows.fieldnames or ()) != {"year", "month", "starts"}:
+        raise ContentError(
+            str(path), 1, "the columns must be year, month and starts", "name them in the first line"
+        )
+    out: dict[int, date] = {}
+    before: int | None = None
+    for row in rows:
+        line = rows.line_num
+        try:
+            ordinal = (int(row["year"]) - 1) * 12 + int(row["month"]) - 1
+            starts = date.fromisoformat(row["starts"])
+            if not 1 <= int(row["month"]) <= 12:
+                raise ValueError
+        except (TypeError, ValueError):
+            raise ContentError(
+                str(path), line, "this is not a month and its first day", "write for instance 1447,9,2026-02-18"
+            ) from None
+        if before is not None:
+            if ordinal != before + 1:
+                raise ContentError(
+                    str(path), line, "this month does not follow the one before",
+                    "give every month once, in order",
+                )
+            length = (starts - out[before]).days
+            if length not in (29, 30):
+                raise ContentError(
+                    str(path), line, f"the month before would have {length} days", "a month has 29 or 30 days"
+                )
+        out[ordinal], before = starts, ordinal
+    return out
+
+
+def _rule(test: declared.Criterion | declared.AllOf | declared.AnyOf | declared.Threshold) -> compare.Rule:
+    if isinstance(test, declared.Criterion):
+        return criterion(test.criterion).rule(test.accept)
+    if isinstance(test, declared.AllOf):
+        return compare.All(tuple(_rule(part) for part in test.all))
+    if isinstance(test, declared.AnyOf):
+        return compare.Any(tuple(_rule(part) for part in test.any))
+    return _threshold(test)
+
+
+def _threshold(test: declared.Threshold) -> compare.Comparison:
+    if test.before_hour_ut is not None:
+        return compare.Comparison(compare.conjunction_before_hour(test.before_hour_ut), ">", 0.0)
+    if test.before_dawn is not None:
+        return compare.Comparison(compare.conjunction_before_dawn(test.before_dawn), ">", 0.0)
+    signs: tuple[tuple[compare.Sign, float | None], ...] = (
+        (">=", test.at_least), (">", test.more_than), ("<=", test.at_most), ("<", test.less_than),
+    )
+    sign, value = next((sign, value) for sign, value in signs if value is not None)
+    return compare.Comparison(_quantity(test), sign, value)
+
+
+def _quantity(test: declared.Threshold) -> compare.Quantity:
+    frame = test.frame or "topocentric"
+    match test.quantity:
+        case "altitude":
+            return compare.altitude(frame, test.limb or "centre", test.air == "refracted", test.at or "sunset")
+        case "elongation":
+            return compare.elongation(frame, test.at or "sunset")
+        case "arc-of-vision":
+            return compare.arc_of_vision(frame, test.at or "best-time")
+        case "relative-azimuth":
+            return compare.relative_azimuth(frame, test.at or "best-time")
+        case "width":
+            return compare.width(frame, test.at or "best-time")
+        case "lag":
+            return compare.lag()
+        case "age":
+            return compare.age()
+        case _:
+            return compare.illumination(test.at or "sunset")
