@@ -8,7 +8,7 @@ from itertools import pairwise
 from typing import Any
 
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from moonwrit.content.models import Observance, When
@@ -199,6 +199,7 @@ _RULES = st.dictionaries(
 )
 
 
+@settings(deadline=None)  # a busy machine is no fault
 @given(_RULES, years_of_months())
 def test_every_occurrence_belongs_to_its_month(rules: dict[str, Observance], months: list[Month]) -> None:
     by_number = {(m.year, m.month): m for m in months}
@@ -217,6 +218,7 @@ def test_every_occurrence_belongs_to_its_month(rules: dict[str, Observance], mon
             assert one.ends - one.starts == (when.run - 1) * DAY
 
 
+@settings(deadline=None)  # a busy machine is no fault
 @given(_RULES, years_of_months())
 def test_keys_are_unique_and_dates_in_order(rules: dict[str, Observance], months: list[Month]) -> None:
     found = occurrences(rules, months)
@@ -229,6 +231,7 @@ def test_keys_are_unique_and_dates_in_order(rules: dict[str, Observance], months
     assert sorted(one.key for one in alone) == sorted(one.key for one in found)
 
 
+@settings(deadline=None)  # a busy machine is no fault
 @given(st.sampled_from(_WEEKDAYS), years_of_months())
 def test_no_later_such_weekday_is_left_in_the_month(weekday: str, months: list[Month]) -> None:
     found = occurrences({"it": rule(month="every", last=weekday)}, months)
@@ -238,6 +241,7 @@ def test_no_later_such_weekday_is_left_in_the_month(weekday: str, months: list[M
         assert home.starts <= one.starts <= home.ends < one.starts + 7 * DAY
 
 
+@settings(deadline=None)  # a busy machine is no fault
 @given(years_of_months())
 def test_whole_months_leave_no_gap(months: list[Month]) -> None:
     found = occurrences({"it": rule(month="every", day=1, run="month")}, months)

@@ -6,16 +6,28 @@ a plain string (the site's language) or a mapping from language code to text.
 
 from __future__ import annotations
 
+import difflib
 import re
+from collections.abc import Mapping
 from datetime import date, datetime
+from functools import cache
+from importlib import resources
 from typing import Annotated, Any, Literal
-from zoneinfo import ZoneInfo, available_timezones
+from zoneinfo import ZoneInfo
 
-from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Field, model_validator
+from pydantic import (
+    AfterValidator,
+    BaseModel,
+    BeforeValidator,
+    ConfigDict,
+    Field,
+    WithJsonSchema,
+    model_validator,
+)
 
-from moonwrit.errors import did_you_mean
-
-_LANGUAGE = re.compile(r"^[a-z]{2,3}(-[A-Za-z0-9]{2,8})*$")
+_IDENTIFIER = r"^[a-z0-9]+(-[a-z0-9]+)*$"
+_LANGUAGE = r"^[a-z]{2,3}(-[A-Za-z0-9]{2,8})*$"
+_ISO = re.compile(r"[0-9]{4}-[0-9]{2}-[0-9]{2}")
 _CONTROL = re.compile(r"[\x00-\x08\x0b-\x1f\x7f\x85\u2028\u2029]")
 
 
@@ -30,59 +42,160 @@ def _plain_text(value: str) -> str:
 def _words(value: Any) -> Any:
     if isinstance(value, str):
         return {"": value}
+    if isinstance(value, dict):
+        return value
+    if value is None:
+        raise ValueError("no text is written; write it after the colon")
+    if isinstance(value, list):
+        raise ValueError("this is a list; write one text, or a text for each language (en: ..., ar: ...)")
+    raise ValueError("this is not text; put it in quotes")
+
+
+def _language(value: str) -> str:
+    if not re.fullmatch(_LANGUAGE, value):
+        raise ValueError(f'"{value}" is not a language code; write for instance en, ar, tr')
     return value
 
 
 def _language_codes(value: dict[str, str]) -> dict[str, str]:
-    for code in value:
-        if code and not _LANGUAGE.match(code):
-            raise ValueError(f'"{code}" is not a language code; write for instance en, ar, tr')
     if not value:
         raise ValueError("no text in any language; write at least one")
+    for code in value:
+        if code:  # the empty code stands for the site's language
+            _language(code)
     return value
 
 
 def _identifier(value: str) -> str:
-    if not re.fullmatch(r"[a-z0-9]+(-[a-z0-9]+)*", value):
+    if not re.fullmatch(_IDENTIFIER, value):
         raise ValueError(f'"{value}" cannot be a name here; use small letters, digits and single hyphens')
     return value
 
 
+@cache
+def _zones() -> frozenset[str]:
+    # The names of the tzdata package, and not what this machine happens to have: a machine's
+    # "localtime" would give other dates elsewhere.
+    return frozenset(resources.files("tzdata").joinpath("zones").read_text(encoding="utf-8").split())
+
+
 def _zone(value: str) -> str:
-    if value not in available_timezones():
-        raise ValueError(f'time zone "{value}" is unknown; {did_you_mean(value, available_timezones())}')
+    if value not in _zones():
+        near = difflib.get_close_matches(value, sorted(_zones()), n=1)
+        hint = f'did you mean "{near[0]}"?' if near else "write for instance Australia/Melbourne"
+        raise ValueError(f'time zone "{value}" is unknown; {hint}')
+    return value
+
+
+def _iso(value: Any, kind: type[date], example: str) -> Any:
+    # Not left to pydantic, which would take digits alone for seconds since 1970.
+    if not isinstance(value, str):
+        return value
+    try:
+        if _ISO.match(value):
+            return kind.fromisoformat(value)
+        reason = ""
+    except ValueError as error:
+        reason = f" ({error})"
+    noun = "date and time" if kind is datetime else "date"
+    raise ValueError(f'"{value}" is not a {noun}{reason}; write for instance {example}')
+
+
+def _day(value: Any) -> Any:
+    return _iso(value, date, "2026-12-01")
+
+
+def _moment(value: Any) -> Any:
+    return _iso(value, datetime, "2026-12-01T09:00:00+11:00")
+
+
+def _zoned(value: datetime) -> datetime:
+    if value.tzinfo is None:
+        raise ValueError(f"{value.isoformat()} has no time zone; write it as 2026-12-01T09:00:00+11:00")
     return value
 
 
 Text = Annotated[str, AfterValidator(_plain_text)]
-Identifier = Annotated[str, AfterValidator(_identifier)]
-Words = Annotated[dict[str, Text], BeforeValidator(_words), AfterValidator(_language_codes)]
+Identifier = Annotated[
+    str, AfterValidator(_identifier), WithJsonSchema({"type": "string", "pattern": _IDENTIFIER})
+]
+Language = Annotated[
+    str, AfterValidator(_language), WithJsonSchema({"type": "string", "pattern": _LANGUAGE})
+]
+Words = Annotated[
+    dict[str, Text],
+    BeforeValidator(_words),
+    AfterValidator(_language_codes),
+    WithJsonSchema(
+        {
+            "anyOf": [
+                {"type": "string", "minLength": 1},
+                {
+                    "type": "object",
+                    "patternProperties": {_LANGUAGE: {"type": "string", "minLength": 1}},
+                    "additionalProperties": False,
+                    "minProperties": 1,
+                },
+            ]
+        }
+    ),
+]
 ZoneName = Annotated[str, AfterValidator(_zone)]
+Day = Annotated[date, BeforeValidator(_day)]
+Moment = Annotated[datetime, BeforeValidator(_moment), AfterValidator(_zoned)]
+
+
+def in_language(words: Mapping[str, str], language: str, fallback: str = "") -> str:
+    """The text of ``words`` in ``language`` (``en-AU``, or else ``en``), or else in the ``fallback`` language.
+
+    A text written without a code is in the site's language; it is taken where neither is there.
+    """
+    for code in (language, language.partition("-")[0], fallback, ""):
+        if code in words:
+            return words[code]
+    return next(iter(words.values()))
 
 
 class _Model(BaseModel):
     model_config = ConfigDict(extra="forbid", frozen=True, populate_by_name=True)
 
 
+@cache
+def _zone_info(name: str) -> ZoneInfo:
+    # From the tzdata package, for the same reason: ZoneInfo(name) would prefer the machine's own files.
+    with resources.files("tzdata").joinpath("zoneinfo", *name.split("/")).open("rb") as file:
+        return ZoneInfo.from_file(file, key=name)
+
+
+# A field's description is read by people: it stands in the schemas that editors use, and an error
+# says "write <description>".
+
+
 class Place(_Model):
     """A named place: geodetic WGS 84 degrees (north and east positive), metres above sea level, IANA zone."""
 
     name: Words
-    latitude: Annotated[float, Field(ge=-90, le=90)]
-    longitude: Annotated[float, Field(ge=-180, le=180)]
-    elevation: Annotated[float, Field(ge=-500, le=9000)] = 0.0
-    timezone: ZoneName
+    latitude: Annotated[
+        float, Field(ge=-90, le=90, description="degrees north of the equator, -90 to 90; south is negative")
+    ]
+    longitude: Annotated[
+        float, Field(ge=-180, le=180, description="degrees east of Greenwich, -180 to 180; west is negative")
+    ]
+    elevation: Annotated[
+        float, Field(ge=-500, le=9000, description="metres above sea level, -500 to 9000")
+    ] = 0.0
+    timezone: Annotated[ZoneName, Field(description="an IANA time zone, for instance Australia/Melbourne")]
 
     @property
     def zone(self) -> ZoneInfo:
-        return ZoneInfo(self.timezone)
+        return _zone_info(self.timezone)
 
 
 class Region(_Model):
     """The named places that a policy speaks for."""
 
     name: Words
-    places: Annotated[list[Identifier], Field(min_length=1)]
+    places: Annotated[list[Identifier], Field(min_length=1, description="a list of one or more places")]
 
 
 Weekday = Literal["monday", "tuesday", "wednesday", "thursday", "friday", "saturday", "sunday"]
@@ -93,18 +206,35 @@ class When(_Model):
 
     Exactly one of ``day``, ``last`` and ``last_nights``:
     ``day: 1`` (or ``day: last``) with an optional ``run`` of that many days (``run: month`` to its end);
-    ``last: friday`` the last such weekday of the month; ``last_nights: 10`` the nights from the 21st on,
-    each its own occurrence, with ``odd: true`` only the odd ones. ``month: every`` repeats in each month.
+    ``last: friday`` the last such weekday of the month; ``last_nights: 10`` the nights from the 21st on
+    (``n``: from day 31 - n on), each its own occurrence, with ``odd: true`` only the odd ones.
+    ``month: every`` repeats in each month. A run longer than what is left of the month runs on.
     ``night: true`` means the night before the day: it begins at the sunset of the evening before.
     """
 
-    month: Annotated[int, Field(ge=1, le=12)] | Literal["every"]
-    day: Annotated[int, Field(ge=1, le=30)] | Literal["last"] | None = None
-    run: Annotated[int, Field(ge=1, le=30)] | Literal["month"] = 1
-    night: bool = False
-    last: Weekday | None = None
-    last_nights: Annotated[int, Field(ge=1, le=29)] | None = None
-    odd: bool = False
+    month: Annotated[
+        Annotated[int, Field(ge=1, le=12)] | Literal["every"],
+        Field(description="a lunar month, 1 (Muharram) to 12 (Dhu al-Hijja), or every"),
+    ]
+    day: Annotated[
+        Annotated[int, Field(ge=1, le=30)] | Literal["last"] | None,
+        Field(description="a day of the lunar month, 1 to 30, or last"),
+    ] = None
+    run: Annotated[
+        Annotated[int, Field(ge=1, le=30)] | Literal["month"],
+        Field(description="how many days, 1 to 30, or month (to its end)"),
+    ] = 1
+    night: Annotated[
+        bool, Field(description="true for the night before the day, from the sunset of the evening before")
+    ] = False
+    last: Annotated[
+        Weekday | None, Field(description="a weekday, monday to sunday: the last one of the month")
+    ] = None
+    last_nights: Annotated[
+        Annotated[int, Field(ge=1, le=29)] | None,
+        Field(description="how many nights, 1 to 29, up to that of the 30th; 10 is from the 21st on"),
+    ] = None
+    odd: Annotated[bool, Field(description="true for the odd nights only, otherwise false")] = False
 
     @model_validator(mode="after")
     def _one_kind(self) -> When:
@@ -125,15 +255,15 @@ class Observance(_Model):
 
     name: Words
     when: When
-    tags: list[Identifier] = []
+    tags: Annotated[list[Identifier], Field(description="a list of words of your own, such as main")] = []
     about: Words | None = None
 
 
 class Years(_Model):
     """Hijri years, both included."""
 
-    first: Annotated[int, Field(alias="from", ge=1)]
-    last: Annotated[int, Field(alias="to", ge=1)]
+    first: Annotated[int, Field(alias="from", ge=1, description="the first Hijri year, for instance 1447")]
+    last: Annotated[int, Field(alias="to", ge=1, description="the last Hijri year, for instance 1449")]
 
     @model_validator(mode="after")
     def _in_order(self) -> Years:
@@ -154,22 +284,38 @@ class Site(_Model):
     """The community and its site."""
 
     community: Words
-    address: Annotated[str, Field(pattern=r"^https?://[^\s/?#]+(/[^\s?#]*)?$")]
-    language: str = "en"
+    address: Annotated[
+        str,
+        Field(
+            pattern=r"^https?://[^\s/?#]+(/[^\s?#]*)?$",
+            description="the address under which the site will stand, for instance https://example.org/calendar/",
+        ),
+    ]
+    language: Language = "en"
     years: Years
-    revised: datetime
+    revised: Annotated[
+        Moment,
+        Field(description="when the content was last changed, for instance 2026-12-01T09:00:00+11:00"),
+    ]
     authority: Words
     contact: Words | None = None
     calendars: Annotated[dict[Identifier, Calendar], Field(min_length=1)]
 
-    @model_validator(mode="after")
-    def _stamped(self) -> Site:
-        if self.revised.tzinfo is None:
-            raise ValueError("revised has no time zone; write it as 2026-12-01T09:00:00+11:00")
-        return self
-
 
 __all__ = [
-    "Calendar", "Identifier", "Observance", "Place", "Region", "Site", "Text", "When", "Words", "Years",
+    "Calendar",
+    "Day",
+    "Identifier",
+    "Language",
+    "Moment",
+    "Observance",
+    "Place",
+    "Region",
+    "Site",
+    "Text",
+    "When",
+    "Words",
+    "Years",
     "date",
+    "in_language",
 ]
