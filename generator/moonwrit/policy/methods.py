@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from datetime import date, timedelta
 from typing import Literal
@@ -11,10 +11,11 @@ import numpy as np
 
 from moonwrit.calendars import Tabular
 from moonwrit.errors import RequestError
-from moonwrit.policy.conditions import Condition, evidence
+from moonwrit.policy.conditions import evidence
 from moonwrit.policy.months import FIXED, Basis, Evidence, Margin, Month, Note, Standing
 from moonwrit.policy.uncertainty import uncertainty_note
 from moonwrit.policy.walk import Era, Questions, Step, walk
+from moonwrit.policy.windows import windows
 
 
 @dataclass(frozen=True)
@@ -102,7 +103,10 @@ class Method:
 
     def _computed(self, first: int, last: int) -> tuple[Month, ...]:
         questions, steps = walk(self.eras, first, last)
-        found = self._evidence(questions, steps[:-1])
+        lead_in = first - steps[0].ordinal
+        spans = windows(questions, steps)[lead_in:] if self.decided_by == "record" else None
+        steps = steps[lead_in:]
+        found = _evidence(questions, [step.ordinal for step in steps[:-1]], [step.evening for step in steps])
         out = []
         for step, after, (why, margin) in zip(steps, steps[1:], found, strict=False):
             starts = date.fromordinal(step.start)
@@ -111,25 +115,36 @@ class Method:
             )
             notes = _notes(step) + uncertainty_note(margin, starts)
             out.append(replace(
-                month, margin=margin, evidence=replace(why, met=step.met, notes=(*why.notes, *notes))
+                month, margin=margin, evidence=replace(why, met=step.met, notes=(*why.notes, *notes)),
+                window=spans[step.ordinal - first] if spans else (starts, starts),
             ))
         return tuple(out)
 
-    def _evidence(self, questions: Questions, steps: list[Step]) -> list[tuple[Evidence, Margin]]:
-        """Evidence and margin of each step, era by era."""
-        by_condition: dict[int, list[int]] = {}
-        conditions: dict[int, Condition] = {}
-        for index, step in enumerate(steps):
-            condition = questions.condition(step.ordinal)
-            conditions[id(condition)] = condition
-            by_condition.setdefault(id(condition), []).append(index)
-        out: dict[int, tuple[Evidence, Margin]] = {}
-        for key, indices in by_condition.items():
-            rows = np.array([steps[i].ordinal - int(questions.moons.ordinal[0]) for i in indices])
-            days = np.array([[steps[i].evening] for i in indices])
-            answers = evidence(conditions[key], questions.evenings(rows, days))
-            out.update(zip(indices, answers, strict=True))
-        return [out[i] for i in range(len(steps))]
+    def on_evenings(self, asked: Sequence[tuple[int, date]]) -> list[tuple[Evidence, Margin]] | None:
+        """What the test finds for the months of the ordinals on the evenings of the dates given with them.
+
+        None where the method does not look at the sky.
+        """
+        if not self.eras or not asked:
+            return None if not self.eras else []
+        ordinals = [ordinal for ordinal, _ in asked]
+        questions = Questions(self.eras, min(ordinals), max(ordinals))
+        return _evidence(questions, ordinals, [day.toordinal() for _, day in asked])
+
+
+def _evidence(
+    questions: Questions, ordinals: Sequence[int], days: Sequence[int]
+) -> list[tuple[Evidence, Margin]]:
+    """Evidence and margin for the month of each ordinal on the evening of the day beside it, era by era."""
+    eras = np.searchsorted([era.first for era in questions.eras], ordinals, side="right") - 1
+    out: dict[int, tuple[Evidence, Margin]] = {}
+    for era in np.unique(eras):
+        indices = np.flatnonzero(eras == era)
+        rows = np.array(ordinals)[indices] - int(questions.moons.ordinal[0])
+        evenings = questions.evenings(rows, np.array(days)[indices][:, None])
+        found = evidence(questions.eras[era].condition, evenings)
+        out.update(zip(indices.tolist(), found, strict=True))
+    return [out[index] for index in range(len(ordinals))]
 
 
 def _notes(step: Step) -> tuple[Note, ...]:

@@ -79,7 +79,11 @@ class Evidence:
 
 @dataclass(frozen=True, slots=True)
 class Month:
-    """One lunar month. ``eve`` is the civil date on whose evening it begins; ``starts`` the first day."""
+    """One lunar month. ``eve`` is the civil date on whose evening it begins; ``starts`` the first day.
+
+    ``window`` is the planning window: the earliest and the latest first day that the rules allow while later
+    evenings decide; both are ``starts`` where nothing is left to decide.
+    """
 
     year: int
     month: int
@@ -90,6 +94,7 @@ class Month:
     policy: str
     margin: Margin
     evidence: Evidence
+    window: tuple[date, date] | None = None
 
     @property
     def eve(self) -> date:

@@ -8,6 +8,7 @@ whatever the sky does, unless the community has recorded so.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
@@ -55,7 +56,11 @@ class Questions:
         self.eras = eras
         self.moons: Lunations = lunations(first, last)
         self.days = self.moons.day[:, None] + np.arange(_EVENINGS) - _BEFORE
-        self.answers = self._met(np.arange(len(self.moons)), self.days)
+
+    @cached_property
+    def answers(self) -> Flags:
+        """[lunation, evening]"""
+        return self._met(np.arange(len(self.moons)), self.days)
 
     def condition(self, ordinal: int) -> Condition:
         return [era.condition for era in self.eras if era.first <= ordinal][-1]
@@ -90,7 +95,7 @@ class Questions:
 
 
 def walk(eras: tuple[Era, ...], first: int, last: int) -> tuple[Questions, list[Step]]:
-    """The starts of the months of ordinal ``first`` to ``last`` + 1.
+    """The starts of the months of ordinal ``first`` to ``last`` + 1, after those of the lead-in.
 
     Raises RequestError where a month lies outside the ephemeris or before the first era.
     """
@@ -114,7 +119,7 @@ def walk(eras: tuple[Era, ...], first: int, last: int) -> tuple[Questions, list[
             begin + row, start, evening, is_met,
             questions.met(row, evening - 1), is_met or questions.met(row, evening + 1),
         ))
-    return questions, steps[first - begin:]
+    return questions, steps
 
 
 def _first_start(questions: Questions) -> int:

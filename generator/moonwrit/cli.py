@@ -1,0 +1,342 @@
+"""The command ``moonwrit``: reads the words, asks the packages, prints. Slow imports wait for their command."""
+
+from __future__ import annotations
+
+import json
+import os
+import re
+import sys
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
+from datetime import UTC, date, datetime
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import click
+
+from moonwrit import __version__
+from moonwrit.errors import MoonwritError, RequestError, did_you_mean
+
+if TYPE_CHECKING:
+    from moonwrit.content import Content
+    from moonwrit.policy import Method, Month, NamedPlace
+
+
+class _Commands(click.Group):
+    """A group in which every error that a user can mend is one message and its own exit code."""
+
+    def invoke(self, ctx: click.Context) -> Any:
+        try:
+            return super().invoke(ctx)
+        except MoonwritError as fault:
+            click.echo(f"moonwrit: {fault}", err=True)
+            ctx.exit(fault.exit_code)
+
+
+def _date(_: click.Context, __: click.Parameter, value: str | None) -> date | None:
+    if value is None:
+        return None
+    try:
+        return date.fromisoformat(value)
+    except ValueError:
+        raise click.BadParameter(f'"{value}" is not a date; write for instance 2026-12-01') from None
+
+
+_OPTIONS: dict[str, list[Callable[[Callable[..., None]], Callable[..., None]]]] = {
+    "content": [click.option(
+        "--content", "folder", type=click.Path(path_type=Path), default=Path("content"), show_default=True,
+        help="Folder of content files.",
+    )],
+    "json": [click.option("--json", "as_json", is_flag=True, help="Print JSON.")],
+    "as_of": [click.option("--as-of", metavar="DATE", callback=_date, help='The date to take for "today".')],
+    "years": [
+        click.option("--from", "first", type=int, metavar="YEAR", help="First Hijri year."),
+        click.option("--to", "last", type=int, metavar="YEAR", help="Last Hijri year, included."),
+    ],
+    "policy": [click.option("--policy", metavar="P", help="A policy of the content, or a published one.")],
+    "place": [click.option(
+        "--place", "places", multiple=True, metavar="PLACE",
+        help='A place of the content, or "name,lat,lon[,elevation[,zone]]".',
+    )],
+}
+
+
+def _shared(*names: str) -> Callable[[Callable[..., None]], Callable[..., None]]:
+    """The options that several commands share, each written once."""
+
+    def wrap(command: Callable[..., None]) -> Callable[..., None]:
+        for name in reversed(names):
+            for option in reversed(_OPTIONS[name]):
+                command = option(command)
+        return command
+
+    return wrap
+
+
+@click.group(cls=_Commands, context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100})
+@click.version_option(__version__, prog_name="moonwrit")
+def main() -> None:
+    """Publish a community's lunar (Hijri) calendar: every date with its basis, as pages and as feeds."""
+
+
+@main.command()
+@_shared("content", "as_of")
+@click.option("--output", type=click.Path(path_type=Path), default=Path("output"), show_default=True,
+              help="Folder of the built site.")
+def publish(folder: Path, output: Path, as_of: date | None) -> None:
+    """Build the site and its feeds."""
+    from moonwrit.almanac import assemble
+    from moonwrit.publish import publish as put
+
+    content = _content(folder)
+    with _progress("Computing months and observances"):
+        almanacs = assemble(content, as_of or _today(content))
+    with _progress("Writing the site"):
+        files = put(almanacs, output)
+    click.echo(f"{files} files in {output}")
+
+
+@main.command()
+@_shared("content")
+def check(folder: Path) -> None:
+    """Check the content files; says nothing but a word where all is well."""
+    content = _content(folder)
+    click.echo(
+        f"{folder}: all is well ({len(content.places)} places, {len(content.policies)} policies, "
+        f"{len(content.observances)} observances)"
+    )
+
+
+@main.command()
+@_shared("content", "policy", "place", "years", "json")
+def months(
+    folder: Path, policy: str | None, places: tuple[str, ...], first: int | None, last: int | None, as_json: bool
+) -> None:
+    """Month starts as a table."""
+    content = _content_if_there(folder, policy)
+    method = _method(content, policy, places)
+    years = _years(content, first, last)
+    with _progress("Computing months"):
+        found = method.months(*years)
+    from moonwrit.publish.basis import month_json
+
+    if as_json:
+        _print_json([month_json(month) for month in found])
+        return
+    _table(
+        f"{method.title}, {years[0]}-{years[1]} AH",
+        ("month", "starts", "days", "standing", "basis", "deciding quantity", "margin", "how close"),
+        [
+            (
+                f"{m.year}-{m.month:02d}", f"{m.starts:%a %Y-%m-%d}", str(m.length), m.standing, m.basis,
+                m.margin.quantity,
+                "" if m.margin.margin is None else f"{m.margin.margin:+g} {m.margin.unit}".strip(),
+                m.margin.closeness,
+            )
+            for m in found
+        ],
+    )
+
+
+@main.command()
+@click.argument("on", metavar="DATE", callback=_date)
+@_shared("content", "place", "json")
+def evening(on: date, folder: Path, places: tuple[str, ...], as_json: bool) -> None:
+    """Circumstances of the evening of a civil date at places."""
+    content = _content(folder) if not places or _is_folder(folder) else None
+    from moonwrit.policy import named_place
+    from moonwrit.policy.evening import evening_at
+
+    if places:
+        chosen = [_place(content, text) for text in places]
+    else:
+        assert content is not None
+        chosen = [named_place(content, place_id) for place_id in content.places]
+    rows = evening_at(on, chosen)
+    if as_json:
+        _print_json(rows)
+        return
+    keys = [key for key in rows[0] if key not in ("date", "place")]
+    _table(
+        f"Evening of {on:%A %Y-%m-%d}",
+        ("", *(str(row["place"]) for row in rows)),
+        [(key, *("-" if row[key] is None else str(row[key]) for row in rows)) for key in keys],
+    )
+    click.echo("Never point optics at or near the Sun before the whole disc has set: eyes can be lost.")
+
+
+@main.command()
+@click.argument("what")
+@_shared("content", "policy", "place", "json")
+def why(what: str, folder: Path, policy: str | None, places: tuple[str, ...], as_json: bool) -> None:
+    """The basis of one date, in words.
+
+    WHAT is a lunar month (1447-9), a civil date (2026-02-19), or an observance and its year
+    (eid-al-fitr-1447).
+    """
+    from moonwrit.publish.basis import month_json
+    from moonwrit.publish.words import why_paragraphs
+
+    content = _content_if_there(folder, policy)
+    month, about = _asked(what, _method(content, policy, places), content)
+    if as_json:
+        _print_json(month_json(month))
+        return
+    for paragraph in [*about, *why_paragraphs(month)]:
+        click.echo(paragraph)
+
+
+@main.command()
+@click.argument("folder", metavar="DIR", type=click.Path(path_type=Path))
+def begin(folder: Path) -> None:
+    """Write a new, commented content folder to start from."""
+    import shutil
+
+    from moonwrit.resources import starter_folder
+
+    if folder.exists() and any(folder.iterdir() if folder.is_dir() else [folder]):
+        raise RequestError(f"{folder} is there already and not empty", "name a new folder")
+    try:
+        shutil.copytree(starter_folder(), folder, dirs_exist_ok=True)
+    except OSError as fault:
+        raise RequestError(f"{folder} cannot be written ({fault.strerror})", "name another folder") from None
+    click.echo(f"{folder} is yours to change: begin with {folder / 'site.yaml'}")
+    click.echo(f"then: moonwrit check --content {folder}")
+
+
+# --- what the commands share ----------------------------------------------------------------------
+
+
+def _content(folder: Path) -> Content:
+    from moonwrit.content import load
+    from moonwrit.policy import published_names
+
+    return load(folder, published_names())
+
+
+def _is_folder(folder: Path) -> bool:
+    return (folder / "site.yaml").exists()
+
+
+def _content_if_there(folder: Path, policy: str | None) -> Content | None:
+    """The content; a published policy can do without where the folder is not there."""
+    from moonwrit.policy import published_names
+
+    if policy in published_names() and not _is_folder(folder):
+        return None
+    return _content(folder)
+
+
+def _method(content: Content | None, policy: str | None, places: tuple[str, ...]) -> Method:
+    from moonwrit.policy import method
+
+    if policy is None:
+        assert content is not None
+        policy = next(iter(content.site.calendars.values())).policy
+    if len(places) > 1:
+        raise click.UsageError("give one --place; a policy that wants several names them in the content")
+    return method(policy, content, _place(content, places[0]) if places else None)
+
+
+def _place(content: Content | None, text: str) -> NamedPlace:
+    from moonwrit.policy import named_place
+    from moonwrit.policy.evening import place_from_text
+
+    if content is not None and text in content.places:
+        return named_place(content, text)
+    return place_from_text(text, content.places if content else ())
+
+
+def _asked(what: str, method: Method, content: Content | None) -> tuple[Month, list[str]]:
+    """The month on which the thing asked for rests, and a line that dates the thing itself."""
+    from moonwrit.calendars import Tabular, month_name
+
+    if match := re.fullmatch(r"(\d{1,4})-(\d{1,2})", what):
+        year, number = int(match[1]), int(match[2])
+        if not 1 <= number <= 12:
+            raise RequestError(f"there is no month {number}", "lunar months are 1 to 12")
+        return method.months(year, year)[number - 1], []
+    if re.fullmatch(r"\d{4}-\d{2}-\d{2}", what):
+        try:
+            day = date.fromisoformat(what)
+        except ValueError:
+            raise RequestError(f"{what} is not a date", "write year-month-day") from None
+        near = Tabular().from_date(day)
+        for year in (near.year, near.year + (1 if near.month > 6 else -1)):
+            for month in method.months(year, year):
+                if month.starts <= day <= month.ends:
+                    lunar = f"{(day - month.starts).days + 1} {month_name(month.month)} {month.year}"
+                    return month, [f"{day:%A %d %B %Y} is {lunar}."]
+    if content is not None and (match := re.fullmatch(r"([a-z0-9-]+?)-(\d{3,4})(-\d{2})*", what)):
+        from moonwrit.observances import occurrences
+
+        year = int(match[2])
+        found = method.months(year, year)
+        dated = {one.key: one for one in occurrences(content.observances, found)}
+        if what in dated:
+            one = dated[what]
+            run = f"{one.starts:%A %d %B %Y}" + ("" if one.starts == one.ends else f" to {one.ends:%A %d %B %Y}")
+            return found[one.month - 1], [f"{what}: {run}."]
+        raise RequestError(f'"{what}" is nothing that is dated here', did_you_mean(what, dated))
+    raise RequestError(
+        f'"{what}" is neither a lunar month, a civil date nor an observance',
+        "write 1447-9, 2026-02-19 or eid-al-fitr-1447",
+    )
+
+
+def _years(content: Content | None, first: int | None, last: int | None) -> tuple[int, int]:
+    if content is None and (first is None or last is None):
+        if first is None and last is None:
+            raise click.UsageError("say which years: --from YEAR --to YEAR")
+        first = last = first if first is not None else last
+    span = content.site.years if content else None
+    begin_year = first if first is not None else (span.first if span else 0)
+    end_year = last if last is not None else (max(span.last, begin_year) if span else begin_year)
+    if end_year < begin_year:
+        raise RequestError(f"--to {end_year} comes before --from {begin_year}", "swap them")
+    return begin_year, end_year
+
+
+def _today(content: Content) -> date:
+    """Today in the community's first place; SOURCE_DATE_EPOCH instead of the clock where it is set."""
+    epoch = os.environ.get("SOURCE_DATE_EPOCH")
+    try:
+        now = datetime.fromtimestamp(int(epoch), UTC) if epoch else datetime.now(UTC)
+    except (ValueError, OverflowError, OSError):
+        raise RequestError(f'SOURCE_DATE_EPOCH is "{epoch}"', "give whole seconds since 1970") from None
+    region = content.regions[next(iter(content.site.calendars.values())).region]
+    return now.astimezone(content.places[region.places[0]].zone).date()
+
+
+def _print_json(value: object) -> None:
+    click.echo(json.dumps(value, ensure_ascii=False, indent=2))
+
+
+def _table(title: str, head: tuple[str, ...], rows: list[tuple[str, ...]]) -> None:
+    from rich import box
+    from rich.console import Console
+    from rich.table import Table
+
+    table = Table(title=title, title_justify="left", box=box.SIMPLE_HEAD)
+    for column in head:
+        table.add_column(column, overflow="fold")
+    for row in rows:
+        table.add_row(*row)
+    width = None if sys.stdout.isatty() else 140
+    Console(width=width, highlight=False, markup=False).print(table)
+
+
+@contextmanager
+def _progress(what: str) -> Iterator[None]:
+    """A spinner on standard error, where that is a terminal."""
+    if not sys.stderr.isatty():
+        yield
+        return
+    from rich.console import Console
+
+    with Console(stderr=True).status(what):
+        yield
+
+
+if __name__ == "__main__":
+    main()

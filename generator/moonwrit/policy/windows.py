@@ -1,0 +1,50 @@
+"""Planning windows: the earliest and the latest civil day that the rules allow a month to begin."""
+
+from __future__ import annotations
+
+from datetime import date
+
+import numpy as np
+
+from moonwrit.policy.conditions import Condition, Either, Every, Scoped
+from moonwrit.policy.walk import Questions, Step
+from moonwrit.sky.comparison import Comparison, age
+
+LATEST_EVENING = 2
+"""The last evening that a plan needs to reckon with, counted from the first after the conjunction: by then
+the Moon is more than two days old at sunset, and only clouds on three evenings running could hide it."""
+
+
+def windows(questions: Questions, steps: list[Step]) -> list[tuple[date, date]]:
+    """(earliest, latest) first day of the month of each step, given that the first step's start holds.
+
+    No month has fewer than 29 or more than 30 days; none begins before the evening that follows its
+    conjunction in the policy's scope, nor, for planning, more than two evenings after that one.
+    """
+    earliest = latest = steps[0].start
+    out = [(date.fromordinal(earliest), date.fromordinal(latest))]
+    for step in steps[1:]:
+        row = step.ordinal - int(questions.moons.ordinal[0])
+        first_eve = _first_evening(questions, row, step)
+        earliest = max(earliest + 29, first_eve + 1)
+        latest = max(earliest, min(latest + 30, first_eve + LATEST_EVENING + 1))
+        # What the policy itself expects is always possible.
+        earliest, latest = min(earliest, step.start), max(latest, step.start)
+        out.append((date.fromordinal(earliest), date.fromordinal(latest)))
+    return out
+
+
+def _first_evening(questions: Questions, row: int, step: Step) -> int:
+    """The first evening after the conjunction in the scope of the policy."""
+    after = _with_age_alone(questions.condition(step.ordinal))
+    days = questions.days[row][None, :]
+    met = after.met(questions.evenings(np.array([row]), days))[0]
+    return int(days[0, int(np.argmax(met))]) if met.any() else int(days[0, -1])
+
+
+def _with_age_alone(condition: Condition) -> Condition:
+    """The same scopes, asking only whether the conjunction has passed."""
+    if isinstance(condition, Scoped):
+        return Scoped(Comparison(age(), ">", 0.0), condition.scope)
+    kind = Every if isinstance(condition, Every) else Either
+    return kind(tuple(_with_age_alone(part) for part in condition.parts))
