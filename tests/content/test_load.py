@@ -393,6 +393,16 @@ FAULTS = [
     ),
     (
         "policies.yaml", "  published: umm-al-qura",
+        "  test: {criterion: yallop-1997}\n  where:\n    within: all",
+        'policies.yaml:7: region "all" has no outline; give it one in regions.yaml',
+    ),
+    (
+        "regions.yaml", "  name: All\n", "  name: All\n  outline: ../all.geojson\n",
+        'regions.yaml:3: the outline "../all.geojson" lies outside the content folder; '
+        "keep it beside regions.yaml and give its name alone",
+    ),
+    (
+        "policies.yaml", "  published: umm-al-qura",
         "  adopts:\n  - umm-al-qura\n  - sein",
         'policies.yaml:7: policy "sein" is not defined; did you mean "seen"?',
     ),
@@ -426,6 +436,23 @@ def test_a_missing_file(write: Write) -> None:
     assert message(folder) == "regions.yaml: the file is missing; add it, with {} where it has nothing to say"
     (folder / "region.yml").write_text(FILES["regions.yaml"], encoding="utf-8")
     assert message(folder) == 'regions.yaml: the file is missing; rename "region.yml" to regions.yaml'
+
+
+OUTLINED = "  outline: all.geojson\n"
+TRIANGLE = '{"type": "Polygon", "coordinates": [[[0, 0], [1, 0], [0, 1], [0, 0]]]}'
+
+
+def test_a_region_may_have_an_outline(write: Write) -> None:
+    folder = write("regions.yaml", "  name: All\n", "  name: All\n" + OUTLINED)
+    (folder / "all.geojson").write_text(TRIANGLE, encoding="utf-8")
+    assert load(folder).outlines == {"all": ((((0.0, 0.0), (1.0, 0.0), (0.0, 1.0), (0.0, 0.0)),),)}
+
+
+def test_a_missing_or_faulty_outline_is_named(write: Write) -> None:
+    folder = write("regions.yaml", "  name: All\n", "  name: All\n" + OUTLINED)
+    assert message(folder) == "all.geojson: the file is missing; put the outline beside regions.yaml"
+    (folder / "all.geojson").write_text('{"type": "Point"}', encoding="utf-8")
+    assert message(folder) == 'all.geojson: "Point" is not an outline; keep nothing but polygons in it'
 
 
 def test_a_missing_folder(tmp_path: Path) -> None:

@@ -14,6 +14,7 @@ from pydantic import BaseModel, TypeAdapter
 from moonwrit.content import yaml
 from moonwrit.content.faults import checked, first_of, schema_of
 from moonwrit.content.models import Identifier, Observance, Place, Region, Site
+from moonwrit.content.outlines import Polygons, read_outline
 from moonwrit.content.policies import Policy
 from moonwrit.content.yaml import Document, KeyPath
 from moonwrit.errors import ContentError, did_you_mean
@@ -39,8 +40,8 @@ _ONE = {
     "any_of": "region",
     "every_of": "region",
     "of": "region",
-    "of_area": "region",
-    "within": "region",
+    "of_area": "outlined region",
+    "within": "outlined region",
     "policy": "policy",
     "published": "published policy",
 }
@@ -55,7 +56,10 @@ _EACH = {
 
 @dataclass(frozen=True, slots=True)
 class Content:
-    """All that a community has written down, by name and in the order of its files."""
+    """All that a community has written down, by name and in the order of its files.
+
+    ``outlines`` are those of the regions that have one.
+    """
 
     folder: Path
     site: Site
@@ -63,6 +67,7 @@ class Content:
     regions: Mapping[str, Region]
     policies: Mapping[str, Policy]
     observances: Mapping[str, Observance]
+    outlines: Mapping[str, Polygons] = field(repr=False)
     documents: Mapping[str, Document] = field(repr=False, compare=False)
 
     def line_of(self, file: str, *path: str | int) -> int:
@@ -95,12 +100,14 @@ def load(folder: Path, published: Collection[str] | None = None) -> Content:
         value = checked(documents[file], shape, faults)
         if value is not None:
             values[file] = value
+    outlines = _outlines(folder, documents, values, faults)
     faults += _missing_names(documents, values, published)
     if "site.yaml" in values:
         faults += _missing_words(documents, values)
     if faults:
         order = {folder / file: place for place, file in enumerate(SHAPES)}
-        raise first_of(sorted(faults, key=lambda fault: (order[Path(fault.file)], fault.line)))
+        # Faults inside outlines come last.
+        raise first_of(sorted(faults, key=lambda fault: (order.get(Path(fault.file), len(order)), fault.line)))
     return Content(
         folder=folder,
         site=values["site.yaml"],
@@ -108,6 +115,7 @@ def load(folder: Path, published: Collection[str] | None = None) -> Content:
         regions=MappingProxyType(values["regions.yaml"]),
         policies=MappingProxyType(values["policies.yaml"]),
         observances=MappingProxyType(values["observances.yaml"]),
+        outlines=MappingProxyType(outlines),
         documents=MappingProxyType(documents),
     )
 
@@ -135,6 +143,7 @@ def _missing_names(
     known: dict[str, Collection[str] | None] = {
         "place": values.get("places.yaml"),
         "region": values.get("regions.yaml"),
+        "outlined region": _outlined(values.get("regions.yaml")),
         "policy": None if policies is None or published is None else {*policies, *published},
         "published policy": published,
     }
@@ -142,8 +151,34 @@ def _missing_names(
         for path, kind, name in _references(documents[file].value):
             names = known[kind]
             if names is not None and name not in names:
-                what = f'{kind} "{name}" is not defined'
-                yield documents[file].error(path, what, did_you_mean(name, names))
+                what, mend = f'{kind} "{name}" is not defined', did_you_mean(name, names)
+                if kind == "outlined region" and name in values["regions.yaml"]:
+                    what, mend = f'region "{name}" has no outline', "give it one in regions.yaml"
+                yield documents[file].error(path, what, mend)
+
+
+def _outlined(regions: Mapping[str, Region] | None) -> list[str] | None:
+    return None if regions is None else [name for name, region in regions.items() if region.outline]
+
+
+def _outlines(
+    folder: Path, documents: Mapping[str, Document], values: Mapping[str, Any], faults: list[ContentError]
+) -> dict[str, Polygons]:
+    """The outlines of the regions that have one; what is wrong with them is added to ``faults``."""
+    outlines = {}
+    for name, region in values.get("regions.yaml", {}).items():
+        if region.outline is None:
+            continue
+        if region.outline != Path(region.outline).name:
+            what = f'the outline "{region.outline}" lies outside the content folder'
+            mend = "keep it beside regions.yaml and give its name alone"
+            faults.append(documents["regions.yaml"].error((name, "outline"), what, mend))
+            continue
+        try:
+            outlines[name] = read_outline(folder / region.outline)
+        except ContentError as fault:
+            faults.append(fault)
+    return outlines
 
 
 def _references(value: Any, path: KeyPath = ()) -> Iterator[tuple[KeyPath, str, str]]:

@@ -192,10 +192,13 @@ class Place(_Model):
 
 
 class Region(_Model):
-    """The named places that a policy speaks for."""
+    """The named places that a policy speaks for, the first of which stands for it; and its outline."""
 
     name: Words
     places: Annotated[list[Identifier], Field(min_length=1, description="a list of one or more places")]
+    outline: Annotated[
+        Text | None, Field(description="the name of a GeoJSON file beside regions.yaml, which holds polygons")
+    ] = None
 
 
 Weekday = Literal["monday", "tuesday", "wednesday", "thursday", "friday", "saturday", "sunday"]

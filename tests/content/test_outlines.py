@@ -1,0 +1,84 @@
+"""Outlines of regions: GeoJSON (RFC 7946) that holds polygons, and nothing else."""
+
+from __future__ import annotations
+
+import json
+from pathlib import Path
+from typing import Any
+
+import pytest
+
+from moonwrit.content.outlines import MAX_BYTES, read_outline
+from moonwrit.errors import ContentError
+
+RING = [[144, -39], [146, -39], [146.5, -38], [144, -39]]
+AS_READ = ((144.0, -39.0), (146.0, -39.0), (146.5, -38.0), (144.0, -39.0))
+POLYGON = {"type": "Polygon", "coordinates": [RING]}
+
+
+def outline(folder: Path, value: Any) -> Any:
+    file = folder / "bay.geojson"
+    file.write_text(value if isinstance(value, str) else json.dumps(value), encoding="utf-8")
+    return read_outline(file)
+
+
+@pytest.mark.parametrize(
+    ("value", "polygons"),
+    [
+        (POLYGON, 1),
+        ({"type": "MultiPolygon", "coordinates": [[RING], [RING]]}, 2),
+        ({"type": "Feature", "properties": {"name": "Bay"}, "geometry": POLYGON}, 1),
+        ({"type": "FeatureCollection", "features": [{"type": "Feature", "geometry": POLYGON}] * 3}, 3),
+        # A third coordinate is a height, and of no use here.
+        ({"type": "Polygon", "coordinates": [[[*point, 12] for point in RING]]}, 1),
+    ],
+)
+def test_polygons_are_read(tmp_path: Path, value: Any, polygons: int) -> None:
+    assert outline(tmp_path, value) == ((AS_READ,),) * polygons
+
+
+def test_holes_follow_the_outer_ring(tmp_path: Path) -> None:
+    assert outline(tmp_path, {"type": "Polygon", "coordinates": [RING, RING[::-1]]}) == ((AS_READ, AS_READ[::-1]),)
+
+
+@pytest.mark.parametrize(
+    ("value", "said"),
+    [
+        ({"type": "Point", "coordinates": [0, 0]}, ': "Point" is not an outline; keep nothing but polygons in it'),
+        ([1], ": this is not GeoJSON; keep nothing but polygons in it"),
+        ({"type": "Feature", "geometry": None}, ": this is not GeoJSON; keep nothing but polygons in it"),
+        ({"type": "Polygon", "coordinates": 3}, ': "Polygon" is not an outline; keep nothing but polygons in it'),
+        (
+            {"type": "FeatureCollection", "features": []},
+            ": there is no polygon in it; export the outline as a Polygon",
+        ),
+        (
+            {"type": "Polygon", "coordinates": [RING, RING[:3]]},
+            ": ring 2 of polygon 1 is not closed; give at least three points, and the first again at the end",
+        ),
+        (
+            # Latitude first is the usual mistake.
+            {"type": "Polygon", "coordinates": [[point[::-1] for point in RING]]},
+            ": ring 1 of polygon 1 has a point that is not on the Earth; "
+            "give longitude from -180 to 180 and latitude from -90 to 90, in this order",
+        ),
+        (
+            {"type": "Polygon", "coordinates": [[[float("nan"), 0]] * 4]},
+            ": ring 1 of polygon 1 has a point that is not on the Earth; "
+            "give longitude from -180 to 180 and latitude from -90 to 90, in this order",
+        ),
+        (
+            {"type": "Polygon", "coordinates": [[["144", "-39"]] * 4]},
+            ": ring 1 of polygon 1 has a point that is not on the Earth; "
+            "give longitude from -180 to 180 and latitude from -90 to 90, in this order",
+        ),
+        ('{"type":\n"Polygon"', ":2: this is not JSON (Expecting ',' delimiter); export it again"),
+        ("[" * 100_000, ": this is not GeoJSON; export it again as GeoJSON, in UTF-8"),
+        (" " * (MAX_BYTES + 1), ": the outline is larger than 8 MB; simplify it"),
+    ],
+    ids=lambda value: value[:60] if isinstance(value, str) else None,
+)
+def test_what_is_refused(tmp_path: Path, value: Any, said: str) -> None:
+    with pytest.raises(ContentError) as caught:
+        outline(tmp_path, value)
+    assert str(caught.value) == f"{tmp_path}/bay.geojson{said}"
