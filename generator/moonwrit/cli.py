@@ -15,6 +15,7 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from moonwrit import __version__
+from moonwrit.concordance import TITLES, in_calendar
 from moonwrit.errors import MoonwritError, RequestError, did_you_mean
 
 if TYPE_CHECKING:
@@ -109,8 +110,11 @@ def check(folder: Path) -> None:
 
 @main.command()
 @_shared("content", "policy", "place", "years", "json")
+@click.option("--also", "calendars", multiple=True, metavar="CALENDAR", type=click.Choice(sorted(TITLES)),
+              help=f"The first days in another calendar too: {', '.join(sorted(TITLES))}; may be repeated.")
 def months(
-    folder: Path, policy: str | None, places: tuple[str, ...], first: int | None, last: int | None, as_json: bool
+    folder: Path, policy: str | None, places: tuple[str, ...], first: int | None, last: int | None, as_json: bool,
+    calendars: tuple[str, ...],
 ) -> None:
     """Month starts as a table."""
     content = _content_if_there(folder, policy)
@@ -120,20 +124,25 @@ def months(
         found = method.months(*years)
     from moonwrit.publish.basis import month_json
 
+    also = [{calendar: in_calendar(month.starts, calendar) for calendar in calendars} for month in found]
     if as_json:
-        _print_json([month_json(month) for month in found])
+        _print_json([
+            {**month_json(month), **({"also": other} if other else {})}
+            for month, other in zip(found, also, strict=True)
+        ])
         return
     _table(
         f"{method.title}, {years[0]}-{years[1]} AH",
-        ("month", "starts", "days", "standing", "basis", "deciding quantity", "margin", "how close"),
+        ("month", "starts", *(TITLES[calendar] for calendar in calendars), "days", "standing", "basis",
+         "deciding quantity", "margin", "how close"),
         [
             (
-                f"{m.year}-{m.month:02d}", f"{m.starts:%a %Y-%m-%d}", str(m.length), m.standing, m.basis,
-                m.margin.quantity,
+                f"{m.year}-{m.month:02d}", f"{m.starts:%a %Y-%m-%d}", *(day or "-" for day in other.values()),
+                str(m.length), m.standing, m.basis, m.margin.quantity,
                 "" if m.margin.margin is None else f"{m.margin.margin:+g} {m.margin.unit}".strip(),
                 m.margin.closeness,
             )
-            for m in found
+            for m, other in zip(found, also, strict=True)
         ],
     )
 
@@ -184,6 +193,49 @@ def why(what: str, folder: Path, policy: str | None, places: tuple[str, ...], as
         return
     for paragraph in [*about, *why_paragraphs(month)]:
         click.echo(paragraph)
+
+
+@main.command()
+@_shared("content")
+@click.option("--policy", "policies", multiple=True, metavar="P",
+              help="A policy to put beside the community's; may be repeated. Default: all others of the content.")
+@_shared("place", "years", "json")
+def differ(
+    folder: Path, policies: tuple[str, ...], places: tuple[str, ...], first: int | None, last: int | None,
+    as_json: bool,
+) -> None:
+    """Policies side by side: month starts, and the computed reason for each difference."""
+    from moonwrit.policy.differ import beside
+    from moonwrit.publish.basis import beside_json
+
+    content = _content(folder)
+    main_policy = next(iter(content.site.calendars.values())).policy
+    ours = _method(content, None, ())
+    others = [_method(content, name, places) for name in policies or content.policies if name != main_policy]
+    if not others:
+        raise RequestError("there is no other policy to put beside the community's", "name one with --policy")
+    years = _years(content, first, last)
+    with _progress("Computing policies"):
+        months = ours.months(*years)
+        found = [beside(other, months, ours) for other in others]
+    if as_json:
+        _print_json([beside_json(one) for one in found])
+        return
+    _table(
+        f"{years[0]}-{years[1]} AH",
+        ("month", ours.title, *(one.method.title for one in found)),
+        [
+            (f"{m.year}-{m.month:02d}", f"{m.starts:%a %Y-%m-%d}", *(
+                "same" if one.months[i].starts == m.starts else f"{(one.months[i].starts - m.starts).days:+d} d"
+                for one in found
+            ))
+            for i, m in enumerate(months)
+        ],
+    )
+    for one in found:
+        click.echo(f"{one.method.title}: {one.agreement:.0%} of {len(months)} months begin on the same day.")
+        for each in one.differences:
+            click.echo(f"  {each.ours.year}-{each.ours.month:02d}: {each.days:+d} d. {each.reason}")
 
 
 @main.command()

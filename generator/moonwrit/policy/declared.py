@@ -9,6 +9,8 @@ from dataclasses import dataclass, replace
 from datetime import date
 from typing import TypeVar
 
+import numpy as np
+
 from moonwrit.calendars import Tabular
 from moonwrit.content import Content
 from moonwrit.content import policies as declared
@@ -23,6 +25,7 @@ from moonwrit.policy.walk import Era
 from moonwrit.sky import Places
 from moonwrit.sky import comparison as compare
 from moonwrit.sky.criteria import criterion
+from moonwrit.sky.land import Outline
 
 T = TypeVar("T")
 
@@ -127,13 +130,19 @@ class _Reader:
         if where.of is not None:
             return self._at(self._place_ids(where.of), where.share or 1.0)
         if where.of_area is not None:
-            return Within(self.content.outline(where.of_area), where.share or 1.0, step_deg=0.5)
+            return Within(self._outline(where.of_area), where.share or 1.0, step_deg=0.5)
         if where.within is not None:
-            return Within(self.content.outline(where.within), step_deg=0.5)
+            return Within(self._outline(where.within), step_deg=0.5)
         if where.shares_night_with is not None:
             night = named_place(self.content, where.shares_night_with)
             return Anywhere(Before(dawn_at=Places.of([night.row])))
         return Anywhere(None if where.before is None else self._deadline(where.before))
+
+    def _outline(self, region: str) -> Outline:
+        return Outline(tuple(
+            tuple(np.array(ring, dtype=np.float64) for ring in polygon)
+            for polygon in self.content.outlines[region]
+        ))
 
     def _deadline(self, before: declared.Deadline) -> Before:
         if before.dawn_at is None:

@@ -1,0 +1,55 @@
+"""A civil date in the other calendars that a community may want beside its own."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from datetime import date
+from functools import cache
+
+from moonwrit.calendars import (
+    THIRTY_THREE_YEAR,
+    SolarHijri,
+    julian_from_date,
+    rumi_from_date,
+)
+from moonwrit.errors import RequestError
+
+TITLES: Mapping[str, str] = {
+    "solar-hijri": "Solar Hijri",
+    "solar-hijri-33": "Solar Hijri (33-year approximation)",
+    "rumi": "Rumi",
+    "julian": "Julian",
+}
+"""Calendar -> its title."""
+
+
+@cache
+def _astronomical() -> SolarHijri:
+    from moonwrit.sky.equinox import march_equinox
+
+    return SolarHijri.from_equinoxes(march_equinox)
+
+
+def in_calendar(day: date, calendar: str) -> str | None:
+    """``day`` in another calendar as "year-month-day"; None where that calendar did not run.
+
+    The solar Hijri calendar is the astronomical one (noon of 52.5 E) inside the ephemeris.
+    """
+    try:
+        match calendar:
+            case "solar-hijri":
+                year, month, dom = _astronomical().from_date(day)
+            case "solar-hijri-33":
+                year, month, dom = THIRTY_THREE_YEAR.from_date(day)
+            case "julian":
+                year, month, dom = julian_from_date(day)
+            case "rumi":
+                rumi = rumi_from_date(day)
+                if rumi is None:
+                    return None
+                year, month, dom = rumi
+            case _:
+                raise KeyError(calendar)
+    except RequestError:
+        return None
+    return f"{year}-{month:02d}-{dom:02d}"
