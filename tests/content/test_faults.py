@@ -2,13 +2,17 @@
 
 from __future__ import annotations
 
+import json
 from pathlib import Path
 from typing import Annotated, Any, Literal
 
 import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
 from pydantic import BaseModel, ConfigDict, Discriminator, Field, Tag, TypeAdapter
 
-from moonwrit.content.faults import validated
+from moonwrit.content.faults import checked, schema_of, validated
+from moonwrit.content.load import SHAPES
 from moonwrit.content.models import Day, Moment
 from moonwrit.content.yaml import parse
 from moonwrit.errors import ContentError
@@ -130,3 +134,37 @@ def test_what_is_right_comes_back() -> None:
     shapes = validated(parse(b"told: {width: 1, height: 2.5}\ngrid: [[1], []]\n", Path("x")), TypeAdapter(Shapes))
     assert shapes.told == Box(width=1.0, height=2.5)
     assert shapes.grid == [[1], []]
+
+
+# Properties
+
+
+def _keys(schema: Any) -> set[str]:
+    """Every key that a schema knows, at any depth."""
+    if isinstance(schema, dict):
+        own = set(schema.get("properties", {}))
+        return own.union(*(_keys(inner) for inner in schema.values()))
+    return set().union(*(_keys(inner) for inner in schema)) if isinstance(schema, list) else set()
+
+
+_KEYS = sorted({"north", "en", "nonsense"}.union(*(_keys(schema_of(shape)) for shape in SHAPES.values())))
+_LEAVES = [None, True, 0, 9, 31, -1.5, "", "every", "no", "18:30", "2026-12-01", "2026-02-30", "A"]
+_ANY = st.recursive(
+    st.sampled_from(_LEAVES),
+    lambda inner: st.lists(inner, max_size=3) | st.dictionaries(st.sampled_from(_KEYS), inner, max_size=6),
+    max_leaves=25,
+)
+
+
+@settings(deadline=None, max_examples=300)
+@given(st.sampled_from(sorted(SHAPES)), st.dictionaries(st.sampled_from(_KEYS), _ANY, max_size=4))
+def test_whatever_is_wrong_is_said_in_one_line(file: str, value: dict[str, Any]) -> None:
+    document = parse(json.dumps(value, indent=1).encode(), Path(file))
+    faults: list[ContentError] = []
+    result = checked(document, SHAPES[file], faults)
+    assert (result is None) == bool(faults)
+    assert [fault.line for fault in faults] == sorted(fault.line for fault in faults)
+    for fault in faults:
+        assert 1 <= fault.line <= json.dumps(value, indent=1).count("\n") + 1
+        assert str(fault).startswith(f"{file}:{fault.line}: ")
+        assert "\n" not in str(fault)

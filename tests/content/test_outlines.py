@@ -11,9 +11,9 @@ import pytest
 from moonwrit.content.outlines import MAX_BYTES, read_outline
 from moonwrit.errors import ContentError
 
-RING = [[144, -39], [146, -39], [146.5, -38], [144, -39]]
+RING: list[list[float]] = [[144, -39], [146, -39], [146.5, -38], [144, -39]]
 AS_READ = ((144.0, -39.0), (146.0, -39.0), (146.5, -38.0), (144.0, -39.0))
-POLYGON = {"type": "Polygon", "coordinates": [RING]}
+POLYGON: dict[str, Any] = {"type": "Polygon", "coordinates": [RING]}
 
 
 def outline(folder: Path, value: Any) -> Any:
