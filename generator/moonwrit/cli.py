@@ -261,9 +261,9 @@ def begin(folder: Path) -> None:
 
 def _content(folder: Path) -> Content:
     from moonwrit.content import load
-    from moonwrit.policy import published_names
+    from moonwrit.policy.names import CRITERIA, published_names
 
-    return load(folder, published_names())
+    return load(folder, published_names(), CRITERIA)
 
 
 def _is_folder(folder: Path) -> bool:

@@ -3,11 +3,11 @@
 from __future__ import annotations
 
 import difflib
-from collections.abc import Collection, Iterable, Iterator, Mapping
+from collections.abc import Callable, Collection, Iterable, Iterator, Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
 from types import MappingProxyType
-from typing import Any
+from typing import Any, TypeVar
 
 from pydantic import BaseModel, TypeAdapter
 
@@ -16,8 +16,11 @@ from moonwrit.content.faults import checked, first_of, schema_of
 from moonwrit.content.models import Identifier, Observance, Place, Region, Site
 from moonwrit.content.outlines import Polygons, read_outline
 from moonwrit.content.policies import Policy
+from moonwrit.content.tables import Table, read_table
 from moonwrit.content.yaml import Document, KeyPath
 from moonwrit.errors import ContentError, did_you_mean
+
+T = TypeVar("T")
 
 SHAPES: Mapping[str, TypeAdapter[Any]] = MappingProxyType(
     {
@@ -44,6 +47,7 @@ _ONE = {
     "within": "outlined region",
     "policy": "policy",
     "published": "published policy",
+    "criterion": "criterion",
 }
 _EACH = {
     "places": "place",
@@ -58,7 +62,7 @@ _EACH = {
 class Content:
     """All that a community has written down, by name and in the order of its files.
 
-    ``outlines`` are those of the regions that have one.
+    ``outlines`` are those of the regions that have one, ``tables`` those of the policies that are one.
     """
 
     folder: Path
@@ -68,6 +72,7 @@ class Content:
     policies: Mapping[str, Policy]
     observances: Mapping[str, Observance]
     outlines: Mapping[str, Polygons] = field(repr=False)
+    tables: Mapping[str, Table] = field(repr=False)
     documents: Mapping[str, Document] = field(repr=False, compare=False)
 
     def line_of(self, file: str, *path: str | int) -> int:
@@ -79,11 +84,13 @@ class Content:
         return self.documents[file].error(path, what, mend)
 
 
-def load(folder: Path, published: Collection[str] | None = None) -> Content:
+def load(
+    folder: Path, published: Collection[str] | None = None, criteria: Collection[str] | None = None
+) -> Content:
     """Read the content files of ``folder``.
 
-    ``published`` are the names of policies that exist without being written down; None leaves names
-    that policies.yaml does not define unchecked. Raises ContentError: the first fault in the order of
+    ``published`` are the names of policies that exist without being written down, ``criteria`` those of the
+    published criteria; None leaves such names unchecked. Raises ContentError: the first fault in the order of
     files and lines, with the number of the others.
     """
     if not folder.is_dir():
@@ -100,13 +107,14 @@ def load(folder: Path, published: Collection[str] | None = None) -> Content:
         value = checked(documents[file], shape, faults)
         if value is not None:
             values[file] = value
-    outlines = _outlines(folder, documents, values, faults)
-    faults += _missing_names(documents, values, published)
+    outlines = _files_beside(documents, values, faults, "regions.yaml", "outline", read_outline)
+    tables = _files_beside(documents, values, faults, "policies.yaml", "table", read_table)
+    faults += _missing_names(documents, values, published, criteria)
     if "site.yaml" in values:
         faults += _missing_words(documents, values)
     if faults:
         order = {folder / file: place for place, file in enumerate(SHAPES)}
-        # Faults inside outlines come last.
+        # Faults inside outlines and tables come last.
         raise first_of(sorted(faults, key=lambda fault: (order.get(Path(fault.file), len(order)), fault.line)))
     return Content(
         folder=folder,
@@ -116,6 +124,7 @@ def load(folder: Path, published: Collection[str] | None = None) -> Content:
         policies=MappingProxyType(values["policies.yaml"]),
         observances=MappingProxyType(values["observances.yaml"]),
         outlines=MappingProxyType(outlines),
+        tables=MappingProxyType(tables),
         documents=MappingProxyType(documents),
     )
 
@@ -136,7 +145,10 @@ def _read(folder: Path, file: str) -> Document:
 
 
 def _missing_names(
-    documents: Mapping[str, Document], values: Mapping[str, Any], published: Collection[str] | None
+    documents: Mapping[str, Document],
+    values: Mapping[str, Any],
+    published: Collection[str] | None,
+    criteria: Collection[str] | None,
 ) -> Iterator[ContentError]:
     """Names that nothing defines. Files that have faults of their own are left out, on both sides."""
     policies = values.get("policies.yaml")
@@ -146,6 +158,7 @@ def _missing_names(
         "outlined region": _outlined(values.get("regions.yaml")),
         "policy": None if policies is None or published is None else {*policies, *published},
         "published policy": published,
+        "criterion": criteria,
     }
     for file in values:
         for path, kind, name in _references(documents[file].value):
@@ -161,24 +174,30 @@ def _outlined(regions: Mapping[str, Region] | None) -> list[str] | None:
     return None if regions is None else [name for name, region in regions.items() if region.outline]
 
 
-def _outlines(
-    folder: Path, documents: Mapping[str, Document], values: Mapping[str, Any], faults: list[ContentError]
-) -> dict[str, Polygons]:
-    """The outlines of the regions that have one; what is wrong with them is added to ``faults``."""
-    outlines = {}
-    for name, region in values.get("regions.yaml", {}).items():
-        if region.outline is None:
+def _files_beside(
+    documents: Mapping[str, Document],
+    values: Mapping[str, Any],
+    faults: list[ContentError],
+    file: str,
+    key: str,
+    read: Callable[[Path], T],
+) -> dict[str, T]:
+    """The files that entries of ``file`` name under ``key``, read; what is wrong with them goes to ``faults``."""
+    found = {}
+    for name, value in values.get(file, {}).items():
+        beside = getattr(value, key)
+        if beside is None:
             continue
-        if region.outline != Path(region.outline).name:
-            what = f'the outline "{region.outline}" lies outside the content folder'
-            mend = "keep it beside regions.yaml and give its name alone"
-            faults.append(documents["regions.yaml"].error((name, "outline"), what, mend))
+        if beside != Path(beside).name:
+            what = f'the {key} "{beside}" lies outside the content folder'
+            mend = f"keep it beside {file} and give its name alone"
+            faults.append(documents[file].error((name, key), what, mend))
             continue
         try:
-            outlines[name] = read_outline(folder / region.outline)
+            found[name] = read(documents[file].file.parent / beside)
         except ContentError as fault:
             faults.append(fault)
-    return outlines
+    return found
 
 
 def _references(value: Any, path: KeyPath = ()) -> Iterator[tuple[KeyPath, str, str]]:

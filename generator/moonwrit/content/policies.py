@@ -2,18 +2,22 @@
 
 from __future__ import annotations
 
-from datetime import date
 from typing import Annotated, Any, Literal
 
-from pydantic import Discriminator, Field, Tag, model_validator
+from pydantic import BeforeValidator, Discriminator, Field, Tag, model_validator
 
-from moonwrit.content.models import Identifier, Text, Words, _Model
+from moonwrit.content.models import Day, Identifier, Text, Words, _Model
+
+
+def _pattern_name(value: Any) -> Any:
+    # The patterns are named by a leap year, which reads as a number.
+    return str(value) if type(value) is int else value
 
 
 class Arithmetic(_Model):
     """A tabular calendar: an intercalation pattern of thirty years and its epoch."""
 
-    pattern: Literal["15", "16", "fatimid", "habash"] = "16"
+    pattern: Annotated[Literal["15", "16", "fatimid", "habash"], BeforeValidator(_pattern_name)] = "16"
     epoch: Literal["civil", "thursday"] = "civil"
 
 
@@ -209,7 +213,7 @@ class Policy(_Model):
     name: Words
     summary: Words | None = None
     source: Words | None = None
-    adopted: date | None = None
+    adopted: Day | None = None
     decided_by: Literal["record", "calculation"]
     published: Identifier | None = None
     place: Identifier | None = None

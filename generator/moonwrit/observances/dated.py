@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from datetime import date, timedelta
+from itertools import zip_longest
 
 from moonwrit.content.models import Observance, When
 from moonwrit.policy.months import Closeness, Month, Standing
@@ -20,7 +21,8 @@ class Occurrence:
     of ``starts`` and ends at the dawn of the next date; ``starts`` = ``ends`` then, and ``day`` is the
     lunar day whose daytime follows it. ``key`` is unique and lasting: ``<observance>-<year>`` with
     ``-<month>`` where the rule repeats each month and ``-<day>`` where it has several in a month.
-    ``standing`` and ``closeness`` are those of the month that the rule names, for its eve too.
+    ``standing`` and ``closeness`` are those of the month that the rule names, for its eve too; what hangs
+    on where that month ends (its last days, its last Friday) takes the weaker of it and the next month.
     """
 
     key: str
@@ -50,19 +52,27 @@ def occurrences(observances: Mapping[str, Observance], months: Sequence[Month]) 
     """
     found = [
         (one.starts, place, one)
-        for month in months
+        for month, following in zip_longest(months, months[1:])
         for place, (name, observance) in enumerate(observances.items())
-        for one in _in_month(name, observance, month)
+        for one in _in_month(name, observance, month, following)
     ]
     found.sort(key=lambda entry: entry[:2])
     return tuple(one for _, _, one in found)
 
 
-def _in_month(name: str, observance: Observance, month: Month) -> Iterator[Occurrence]:
+_CLOSEST_FIRST: tuple[Closeness, ...] = ("edge", "close", "wide", "fixed")
+
+
+def _in_month(name: str, observance: Observance, month: Month, following: Month | None) -> Iterator[Occurrence]:
     when = observance.when
     if when.month not in ("every", month.month):
         return
     for day, length, night in _days(when, month):
+        standing, closeness = month.standing, month.margin.closeness
+        if following is not None and _hangs_on_the_end(when, day + length - 1):
+            if following.standing == "expected":
+                standing = "expected"
+            closeness = min(closeness, following.margin.closeness, key=_CLOSEST_FIRST.index)
         starts = month.starts + timedelta(days=day - (2 if night else 1))
         key = f"{name}-{month.year}"
         if when.month == "every":
@@ -78,10 +88,15 @@ def _in_month(name: str, observance: Observance, month: Month) -> Iterator[Occur
             starts=starts,
             ends=starts + timedelta(days=length - 1),
             night=night,
-            standing=month.standing,
-            closeness=month.margin.closeness,
+            standing=standing,
+            closeness=closeness,
             tags=tuple(observance.tags),
         )
+
+
+def _hangs_on_the_end(when: When, last_day: int) -> bool:
+    """Would the occurrence change if the month had a day more or fewer?"""
+    return when.last is not None or when.day == "last" or when.run == "month" or last_day >= 30
 
 
 def _days(when: When, month: Month) -> Iterator[tuple[int, int, bool]]:

@@ -2,11 +2,8 @@
 
 from __future__ import annotations
 
-import csv
-import io
-from collections.abc import Callable, Mapping
+from collections.abc import Callable
 from dataclasses import dataclass, replace
-from datetime import date
 from typing import TypeVar
 
 import numpy as np
@@ -15,7 +12,7 @@ from moonwrit.calendars import Tabular
 from moonwrit.content import Content
 from moonwrit.content import policies as declared
 from moonwrit.content.models import in_language
-from moonwrit.errors import ContentError, RequestError, did_you_mean
+from moonwrit.errors import RequestError, did_you_mean
 from moonwrit.policy.conditions import Condition, Either, Every, Scoped
 from moonwrit.policy.methods import Method
 from moonwrit.policy.names import published_names
@@ -82,7 +79,7 @@ class _Reader:
         if policy.arithmetic is not None:
             return replace(base, tabular=Tabular(policy.arithmetic.pattern, policy.arithmetic.epoch))
         if policy.table is not None:
-            return replace(base, table=self._table(policy.table))
+            return replace(base, table=self.content.tables[self.name])
         if policy.adopts is not None:
             return replace(base, adopts=tuple(
                 self._adopted(adopted, index) for index, adopted in enumerate(policy.adopts)
@@ -175,60 +172,6 @@ class _Reader:
             place, name=f"{abs(instead.latitude):g} {side} on the meridian of {place.name}",
             latitude_deg=instead.latitude,
         )
-
-    # --- tables -------------------------------------------------------------------------------
-
-    def _table(self, file: str) -> Mapping[int, date]:
-        """A community's own table: a CSV file with columns year, month and starts."""
-        path = self.content.folder / file
-        if path.resolve().parent != self.content.folder.resolve():
-            raise self.content.error(
-                "policies.yaml", (self.name, "table"), f'the table "{file}" lies outside the content folder',
-                "keep it beside policies.yaml and give its name alone",
-            )
-        try:
-            text = path.read_text(encoding="utf-8-sig")
-        except FileNotFoundError:
-            raise self.content.error(
-                "policies.yaml", (self.name, "table"), f'there is no file "{file}"', "put it beside policies.yaml"
-            ) from None
-        except (UnicodeDecodeError, OSError) as fault:
-            raise ContentError(path, 0, f"the table cannot be read ({fault})", "save it as UTF-8 text") from None
-        return _starts(path, text)
-
-
-def _starts(path: object, text: str) -> Mapping[int, date]:
-    rows = csv.DictReader(io.StringIO(text))
-    if set(rows.fieldnames or ()) != {"year", "month", "starts"}:
-        raise ContentError(
-            str(path), 1, "the columns must be year, month and starts", "name them in the first line"
-        )
-    out: dict[int, date] = {}
-    before: int | None = None
-    for row in rows:
-        line = rows.line_num
-        try:
-            ordinal = (int(row["year"]) - 1) * 12 + int(row["month"]) - 1
-            starts = date.fromisoformat(row["starts"])
-            if not 1 <= int(row["month"]) <= 12:
-                raise ValueError
-        except (TypeError, ValueError):
-            raise ContentError(
-                str(path), line, "this is not a month and its first day", "write for instance 1447,9,2026-02-18"
-            ) from None
-        if before is not None:
-            if ordinal != before + 1:
-                raise ContentError(
-                    str(path), line, "this month does not follow the one before",
-                    "give every month once, in order",
-                )
-            length = (starts - out[before]).days
-            if length not in (29, 30):
-                raise ContentError(
-                    str(path), line, f"the month before would have {length} days", "a month has 29 or 30 days"
-                )
-        out[ordinal], before = starts, ordinal
-    return out
 
 
 def _rule(test: declared.Criterion | declared.AllOf | declared.AnyOf | declared.Threshold) -> compare.Rule:
