@@ -291,16 +291,16 @@ FAULTS = [
     ),
     (
         "policies.yaml", "2025-06-01", "2025-06-31",
-        'policies.yaml:4: adopted is "2025-06-31", which is not a date (day value is outside expected range); '
-        "write a date such as 2026-12-01",
+        'policies.yaml:4: adopted: "2025-06-31" is not a date (day is out of range for month); '
+        "write for instance 2026-12-01",
     ),
     (
         "policies.yaml", "decided_by: record", "decided_by: records",
         'policies.yaml:3: decided_by is "records", which is not known here; did you mean "record"?',
     ),
     (
-        "policies.yaml", "  published: umm-al-qura", "  arithmetic:\n    pattern: 16",
-        'policies.yaml:6: pattern is 16, which is not known here; put it in quotes: "16"',
+        "policies.yaml", "  published: umm-al-qura", "  arithmetic:\n    pattern: 17",
+        'policies.yaml:6: pattern is "17", which is not known here; known here: 15, 16, fatimid, habash',
     ),
     (
         "observances.yaml", "month: 9", "month: 13",
