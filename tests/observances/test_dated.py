@@ -215,7 +215,8 @@ def test_every_occurrence_belongs_to_its_month(rules: dict[str, Observance], mon
         last_day = (one.ends - home.starts).days + 1 + one.night
         if following and (when.last or when.day == "last" or when.run == "month" or last_day >= 30):
             # These move where the month turns out a day longer or shorter: the weaker of the two months.
-            assert one.standing == ("expected" if "expected" in (home.standing, following.standing) else home.standing)
+            either = (home.standing, following.standing)
+            assert one.standing == ("expected" if "expected" in either else home.standing)
             order = ("edge", "close", "wide", "fixed")
             assert order.index(one.closeness) == min(
                 order.index(month.margin.closeness) for month in (home, following)
