@@ -16,6 +16,7 @@ from moonwrit.content.faults import checked, first_of, schema_of
 from moonwrit.content.models import Identifier, Observance, Place, Region, Site
 from moonwrit.content.outlines import Polygons, read_outline
 from moonwrit.content.policies import Policy
+from moonwrit.content.record import Decision, Report
 from moonwrit.content.tables import Table, read_table
 from moonwrit.content.yaml import Document, KeyPath
 from moonwrit.errors import ContentError, did_you_mean
@@ -32,6 +33,14 @@ SHAPES: Mapping[str, TypeAdapter[Any]] = MappingProxyType(
     }
 )
 """The content files, and what each of them holds."""
+
+RECORD: Mapping[str, TypeAdapter[Any]] = MappingProxyType(
+    {
+        "record/reports.yaml": TypeAdapter(list[Report]),
+        "record/decisions.yaml": TypeAdapter(list[Decision]),
+    }
+)
+"""The files of the record, which a new community does not have yet."""
 
 # Keys that name something defined elsewhere, wherever they stand: what a single name means, and what each
 # name in a list means. A new key of this kind needs a line here and nothing more.
@@ -71,6 +80,8 @@ class Content:
     regions: Mapping[str, Region]
     policies: Mapping[str, Policy]
     observances: Mapping[str, Observance]
+    reports: tuple[Report, ...]
+    decisions: tuple[Decision, ...]
     outlines: Mapping[str, Polygons] = field(repr=False)
     tables: Mapping[str, Table] = field(repr=False)
     documents: Mapping[str, Document] = field(repr=False, compare=False)
@@ -98,7 +109,7 @@ def load(
     documents: dict[str, Document] = {}
     values: dict[str, Any] = {}
     faults: list[ContentError] = []
-    for file, shape in SHAPES.items():
+    for file, shape in {**SHAPES, **RECORD}.items():
         try:
             documents[file] = _read(folder, file)
         except ContentError as fault:
@@ -113,7 +124,7 @@ def load(
     if "site.yaml" in values:
         faults += _missing_words(documents, values)
     if faults:
-        order = {folder / file: place for place, file in enumerate(SHAPES)}
+        order = {folder / file: place for place, file in enumerate([*SHAPES, *RECORD])}
         # Faults inside outlines and tables come last.
         raise first_of(sorted(faults, key=lambda fault: (order.get(Path(fault.file), len(order)), fault.line)))
     return Content(
@@ -123,6 +134,8 @@ def load(
         regions=MappingProxyType(values["regions.yaml"]),
         policies=MappingProxyType(values["policies.yaml"]),
         observances=MappingProxyType(values["observances.yaml"]),
+        reports=tuple(values["record/reports.yaml"]),
+        decisions=tuple(values["record/decisions.yaml"]),
         outlines=MappingProxyType(outlines),
         tables=MappingProxyType(tables),
         documents=MappingProxyType(documents),
@@ -131,13 +144,15 @@ def load(
 
 def schemas() -> dict[str, dict[str, Any]]:
     """The JSON Schema (2020-12) of each content file, for editors; by file name."""
-    return {file: {"title": file, **schema_of(shape)} for file, shape in SHAPES.items()}
+    return {file: {"title": file, **schema_of(shape)} for file, shape in {**SHAPES, **RECORD}.items()}
 
 
 def _read(folder: Path, file: str) -> Document:
     path = folder / file
     if path.exists():
-        return yaml.read(path)
+        return yaml.read(path, empty=[] if file in RECORD else None)
+    if file in RECORD:
+        return Document(path, [], {(): 0})
     others = {other.name for other in folder.glob("*.y*ml")} - set(SHAPES)
     near = difflib.get_close_matches(file, sorted(others), n=1)
     mend = f'rename "{near[0]}" to {file}' if near else "add it, with {} where it has nothing to say"

@@ -208,6 +208,8 @@ class Policy(_Model):
     ``decided_by: calculation`` means that the computed date is the community's date (*settled*).
     ``place`` fills the place that a published policy leaves open. ``adopts`` names policies, of which the
     first to begin a month decides. Where the test is not met on the 29th evening, thirty days are completed.
+    ``if_seen_on_28th``: a crescent seen on the 28th evening shows that the month was found a day late; the
+    next month then may ``begin`` at once, after 28 days, or the 29 days are to be made ``complete``.
     """
 
     name: Words
@@ -225,6 +227,7 @@ class Policy(_Model):
     every: list[Clause] | None = None
     either: list[Clause] | None = None
     fallback: Fallback | None = None
+    if_seen_on_28th: Literal["begin", "complete"] = "complete"
 
     @model_validator(mode="after")
     def _one_kind(self) -> Policy:

@@ -75,8 +75,11 @@ class Document:
         return ContentError(self.file, self.line_of(*path), what, mend)
 
 
-def read(file: Path) -> Document:
-    """Read ``file``. Raises ContentError where it cannot be read or breaks a rule named above."""
+def read(file: Path, empty: Any = None) -> Document:
+    """Read ``file``; ``empty`` is its value where nothing is written in it.
+
+    Raises ContentError where it cannot be read, breaks a rule named above, or is empty and may not be.
+    """
     try:
         with file.open("rb") as stream:
             data = stream.read(MAX_BYTES + 1)
@@ -85,11 +88,11 @@ def read(file: Path) -> Document:
     except OSError as error:
         what = f"the file cannot be read ({error.strerror})"
         raise ContentError(file, 0, what, "give its path, and the right to read it") from None
-    return parse(data, file)
+    return parse(data, file, empty)
 
 
-def parse(data: bytes, file: Path) -> Document:
-    """Read YAML from ``data``; ``file`` is the name that errors give. Raises ContentError."""
+def parse(data: bytes, file: Path, empty: Any = None) -> Document:
+    """Read YAML from ``data``, as ``read`` does; ``file`` is the name that errors give."""
     if len(data) > MAX_BYTES:
         raise ContentError(file, 0, "the file is larger than 2 MB", "split or shorten it")
     try:
@@ -114,6 +117,8 @@ def parse(data: bytes, file: Path) -> Document:
         raise ContentError(file, line, "a character cannot be read", "remove it or its escape") from None
     lines: dict[KeyPath, int] = {}
     value = None if node is None else _value(node, (), _line(node), lines, file)
+    if value is None and empty is not None:
+        return Document(file, empty, {(): 1})
     if value is None:
         raise ContentError(file, 0, "the file is empty", "write its keys, or {} where it has none")
     return Document(file, value, lines)

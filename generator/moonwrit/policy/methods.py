@@ -5,11 +5,13 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from datetime import date, timedelta
+from types import MappingProxyType
 from typing import Literal
 
 import numpy as np
 
 from moonwrit.calendars import Tabular
+from moonwrit.content.record import Decision
 from moonwrit.errors import RequestError
 from moonwrit.policy.conditions import evidence
 from moonwrit.policy.months import FIXED, Basis, Evidence, Margin, Month, Note, Standing
@@ -36,19 +38,25 @@ class Method:
     adopts: tuple[Method, ...] = ()
     note: str = ""
 
-    def months(self, first_year: int, last_year: int) -> tuple[Month, ...]:
+    def months(
+        self, first_year: int, last_year: int, decisions: Mapping[int, Decision] = MappingProxyType({})
+    ) -> tuple[Month, ...]:
         """The months of Hijri years ``first_year`` to ``last_year``, both included.
 
+        ``decisions`` (by month ordinal) override what the method expects, and months that are reckoned from
+        evening to evening follow on from them.
         Raises RequestError where the method cannot answer for one of them.
         """
         first, last = (first_year - 1) * 12, last_year * 12 - 1
+        if self.eras:
+            return self._computed(first, last, decisions)
         if self.tabular is not None:
-            return tuple(self._arithmetic(self.tabular, ordinal) for ordinal in range(first, last + 1))
-        if self.table is not None:
-            return self._tabulated(self.table, first, last)
-        if self.adopts:
-            return self._adopted(first_year, last_year)
-        return self._computed(first, last)
+            months = tuple(self._arithmetic(self.tabular, ordinal) for ordinal in range(first, last + 1))
+        elif self.table is not None:
+            months = self._tabulated(self.table, first, last)
+        else:
+            months = self._adopted(first_year, last_year)
+        return _overridden(months, decisions)
 
     @property
     def standing(self) -> Standing:
@@ -101,10 +109,11 @@ class Method:
             ))
         return tuple(out)
 
-    def _computed(self, first: int, last: int) -> tuple[Month, ...]:
-        questions, steps = walk(self.eras, first, last)
+    def _computed(self, first: int, last: int, decisions: Mapping[int, Decision]) -> tuple[Month, ...]:
+        decided = {ordinal: decision.starts.toordinal() for ordinal, decision in decisions.items()}
+        questions, steps = walk(self.eras, first, last, decided)
         lead_in = first - steps[0].ordinal
-        spans = windows(questions, steps)[lead_in:] if self.decided_by == "record" else None
+        spans = windows(questions, steps, decided)[lead_in:] if self.decided_by == "record" else None
         steps = steps[lead_in:]
         found = _evidence(questions, [step.ordinal for step in steps[:-1]], [step.evening for step in steps])
         out = []
@@ -118,7 +127,7 @@ class Method:
                 month, margin=margin, evidence=replace(why, met=step.met, notes=(*why.notes, *notes)),
                 window=spans[step.ordinal - first] if spans else (starts, starts),
             ))
-        return tuple(out)
+        return tuple(_by_decision(month, decisions.get(month.ordinal)) for month in out)
 
     def on_evenings(self, asked: Sequence[tuple[int, date]]) -> list[tuple[Evidence, Margin]] | None:
         """What the test finds for the months of the ordinals on the evenings of the dates given with them.
@@ -130,6 +139,26 @@ class Method:
         ordinals = [ordinal for ordinal, _ in asked]
         questions = Questions(self.eras, min(ordinals), max(ordinals))
         return _evidence(questions, ordinals, [day.toordinal() for _, day in asked])
+
+
+def _by_decision(month: Month, decision: Decision | None) -> Month:
+    """The month with the standing and basis that a decision gives it."""
+    if decision is None:
+        return month
+    starts = decision.starts
+    return replace(
+        month, starts=starts, basis=decision.basis, standing="settled", window=(starts, starts), decision=decision
+    )
+
+
+def _overridden(months: tuple[Month, ...], decisions: Mapping[int, Decision]) -> tuple[Month, ...]:
+    """Months reckoned ahead, single ones moved by decisions; lengths follow."""
+    moved = [_by_decision(month, decisions.get(month.ordinal)) for month in months]
+    end = months[-1].ends + timedelta(days=1)
+    starts = [*(month.starts for month in moved[1:]), end]
+    return tuple(
+        replace(month, length=(after - month.starts).days) for month, after in zip(moved, starts, strict=True)
+    )
 
 
 def _evidence(

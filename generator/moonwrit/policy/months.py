@@ -8,6 +8,8 @@ from datetime import date, datetime, timedelta
 from types import MappingProxyType
 from typing import Literal, NamedTuple
 
+from moonwrit.content.record import Decision
+
 Basis = Literal["arithmetic", "calculated", "sighted", "completed", "adopted", "tabulated"]
 Standing = Literal["expected", "settled", "amended"]
 Closeness = Literal["fixed", "wide", "close", "edge"]
@@ -82,7 +84,7 @@ class Month:
     """One lunar month. ``eve`` is the civil date on whose evening it begins; ``starts`` the first day.
 
     ``window`` is the planning window: the earliest and the latest first day that the rules allow while later
-    evenings decide; both are ``starts`` where nothing is left to decide.
+    evenings decide; both are ``starts`` where nothing is left to decide. ``decision`` is the recorded word on it.
     """
 
     year: int
@@ -95,6 +97,7 @@ class Month:
     margin: Margin
     evidence: Evidence
     window: tuple[date, date] | None = None
+    decision: Decision | None = None
 
     @property
     def eve(self) -> date:

@@ -7,8 +7,10 @@ whatever the sky does, unless the community has recorded so.
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 from functools import cached_property
+from types import MappingProxyType
 
 import numpy as np
 
@@ -94,10 +96,13 @@ class Questions:
         return answers
 
 
-def walk(eras: tuple[Era, ...], first: int, last: int) -> tuple[Questions, list[Step]]:
+def walk(
+    eras: tuple[Era, ...], first: int, last: int, decided: Mapping[int, int] = MappingProxyType({})
+) -> tuple[Questions, list[Step]]:
     """The starts of the months of ordinal ``first`` to ``last`` + 1, after those of the lead-in.
 
-    Raises RequestError where a month lies outside the ephemeris or before the first era.
+    ``decided`` gives the first day, as a civil ordinal, of months whose start is on record; the others follow
+    from them. Raises RequestError where a month lies outside the ephemeris or before the first era.
     """
     earliest, latest = span()
     earliest = max(earliest, eras[0].first)
@@ -109,12 +114,13 @@ def walk(eras: tuple[Era, ...], first: int, last: int) -> tuple[Questions, list[
         )
     begin = max(earliest, first - LEAD_IN_MONTHS)
     questions = Questions(eras, begin, last + 1)
-    start = _first_start(questions)
+    start = decided.get(begin, _first_start(questions))
     steps = [Step(begin, start, start - 1, True, False, True)]
     for row in range(1, last + 2 - begin):
         evening = start + 28
         is_met = questions.met(row, evening)
-        start += 29 if is_met else 30
+        # The record is asked first: what it says stands, and what follows is reckoned from it.
+        start = decided.get(begin + row, start + (29 if is_met else 30))
         steps.append(Step(
             begin + row, start, evening, is_met,
             questions.met(row, evening - 1), is_met or questions.met(row, evening + 1),

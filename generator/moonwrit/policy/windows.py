@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Container
 from datetime import date
 
 import numpy as np
@@ -15,8 +16,8 @@ LATEST_EVENING = 2
 the Moon is more than two days old at sunset, and only clouds on three evenings running could hide it."""
 
 
-def windows(questions: Questions, steps: list[Step]) -> list[tuple[date, date]]:
-    """(earliest, latest) first day of the month of each step, given that the first step's start holds.
+def windows(questions: Questions, steps: list[Step], decided: Container[int]) -> list[tuple[date, date]]:
+    """(earliest, latest) first day of the month of each step, given the first step's start and those decided.
 
     No month has fewer than 29 or more than 30 days; none begins before the evening that follows its
     conjunction in the policy's scope, nor, for planning, more than two evenings after that one.
@@ -24,6 +25,10 @@ def windows(questions: Questions, steps: list[Step]) -> list[tuple[date, date]]:
     earliest = latest = steps[0].start
     out = [(date.fromordinal(earliest), date.fromordinal(latest))]
     for step in steps[1:]:
+        if step.ordinal in decided:
+            earliest = latest = step.start
+            out.append((date.fromordinal(earliest), date.fromordinal(latest)))
+            continue
         row = step.ordinal - int(questions.moons.ordinal[0])
         first_eve = _first_evening(questions, row, step)
         earliest = max(earliest + 29, first_eve + 1)
