@@ -1,4 +1,4 @@
-"""The one assembled value: months with basis, margin and standing, and dated observances.
+"""The one assembled value: months with basis, margin and standing, evenings, and dated observances.
 
 Everything here is frozen. ``publish`` reads it and never edits it.
 """
@@ -6,22 +6,41 @@ Everything here is frozen. ``publish`` reads it and never edits it.
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
-from datetime import date
+from dataclasses import dataclass, replace
+from datetime import UTC, date, datetime, timedelta
 
 from moonwrit.content import Content
-from moonwrit.content.models import Calendar, Observance, Place, Region, Site
+from moonwrit.content.models import Calendar, Observance, Place, Region, Site, in_language
+from moonwrit.content.record import Decision
 from moonwrit.observances import Occurrence, occurrences
-from moonwrit.policy import Method, Month, method
+from moonwrit.policy import Method, Month, method, named_place
+from moonwrit.policy.evening import Row, evening_at
+from moonwrit.record import Weighed, in_force, superseded, weighed
+from moonwrit.record.decisions import objection
+
+
+@dataclass(frozen=True, slots=True)
+class Evening:
+    """The 29th evening before a month: when observers look and the policy asks.
+
+    ``at`` gives the circumstances at each place of the region (place id -> names with units); ``month`` is the
+    month that begins then or an evening later; ``reports`` are those of this evening, weighed.
+    """
+
+    on: date
+    month: Month
+    at: Mapping[str, Row]
+    reports: tuple[Weighed, ...]
 
 
 @dataclass(frozen=True, slots=True)
 class Almanac:
     """All that is published for one calendar (a policy speaking for a region).
 
-    ``months`` are consecutive lunar months, first Muharram of the first year to Dhu al-Hijja of the
-    last; ``occurrences`` are in order of civil date, then of the observance's name in the content.
-    ``method`` is the policy made ready, with its title, source and notes. ``as_of`` is "today".
+    ``months`` are consecutive lunar months, first Muharram of the first year to Dhu al-Hijja of the last;
+    ``evenings`` the 29th evening before each of them; ``occurrences`` are in order of civil date, then of the
+    observance's name in the content. ``method`` is the policy made ready, with its title, source and notes.
+    ``superseded`` holds, by month ordinal, decisions that later ones have replaced. ``as_of`` is "today".
     """
 
     calendar_id: str
@@ -32,27 +51,81 @@ class Almanac:
     places: Mapping[str, Place]
     observances: Mapping[str, Observance]
     months: tuple[Month, ...]
+    evenings: tuple[Evening, ...]
     occurrences: tuple[Occurrence, ...]
+    superseded: Mapping[int, tuple[Decision, ...]]
     as_of: date
 
 
-def assemble(content: Content, as_of: date) -> tuple[Almanac, ...]:
+def assemble(content: Content, as_of: date, known_until: datetime | None = None) -> tuple[Almanac, ...]:
     """The almanac of each calendar of the site, the main one first.
 
-    Raises ContentError where a declaration is at fault, RequestError where a year cannot be computed.
+    Of the record, only what was written down until ``known_until`` counts (all: None). Raises ContentError where a
+    declaration or a decision is at fault, RequestError where a year cannot be computed.
     """
     years = content.site.years
+    decisions = in_force(content.decisions, known_until)
+    replaced = superseded(content.decisions, known_until)
     out = []
     for calendar_id, calendar in content.site.calendars.items():
         adopted = method(calendar.policy, content)
-        months = adopted.months(years.first, years.last)
+        months = adopted.months(years.first, years.last, decisions)
+        months = tuple(_amended(month, replaced.get(month.ordinal, ())) for month in months)
         region = content.regions[calendar.region]
+        evenings = tuple(_evening(month, region, content, known_until) for month in months)
+        _refuse_impossible(content, calendar.policy, months, evenings)
         out.append(Almanac(
             calendar_id, calendar, content.site, adopted, region,
             {place: content.places[place] for place in region.places},
-            content.observances, months, occurrences(content.observances, months), as_of,
+            content.observances, months, evenings, occurrences(content.observances, months), replaced, as_of,
         ))
     return tuple(out)
 
 
-__all__ = ["Almanac", "assemble"]
+def _amended(month: Month, before: tuple[Decision, ...]) -> Month:
+    """A decided month whose date an earlier decision had settled otherwise is amended."""
+    if any(decision.starts != month.starts for decision in before):
+        return replace(month, standing="amended")
+    return month
+
+
+def _evening(month: Month, region: Region, content: Content, known_until: datetime | None) -> Evening:
+    on = month.evidence.evening
+    rows = evening_at(on, [named_place(content, place_id) for place_id in region.places])
+    names = {place_id: in_language(place.name, content.site.language) for place_id, place in content.places.items()}
+    reports = [
+        report for report in content.reports
+        if report.evening == on and (known_until is None or report.recorded <= known_until)
+    ]
+    return Evening(on, month, dict(zip(region.places, rows, strict=True)), weighed(reports, content.places, names))
+
+
+def _refuse_impossible(
+    content: Content, policy_id: str, months: tuple[Month, ...], evenings: tuple[Evening, ...]
+) -> None:
+    """Raise ContentError for the first decision that the rules or the sky speak against."""
+    policy = content.policies.get(policy_id)
+    may_be_28 = policy is not None and policy.if_seen_on_28th == "begin"
+    for before, month, evening in zip([None, *months[:-1]], months, evenings, strict=True):
+        if month.decision is None:
+            continue
+        fault = objection(month, before, _conjunction_passed(month, evening), may_be_28)
+        if fault is not None:
+            index = content.decisions.index(month.decision)
+            raise content.error("record/decisions.yaml", (index, "starts"),
+                                f"{month.decision.month} cannot begin on {month.starts}: {fault[0]}", fault[1])
+
+
+def _conjunction_passed(month: Month, evening: Evening) -> bool:
+    """By the sunset of the eve at one place of the region, to within a day where that evening was not computed."""
+    for row in evening.at.values():
+        conjunction, sunset = row["conjunction_utc"], row["sunset_utc"]
+        if not isinstance(conjunction, str) or not isinstance(sunset, str):
+            return True
+        eve_sunset = datetime.fromisoformat(sunset) + timedelta(days=(month.eve - evening.on).days)
+        if datetime.fromisoformat(conjunction) < eve_sunset.astimezone(UTC):
+            return True
+    return False
+
+
+__all__ = ["Almanac", "Evening", "assemble"]

@@ -8,9 +8,10 @@ import re
 import sys
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
+from dataclasses import replace
 from datetime import UTC, date, datetime
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, TypeVar
 
 import click
 
@@ -19,8 +20,14 @@ from moonwrit.concordance import TITLES, in_calendar
 from moonwrit.errors import MoonwritError, RequestError, did_you_mean
 
 if TYPE_CHECKING:
+    from zoneinfo import ZoneInfo
+
     from moonwrit.content import Content
+    from moonwrit.content.record import Decision, Report
     from moonwrit.policy import Method, Month, NamedPlace
+
+
+Entry = TypeVar("Entry", bound="Report | Decision")
 
 
 class _Commands(click.Group):
@@ -86,14 +93,24 @@ def main() -> None:
               help="Folder of the built site.")
 def publish(folder: Path, output: Path, as_of: date | None) -> None:
     """Build the site and its feeds."""
+    from moonwrit import journal
     from moonwrit.almanac import assemble
     from moonwrit.publish import publish as put
+    from moonwrit.publish.writing import MARKER
 
     content = _content(folder)
+    now = _now()
+    until = None if as_of is None else _end_of(as_of, content)
+    if as_of is None:
+        journal.recover(folder, output / MARKER, content.site.address)
     with _progress("Computing months and observances"):
-        almanacs = assemble(content, as_of or _today(content))
+        almanacs = assemble(content, as_of or _today(content, now), until)
+        seen = [entry for entry in journal.read(folder) if until is None or entry.at <= until]
+        ledger = journal.hold_against(seen, almanacs, content.decisions, content.amendments, until or now)
     with _progress("Writing the site"):
-        files = put(almanacs, output)
+        files = put(almanacs, ledger, output)
+    if as_of is None:
+        journal.append(folder, ledger.added)
     click.echo(f"{files} files in {output}")
 
 
@@ -238,6 +255,69 @@ def differ(
             click.echo(f"  {each.ours.year}-{each.ours.month:02d}: {each.days:+d} d. {each.reason}")
 
 
+@main.group()
+def record() -> None:
+    """Add a report or a decision to the record; what is missing is asked for on a terminal."""
+
+
+@record.command()
+@_shared("content")
+@click.option("--evening", metavar="DATE", help="The evening's civil date.")
+@click.option("--place", help="A place of the content.")
+@click.option("--outcome", help="seen, not-seen or could-not-look.")
+@click.option("--time", metavar="HH:MM", help="When, by the place's clock.")
+@click.option("--aid", help="naked-eye, binoculars, telescope or camera.")
+@click.option("--observers", type=int, help="How many looked.")
+@click.option("--sky", help="clear, haze, part-cloud, cloud or rain.")
+@click.option("--note", help="Anything else worth keeping.")
+@click.option("--name", "names", multiple=True, help="An observer's name; never published unless --names-public.")
+@click.option("--names-public", is_flag=True, help="The observers agree that their names are published.")
+def report(folder: Path, **given: Any) -> None:
+    """What one group of observers says of one evening."""
+    from moonwrit.content.models import in_language
+    from moonwrit.content.record import Report
+    from moonwrit.record import weighed
+
+    content = _content(folder)
+    given["evening"] = _asked_for(given["evening"], "Evening (year-month-day)")
+    given["place"] = _asked_for(given["place"], f"Place ({', '.join(content.places)})")
+    given["outcome"] = _asked_for(given["outcome"], "Outcome (seen, not-seen, could-not-look)")
+    if given["outcome"] == "seen":
+        given["aid"] = _asked_for(given["aid"], "Aid (naked-eye, binoculars, telescope, camera)")
+    made = _recorded(folder / "record/reports.yaml", Report, {**given, "recorded": _stamp(content)}, content)
+    names = {name: in_language(place.name, content.site.language) for name, place in content.places.items()}
+    for one in weighed([made], content.places, names):
+        click.echo(f"recorded; weighed against the sky, as advice only: {one.weight}")
+        for advice in one.advice:
+            click.echo(f"  {advice}")
+
+
+@record.command()
+@_shared("content")
+@click.option("--month", metavar="YEAR-MONTH", help="The lunar month, for instance 1448-09.")
+@click.option("--starts", metavar="DATE", help="Its first day.")
+@click.option("--basis", help="sighted, completed, calculated or adopted.")
+@click.option("--by", help="Who decided.")
+@click.option("--at", metavar="MOMENT", help="When, with time zone; now unless said.")
+@click.option("--text", help="The decision in words.")
+@click.option("--adopted-from", help="The authority that the date is taken from.")
+@click.option("--knowingly", is_flag=True, help="The community knows that the rules or the sky speak against it.")
+def decision(folder: Path, **given: Any) -> None:
+    """The community's word on when a month begins."""
+    from moonwrit.content.record import Decision
+
+    content = _content(folder)
+    given["month"] = _asked_for(given["month"], "Lunar month (year-month)")
+    given["starts"] = _asked_for(given["starts"], "First day (year-month-day)")
+    given["basis"] = _asked_for(given["basis"], "Basis (sighted, completed, calculated, adopted)")
+    given["by"] = _asked_for(given["by"], "Decided by")
+    if given["basis"] == "adopted":
+        given["adopted_from"] = _asked_for(given["adopted_from"], "Adopted from")
+    given["at"] = given["at"] or _stamp(content)
+    made = _recorded(folder / "record/decisions.yaml", Decision, given, content)
+    click.echo(f"recorded: {made.month} begins on {made.starts:%A %Y-%m-%d}; publish to tell the public")
+
+
 @main.command()
 @click.argument("folder", metavar="DIR", type=click.Path(path_type=Path))
 def begin(folder: Path) -> None:
@@ -254,6 +334,37 @@ def begin(folder: Path) -> None:
         raise RequestError(f"{folder} cannot be written ({fault.strerror})", "name another folder") from None
     click.echo(f"{folder} is yours to change: begin with {folder / 'site.yaml'}")
     click.echo(f"then: moonwrit check --content {folder}")
+
+
+# --- the record -----------------------------------------------------------------------------------
+
+
+def _asked_for(given: str | None, what: str) -> str:
+    """The value given, or asked for on a terminal."""
+    if given:
+        return given
+    if sys.stdin.isatty() and sys.stderr.isatty():
+        return str(click.prompt(what, err=True))
+    raise click.UsageError(f"{what} is missing; see --help")
+
+
+def _stamp(content: Content) -> str:
+    return _now().astimezone(_zone(content)).replace(microsecond=0).isoformat()
+
+
+def _recorded(file: Path, shape: type[Entry], given: dict[str, Any], content: Content) -> Entry:
+    """Add an entry to the record once the whole record is sound with it; nothing is written otherwise."""
+    from moonwrit.content.record import Decision
+    from moonwrit.record.appending import append, tried
+
+    entry = {key: value for key, value in given.items() if value not in (None, (), False, "")}
+    made = tried(file, shape, entry, content)
+    if isinstance(made, Decision):
+        from moonwrit.almanac import assemble
+
+        assemble(replace(content, decisions=(*content.decisions, made)), _today(content, _now()))
+    append(file, entry)
+    return made
 
 
 # --- what the commands share ----------------------------------------------------------------------
@@ -349,15 +460,28 @@ def _years(content: Content | None, first: int | None, last: int | None) -> tupl
     return begin_year, end_year
 
 
-def _today(content: Content) -> date:
-    """Today in the community's first place; SOURCE_DATE_EPOCH instead of the clock where it is set."""
+def _now() -> datetime:
+    """The present moment; SOURCE_DATE_EPOCH instead of the clock where it is set."""
     epoch = os.environ.get("SOURCE_DATE_EPOCH")
     try:
-        now = datetime.fromtimestamp(int(epoch), UTC) if epoch else datetime.now(UTC)
+        return datetime.fromtimestamp(int(epoch), UTC) if epoch else datetime.now(UTC)
     except (ValueError, OverflowError, OSError):
         raise RequestError(f'SOURCE_DATE_EPOCH is "{epoch}"', "give whole seconds since 1970") from None
+
+
+def _zone(content: Content) -> ZoneInfo:
+    """The time zone of the community: that of its region's first place."""
     region = content.regions[next(iter(content.site.calendars.values())).region]
-    return now.astimezone(content.places[region.places[0]].zone).date()
+    return content.places[region.places[0]].zone
+
+
+def _today(content: Content, now: datetime) -> date:
+    return now.astimezone(_zone(content)).date()
+
+
+def _end_of(day: date, content: Content) -> datetime:
+    """The last second of a civil date in the community."""
+    return datetime(day.year, day.month, day.day, 23, 59, 59, tzinfo=_zone(content))
 
 
 def _print_json(value: object) -> None:

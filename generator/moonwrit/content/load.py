@@ -16,7 +16,7 @@ from moonwrit.content.faults import checked, first_of, schema_of
 from moonwrit.content.models import Identifier, Observance, Place, Region, Site
 from moonwrit.content.outlines import Polygons, read_outline
 from moonwrit.content.policies import Policy
-from moonwrit.content.record import Decision, Report
+from moonwrit.content.record import Amendment, Decision, Report
 from moonwrit.content.tables import Table, read_table
 from moonwrit.content.yaml import Document, KeyPath
 from moonwrit.errors import ContentError, did_you_mean
@@ -38,6 +38,7 @@ RECORD: Mapping[str, TypeAdapter[Any]] = MappingProxyType(
     {
         "record/reports.yaml": TypeAdapter(list[Report]),
         "record/decisions.yaml": TypeAdapter(list[Decision]),
+        "record/amendments.yaml": TypeAdapter(list[Amendment]),
     }
 )
 """The files of the record, which a new community does not have yet."""
@@ -82,6 +83,7 @@ class Content:
     observances: Mapping[str, Observance]
     reports: tuple[Report, ...]
     decisions: tuple[Decision, ...]
+    amendments: tuple[Amendment, ...]
     outlines: Mapping[str, Polygons] = field(repr=False)
     tables: Mapping[str, Table] = field(repr=False)
     documents: Mapping[str, Document] = field(repr=False, compare=False)
@@ -136,6 +138,7 @@ def load(
         observances=MappingProxyType(values["observances.yaml"]),
         reports=tuple(values["record/reports.yaml"]),
         decisions=tuple(values["record/decisions.yaml"]),
+        amendments=tuple(values["record/amendments.yaml"]),
         outlines=MappingProxyType(outlines),
         tables=MappingProxyType(tables),
         documents=MappingProxyType(documents),

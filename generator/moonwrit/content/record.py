@@ -87,3 +87,31 @@ class Decision(_Model):
         """Months since Muharram of the year 1 (which is 0)."""
         year, month = self.month.split("-")
         return (int(year) - 1) * 12 + int(month) - 1
+
+
+class Amendment(_Model):
+    """A dated reason for changes of published dates that no decision explains: another policy, a corrected rule.
+
+    It covers the months ``since`` a lunar month (and what hangs on them), or the observances named, or both.
+    """
+
+    at: Moment
+    by: Text
+    reason: Text
+    since: LunarMonth | None = None
+    observances: tuple[Identifier, ...] = ()
+
+    @model_validator(mode="after")
+    def _covers_something(self) -> Amendment:
+        if self.since is None and not self.observances:
+            raise ValueError("say what it covers: since (a lunar month), observances, or both")
+        return self
+
+    def covers(self, key: str, ordinal: int) -> bool:
+        """Does it cover the published thing ``key``, which hangs on the month ``ordinal``?"""
+        if self.observances and not any(key.startswith(f"{name}-") for name in self.observances):
+            return False
+        if self.since is None:
+            return True
+        year, month = self.since.split("-")
+        return ordinal >= (int(year) - 1) * 12 + int(month) - 1

@@ -17,7 +17,11 @@ from moonwrit.sky.lunation import SYNODIC_DAYS, conjunction_in, near_conjunction
 _HALF_DAYS = 3.3
 
 
-def evening_at(on: date, places: Sequence[NamedPlace]) -> list[dict[str, float | str | None]]:
+Row = dict[str, float | str | None]
+"""Names with units -> numbers, or ISO 8601 UTC for instants; None where the event does not happen."""
+
+
+def evening_at(on: date, places: Sequence[NamedPlace]) -> list[Row]:
     """One mapping of names with units for each place; instants are UTC.
 
     The conjunction is the last one before the end of the next civil date. Raises RequestError for a date outside
