@@ -270,14 +270,15 @@ def _bracket(
     high = np.full(culmination_tt.shape, np.nan)
     before_tt = culmination_tt
     before = above(before_tt)
-    ever_above = before > 0
+    # What counts where it never sets (or rose): a body that first shows hours away from this culmination, on
+    # its way to the next one, was below all the same.
+    starts_above = before > 0
     for step in steps[1:]:
         now_tt = culmination_tt + side * step
         now = above(now_tt)
         found = (before > 0) & (now <= 0) & np.isnan(low)
         low = np.where(found, before_tt, low)
         high = np.where(found, now_tt, high)
-        ever_above |= now > 0
         before_tt, before = now_tt, now
     crosses = np.isfinite(low)
     a, b = np.where(crosses, low, culmination_tt), np.where(crosses, high, culmination_tt)
@@ -286,7 +287,7 @@ def _bracket(
         middle = (a + b) / 2
         up = above(middle) > 0
         a, b = np.where(up, middle, a), np.where(up, b, middle)
-    state = np.where(crosses, 0, np.where(ever_above, Crossing.STAYS_ABOVE, Crossing.STAYS_BELOW))
+    state = np.where(crosses, 0, np.where(starts_above, Crossing.STAYS_ABOVE, Crossing.STAYS_BELOW))
     return np.where(crosses, (a + b) / 2, np.nan), state.astype(np.int8)
 
 
