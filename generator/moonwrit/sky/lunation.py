@@ -60,8 +60,8 @@ def conjunction_in(windows: Windows) -> Array:
     """TT of the conjunction inside each window [window], by Newton's method at the mean rate."""
     rate = 2 * np.pi / SYNODIC_DAYS
     tt = windows.centre_tt.copy()
-    for _ in range(8):
-        # The mean rate is within 17 % of the true one: each step leaves a fifth of the error at most.
+    for _ in range(12):
+        # The mean rate is within 18 % of the true one: from a day away, twelve steps leave 0.1 ms at most.
         tt = tt - longitude_difference_rad(windows, tt) / rate
     return tt
 
