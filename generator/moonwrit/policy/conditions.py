@@ -29,6 +29,9 @@ class Scoped:
     rule: Rule
     scope: Scope
 
+    def __str__(self) -> str:
+        return f"{self.rule}, {self.scope}"
+
     def met(self, evenings: Evenings) -> Flags:
         """[lunation, evening]"""
         return self.scope.met(self.rule, evenings)
@@ -39,6 +42,9 @@ class Every:
     """Every condition must hold."""
 
     parts: tuple[Condition, ...]
+
+    def __str__(self) -> str:
+        return "all of: " + "; ".join(f"({part})" for part in self.parts)
 
     def met(self, evenings: Evenings) -> Flags:
         answers = self.parts[0].met(evenings)
@@ -53,6 +59,9 @@ class Either:
     """One condition is enough."""
 
     parts: tuple[Condition, ...]
+
+    def __str__(self) -> str:
+        return "one of: " + "; ".join(f"({part})" for part in self.parts)
 
     def met(self, evenings: Evenings) -> Flags:
         answers = self.parts[0].met(evenings)

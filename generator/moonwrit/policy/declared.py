@@ -68,12 +68,13 @@ class _Reader:
             in_language(policy.name, language),
             in_language(policy.source, language) if policy.source else "",
             policy.decided_by,
+            summary=in_language(policy.summary, language) if policy.summary else "",
         )
         if policy.published is not None:
             place = named_place(self.content, policy.place) if policy.place else None
             known = self._pointing(("published",), lambda: published(str(policy.published), place))
             return replace(
-                known, name=self.name, title=base.title, source=base.source or known.source,
+                known, name=self.name, title=base.title, source=base.source or known.source, summary=base.summary,
                 decided_by=policy.decided_by,
             )
         if policy.arithmetic is not None:

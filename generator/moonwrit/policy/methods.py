@@ -37,6 +37,20 @@ class Method:
     table: Mapping[int, date] | None = None
     adopts: tuple[Method, ...] = ()
     note: str = ""
+    summary: str = ""
+
+    @property
+    def in_words(self) -> str:
+        """What is asked, era by era, as the parts of the method print themselves."""
+        if self.tabular is not None:
+            return f"arithmetic: {self.tabular.name}"
+        if self.table is not None:
+            return "a table of month starts"
+        if self.adopts:
+            return "the first to begin a month of: " + ", ".join(each.title for each in self.adopts)
+        if len(self.eras) == 1:
+            return str(self.eras[0].condition)
+        return "; ".join(f"from {era.first // 12 + 1} AH on, {era.condition}" for era in self.eras)
 
     def months(
         self, first_year: int, last_year: int, decisions: Mapping[int, Decision] = MappingProxyType({})

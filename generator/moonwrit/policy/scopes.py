@@ -61,6 +61,18 @@ class AtPlaces:
     fallback: Places | None = None
     fallback_names: tuple[str, ...] = ()
 
+    def __str__(self) -> str:
+        listed = ", ".join(self.names)
+        if len(self.names) == 1:
+            where = f"at {listed}"
+        elif self.needed in (0.0, 1.0):
+            where = f"at {'any' if self.needed == 0 else 'every one'} of {listed}"
+        else:
+            where = f"at {self.needed:.0%} at least of {listed}"
+        if self.fallback is None:
+            return where
+        return f"{where} (where the Sun does not set: {', '.join(dict.fromkeys(self.fallback_names))})"
+
     def all_places(self) -> Places:
         """The places, then their fallbacks: what a verdict's ``place`` counts."""
         return self.places if self.fallback is None else self.places.joined(self.fallback)
@@ -106,6 +118,11 @@ class Before:
     dawn_at: Places | None = None
     depression_deg: float = 18.0
 
+    def __str__(self) -> str:
+        if self.hour_ut is not None:
+            return f"before {self.hour_ut:g}:00 UT of the date"
+        return f"before the dawn there (Sun {self.depression_deg:g} deg down)"
+
     def tt(self, evenings: Evenings) -> Array:
         """[lunation, evening]"""
         if self.dawn_at is not None:
@@ -128,6 +145,10 @@ class Anywhere:
     before: Before | None = None
     step_deg: float = 5.0
     halvings: int = 5
+
+    def __str__(self) -> str:
+        deadline = f" {self.before}" if self.before is not None else ""
+        return f"anywhere on Earth between {MAX_LATITUDE_DEG:g} S and {MAX_LATITUDE_DEG:g} N{deadline}"
 
     def decide(self, rule: Rule, evenings: Evenings) -> Verdict:
         deadline = None if self.before is None else self.before.tt(evenings)
@@ -178,6 +199,11 @@ class Within:
     needed: float = 0.0
     step_deg: float = 2.0
     halvings: int = 3
+
+    def __str__(self) -> str:
+        if self.needed > 0:
+            return f"over {self.needed:.0%} at least of the area of the outline"
+        return "anywhere inside the outline"
 
     def decide(self, rule: Rule, evenings: Evenings) -> Verdict:
         longitude, latitude = self.outline.grid(self.step_deg)

@@ -1,0 +1,109 @@
+"""One language of the site: its messages, and how it writes dates, times and numbers."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from datetime import date, datetime
+from gettext import NullTranslations
+from typing import Literal
+
+from babel import Locale
+from babel.dates import format_date, format_skeleton, format_time, get_day_names
+from babel.numbers import format_decimal
+
+from moonwrit.calendars import month_name
+
+_LOCALES = {"en": "en_AU"}
+"""English without a country is written day first, as in most of the world."""
+
+
+@dataclass(frozen=True)
+class Language:
+    """``code`` is the language tag of the pages. Messages are given in English and looked up in a catalogue."""
+
+    code: str = "en"
+    translations: NullTranslations = field(default_factory=NullTranslations, compare=False)
+
+    @property
+    def locale(self) -> Locale:
+        return Locale.parse(_LOCALES.get(self.code, self.code.replace("-", "_")))
+
+    @property
+    def direction(self) -> Literal["ltr", "rtl"]:
+        return "rtl" if self.locale.text_direction == "rtl" else "ltr"
+
+    @property
+    def first_weekday(self) -> int:
+        """Monday is 0."""
+        return int(self.locale.first_week_day)
+
+    def gettext(self, message: str) -> str:
+        return self.translations.gettext(message)
+
+    def ngettext(self, one: str, many: str, n: int) -> str:
+        return self.translations.ngettext(one, many, n)
+
+    def weekdays(self, width: Literal["wide", "abbreviated"] = "wide") -> list[str]:
+        """The seven names, in the order of the week here."""
+        names = get_day_names(width, "stand-alone", self.locale)
+        return [str(names[(self.first_weekday + i) % 7]) for i in range(7)]
+
+    def full_date(self, day: date) -> str:
+        """Friday 20 February 2026"""
+        return str(format_date(day, "full", self.locale))
+
+    def long_date(self, day: date) -> str:
+        """20 February 2026"""
+        return self._date("yMMMMd", day)
+
+    def week_date(self, day: date) -> str:
+        """Fri 20 Feb 2026"""
+        return self._date("yMMMEd", day)
+
+    def short_date(self, day: date) -> str:
+        """20 Feb"""
+        return self._date("MMMd", day)
+
+    def short_week_date(self, day: date) -> str:
+        """Fri 20 Feb"""
+        return self._date("MMMEd", day)
+
+    def civil_month(self, day: date) -> str:
+        """February 2026"""
+        return self._date("yMMMM", day)
+
+    def short_civil_month(self, day: date) -> str:
+        """Feb"""
+        return self._date("MMM", day)
+
+    def weekday(self, day: date) -> str:
+        """Friday"""
+        return str(get_day_names("wide", "stand-alone", self.locale)[day.weekday()])
+
+    def short_weekday(self, day: date) -> str:
+        """Fri"""
+        return str(get_day_names("abbreviated", "stand-alone", self.locale)[day.weekday()])
+
+    def clock(self, moment: datetime, seconds: bool = False) -> str:
+        """20:15, by the clock of the moment's own zone."""
+        return str(format_time(moment, "HH:mm:ss" if seconds else "HH:mm", locale=self.locale))
+
+    def number(self, value: float, decimals: int = 4) -> str:
+        """With a true minus sign and at most so many decimals."""
+        pattern = "#,##0." + "#" * decimals if decimals else "#,##0"
+        return str(format_decimal(value, pattern, self.locale)).replace("-", "\u2212")
+
+    def month(self, month: int) -> str:
+        """The name of a Hijri month, 1 to 12."""
+        return month_name(month, self.code)
+
+    def listing(self, items: list[str]) -> str:
+        """a, b, c"""
+        separator = "، " if self.direction == "rtl" else ", "
+        return separator.join(items)
+
+    def _date(self, skeleton: str, day: date) -> str:
+        return str(format_skeleton(skeleton, day, locale=self.locale))
+
+
+ENGLISH = Language()

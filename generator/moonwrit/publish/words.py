@@ -1,0 +1,319 @@
+"""The plain sentences: why a month begins when it does, how close the call was, what is still open.
+
+Used by pages, feeds and ``moonwrit why``. Every sentence is looked up in the language's catalogue.
+"""
+
+from __future__ import annotations
+
+from datetime import date
+
+from moonwrit.content.models import When
+from moonwrit.observances import Occurrence
+from moonwrit.policy.months import Closeness, Finding, Margin, Month, Standing
+from moonwrit.publish import labels
+from moonwrit.publish.language import ENGLISH, Language
+
+EYES = "Never point optics at or near the Sun before the whole disc has set: eyes can be lost."
+
+
+def why_paragraphs(month: Month, language: Language = ENGLISH) -> list[str]:
+    """Why the month begins on its day: when, on what basis, how close it was, and what is still open."""
+    return [
+        begins_sentence(month, language),
+        basis_sentence(month, language),
+        *([conjunction_sentence(month, language)] if month.evidence.conjunction else []),
+        margin_sentence(month.margin, language),
+        standing_sentence(month, language),
+        *note_sentences(month, language),
+    ]
+
+
+def month_title(month: Month, language: Language = ENGLISH) -> str:
+    """Ramadan 1447"""
+    return title_of(month.year, month.month, language)
+
+
+def title_of(year: int, month: int, language: Language = ENGLISH) -> str:
+    _ = language.gettext
+    return _("%(month)s %(year)s") % {"month": language.month(month), "year": year}
+
+
+def begins_sentence(month: Month, language: Language = ENGLISH) -> str:
+    _ = language.gettext
+    return _("%(month)s begins at sunset on %(eve)s; its first day is %(day)s.") % {
+        "month": month_title(month, language),
+        "eve": language.full_date(month.eve),
+        "day": language.full_date(month.starts),
+    }
+
+
+def basis_sentence(month: Month, language: Language = ENGLISH) -> str:
+    """What the start rests on, for each basis."""
+    _ = language.gettext
+    names = {
+        "month": language.month(month.month),
+        "before": language.month((month.month - 2) % 12 + 1),
+        "evening": language.full_date(month.evidence.evening),
+        "eve": language.full_date(month.eve),
+        "found": found_sentence(month, language),
+    }
+    match month.basis:
+        case "arithmetic":
+            text = _("The date follows from arithmetic alone, a fixed pattern of months and years; the sky is not "
+                     "asked.")
+        case "tabulated":
+            text = _("The date is taken from the table that the policy follows.")
+        case "adopted" if month.evidence.findings:
+            text = _("The date is adopted from another authority, which asked the evening of %(evening)s. "
+                     "%(found)s")
+        case "adopted":
+            text = _("The date is adopted from another authority.")
+        case "sighted" if month.evidence.findings:
+            text = _("The new crescent is accepted as seen on the evening of %(eve)s. By calculation: %(found)s")
+        case "sighted":
+            text = _("The new crescent is accepted as seen on the evening of %(eve)s.")
+        case "calculated" if month.evidence.met is False:
+            text = _("The evening asked is that of %(evening)s. The policy's test is not met. %(found)s")
+        case "calculated":
+            text = _("On the evening of %(evening)s, the 29th of %(before)s, the policy's test is met. %(found)s")
+        case "completed" if month.evidence.met:
+            text = _("%(before)s is given thirty days, although the policy's test is met on its 29th evening, "
+                     "%(evening)s. %(found)s")
+        case "completed":
+            text = _("On the evening of %(evening)s, the 29th of %(before)s, the policy's test is not met. "
+                     "%(found)s So %(before)s is given thirty days, and %(month)s begins one evening later.")
+    return (text % names).strip()
+
+
+def found_sentence(month: Month, language: Language = ENGLISH) -> str:
+    """The deciding comparison in words; empty where nothing was compared."""
+    finding = deciding_finding(month)
+    if finding is None:
+        return ""
+    _ = language.gettext
+    names = {
+        "place": finding.place,
+        "quantity": quantity(finding.quantity, language),
+        "value": measured(finding.value, finding.unit, language) if finding.value is not None else "",
+        "asked": asked(finding, language),
+    }
+    if finding.value is None:
+        return _("At %(place)s the %(quantity)s has no value, for the Sun or the Moon does not set there; "
+                 "%(asked)s is asked.") % names
+    return _("At %(place)s the %(quantity)s is %(value)s; %(asked)s is asked.") % names
+
+
+def conjunction_sentence(month: Month, language: Language = ENGLISH) -> str:
+    """When Sun and Moon stood in line, and how old the Moon was at the sunset asked."""
+    _ = language.gettext
+    moment = month.evidence.conjunction
+    if moment is None:
+        return ""
+    age = month.evidence.circumstances.get("age_h")
+    names = {
+        "time": language.clock(moment),
+        "date": language.long_date(moment.date()),
+        "place": month.evidence.place or "",
+        "age": language.number(abs(age), 1) if isinstance(age, float | int) else "",
+    }
+    if not isinstance(age, float | int) or not month.evidence.place:
+        return _("The conjunction of Moon and Sun is at %(time)s UTC on %(date)s.") % names
+    if age < 0:
+        return _("The conjunction of Moon and Sun is at %(time)s UTC on %(date)s, %(age)s hours after that "
+                 "sunset at %(place)s.") % names
+    return _("The conjunction of Moon and Sun is at %(time)s UTC on %(date)s; at that sunset at %(place)s the "
+             "Moon is %(age)s hours old.") % names
+
+
+def margin_sentence(margin: Margin, language: Language = ENGLISH) -> str:
+    """How close the call was."""
+    _ = language.gettext
+    if margin.closeness == "fixed":
+        return _("The date is fixed: nothing is measured that could turn out otherwise.")
+    label = quantity(margin.quantity, language)
+    if margin.margin is None or margin.day_share is None or margin.value is None or margin.threshold is None:
+        return _("How close it was cannot be said in numbers, for the %(quantity)s has no value that evening.") % {
+            "quantity": label
+        }
+    names = {
+        "gap": measured(abs(margin.margin), margin.unit, language),
+        "quantity": label,
+        "while": _while(margin.day_share, language),
+    }
+    above = margin.value >= margin.threshold
+    match margin.closeness:
+        case "edge":
+            text = (
+                _("%(gap)s above the limit: on the edge. The %(quantity)s usually changes by as much in "
+                  "%(while)s, so a slightly different convention or state of the air would change the date.")
+                if above else
+                _("%(gap)s below the limit: on the edge. The %(quantity)s usually changes by as much in "
+                  "%(while)s, so a slightly different convention or state of the air would change the date.")
+            )
+        case "close":
+            text = (
+                _("%(gap)s above the limit: a close call. The %(quantity)s usually changes by as much in "
+                  "%(while)s.")
+                if above else
+                _("%(gap)s below the limit: a close call. The %(quantity)s usually changes by as much in "
+                  "%(while)s.")
+            )
+        case _:
+            text = (
+                _("%(gap)s above the limit: a wide margin. The %(quantity)s usually changes by as much in "
+                  "%(while)s.")
+                if above else
+                _("%(gap)s below the limit: a wide margin. The %(quantity)s usually changes by as much in "
+                  "%(while)s.")
+            )
+    return text % names
+
+
+def standing_sentence(month: Month, language: Language = ENGLISH) -> str:
+    """Is it settled, and between which days it may still move."""
+    _ = language.gettext
+    match month.standing:
+        case "settled":
+            return _("Settled: this is the community's date.")
+        case "amended":
+            return _("Amended: a date was settled before, and has been changed to this one.")
+        case _:
+            pass
+    earliest, latest = month.window or (month.starts, month.starts)
+    if earliest == latest:
+        return _("Expected: no decision is recorded yet.")
+    return _("Expected: no decision is recorded yet. For planning, the first day may fall from %(earliest)s to "
+             "%(latest)s.") % {
+        "earliest": language.full_date(earliest),
+        "latest": language.full_date(latest),
+    }
+
+
+def note_sentences(month: Month, language: Language = ENGLISH) -> list[str]:
+    """What was unusual about it."""
+    return [language.gettext(note.text) % note.values for note in month.evidence.notes]
+
+
+def authority_sentence(authority: str, language: Language = ENGLISH) -> str:
+    """The standard caution: whose word it is."""
+    _ = language.gettext
+    return _("These dates state what the adopted policy gives, and why; they are no religious ruling. The word of "
+             "your own community's authority comes first: here, %(authority)s.") % {"authority": authority}
+
+
+# --- parts of sentences --------------------------------------------------------------------------
+
+
+def standing(value: Standing, language: Language = ENGLISH) -> str:
+    return language.gettext(labels.STANDINGS[value])
+
+
+def closeness(value: Closeness, language: Language = ENGLISH) -> str:
+    return language.gettext(labels.CLOSENESS[value])
+
+
+def quantity(name: str, language: Language = ENGLISH) -> str:
+    return language.gettext(labels.QUANTITIES.get(name, name))
+
+
+def measured(value: float, unit: str, language: Language = ENGLISH) -> str:
+    """A number with its unit in words: 0.5 degrees."""
+    return language.gettext(labels.UNITS_IN_WORDS[unit]) % {"number": language.number(value)}
+
+
+def with_sign(value: float, unit: str, language: Language = ENGLISH, *, plus: bool = False) -> str:
+    """A number with its unit as a sign: 0.5°; with ``plus``, +0.5°."""
+    number = ("+" if plus and value > 0 else "") + language.number(value)
+    return language.gettext(labels.UNITS_AS_SIGNS[unit]) % {"number": number}
+
+
+def asked(finding: Finding, language: Language = ENGLISH) -> str:
+    """at least 3 degrees"""
+    return language.gettext(labels.SIGNS[finding.comparison]) % {
+        "limit": measured(finding.threshold, finding.unit, language)
+    }
+
+
+def deciding_finding(month: Month) -> Finding | None:
+    """The finding on which the margin rests, or else the first."""
+    margin = month.margin
+    for finding in month.evidence.findings:
+        if (finding.quantity, finding.value, finding.threshold) == (
+            margin.quantity, margin.value, margin.threshold
+        ):
+            return finding
+    return month.evidence.findings[0] if month.evidence.findings else None
+
+
+def _while(day_share: float, language: Language) -> str:
+    """A share of a day as a time in words, no more exact than it is known."""
+    minutes = abs(day_share) * 1440
+    if minutes < 1:
+        return language.gettext("less than a minute")
+    if minutes < 90:
+        n = round(minutes)
+        return language.ngettext("about %(n)s minute", "about %(n)s minutes", n) % {"n": n}
+    n = round(minutes / 60)
+    return language.ngettext("about %(n)s hour", "about %(n)s hours", n) % {"n": n}
+
+
+# --- observances ---------------------------------------------------------------------------------
+
+
+def occurrence_title(name: str, occurrence: Occurrence, language: Language = ENGLISH) -> str:
+    """Eid al-Fitr; or Mid-Shaban: night of 15 Shaban."""
+    if not occurrence.night:
+        return name
+    _ = language.gettext
+    return _("%(name)s: night of %(day)s %(month)s") % {
+        "name": name, "day": occurrence.day, "month": language.month(occurrence.month)
+    }
+
+
+def event_title(name: str, occurrence: Occurrence, language: Language = ENGLISH) -> str:
+    """The title in a feed, which says by itself when a night begins and that a date is only expected."""
+    _ = language.gettext
+    names = {"title": occurrence_title(name, occurrence, language)}
+    expected = occurrence.standing == "expected"
+    if occurrence.night and expected:
+        return _("%(title)s (begins at sunset; expected)") % names
+    if occurrence.night:
+        return _("%(title)s (begins at sunset)") % names
+    return _("%(title)s (expected)") % names if expected else names["title"]
+
+
+def span(starts: date, ends: date, language: Language = ENGLISH) -> str:
+    """Fri 20 Mar 2026, or Fri 20 Mar 2026 to Sun 22 Mar 2026"""
+    if starts == ends:
+        return language.week_date(starts)
+    return language.gettext("%(first)s to %(last)s") % {
+        "first": language.week_date(starts), "last": language.week_date(ends)
+    }
+
+
+def rule(when: When, language: Language = ENGLISH) -> str:
+    """The rule of an observance: 10 Muharram; the nights of 21 Ramadan to the last; ..."""
+    _ = language.gettext
+    month = _("each month") if when.month == "every" else language.month(when.month)
+    names: dict[str, str | int] = {"month": month, "day": when.day or "", "n": when.run}
+    if when.last is not None:
+        weekday = date(2024, 1, 1 + _WEEKDAYS.index(when.last))  # 1 January 2024 was a Monday
+        return _("the last %(weekday)s of %(month)s") % {"weekday": language.weekday(weekday), "month": month}
+    if when.last_nights is not None:
+        names["day"] = 31 - when.last_nights
+        if when.odd:
+            return _("the odd nights from day %(day)s to the end of %(month)s") % names
+        return _("the nights from day %(day)s to the end of %(month)s") % names
+    if when.day == "last":
+        return (_("the night of the last day of %(month)s") if when.night
+                else _("the last day of %(month)s")) % names
+    if when.night:
+        return _("the night of day %(day)s of %(month)s") % names
+    if when.run == "month":
+        return _("day %(day)s to the end of %(month)s") % names
+    if when.run > 1:
+        return _("%(n)s days from day %(day)s of %(month)s") % names
+    return _("day %(day)s of %(month)s") % names
+
+
+_WEEKDAYS = ("monday", "tuesday", "wednesday", "thursday", "friday", "saturday", "sunday")
