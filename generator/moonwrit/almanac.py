@@ -12,11 +12,16 @@ from datetime import UTC, date, datetime, timedelta
 from moonwrit.content import Content
 from moonwrit.content.models import Calendar, Observance, Place, Region, Site, in_language
 from moonwrit.content.record import Decision
+from moonwrit.errors import RequestError
 from moonwrit.observances import Occurrence, occurrences
 from moonwrit.policy import Method, Month, method, named_place
+from moonwrit.policy.differ import Beside, LongRun, beside, long_run
 from moonwrit.policy.evening import Row, evening_at
 from moonwrit.record import Weighed, in_force, superseded, weighed
 from moonwrit.record.decisions import objection
+
+LONG_RUN_YEARS = 15
+"""Policies are held against each other over this many years before and after those published, too."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -34,13 +39,22 @@ class Evening:
 
 
 @dataclass(frozen=True, slots=True)
+class Other:
+    """Another policy beside the calendar's: over the years published, and in the long run."""
+
+    beside: Beside
+    long_run: LongRun | None
+
+
+@dataclass(frozen=True, slots=True)
 class Almanac:
     """All that is published for one calendar (a policy speaking for a region).
 
     ``months`` are consecutive lunar months, first Muharram of the first year to Dhu al-Hijja of the last;
     ``evenings`` the 29th evening before each of them; ``occurrences`` are in order of civil date, then of the
     observance's name in the content. ``method`` is the policy made ready, with its title, source and notes.
-    ``superseded`` holds, by month ordinal, decisions that later ones have replaced. ``as_of`` is "today".
+    ``superseded`` holds, by month ordinal, decisions that later ones have replaced; ``others`` the other
+    policies of the content. ``as_of`` is "today".
     """
 
     calendar_id: str
@@ -54,6 +68,7 @@ class Almanac:
     evenings: tuple[Evening, ...]
     occurrences: tuple[Occurrence, ...]
     superseded: Mapping[int, tuple[Decision, ...]]
+    others: tuple[Other, ...]
     as_of: date
 
 
@@ -77,8 +92,25 @@ def assemble(content: Content, as_of: date, known_until: datetime | None = None)
         out.append(Almanac(
             calendar_id, calendar, content.site, adopted, region,
             {place: content.places[place] for place in region.places},
-            content.observances, months, evenings, occurrences(content.observances, months), replaced, as_of,
+            content.observances, months, evenings, occurrences(content.observances, months), replaced,
+            _others(content, calendar.policy, adopted, months), as_of,
         ))
+    return tuple(out)
+
+
+def _others(content: Content, policy_id: str, adopted: Method, months: tuple[Month, ...]) -> tuple[Other, ...]:
+    """Every other policy of the content that can answer for the years published."""
+    first, last = months[0].year, months[-1].year
+    out = []
+    for name in content.policies:
+        if name == policy_id:
+            continue
+        other = method(name, content)
+        try:
+            found = beside(other, months, adopted)
+        except RequestError:
+            continue
+        out.append(Other(found, long_run(adopted, other, first - LONG_RUN_YEARS, last + LONG_RUN_YEARS)))
     return tuple(out)
 
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
+from moonwrit.errors import RequestError
 from moonwrit.policy.methods import Method
 from moonwrit.policy.months import Evidence, Margin, Month, Note
 
@@ -30,6 +31,26 @@ class Beside:
     @property
     def agreement(self) -> float:
         return 1 - len(self.differences) / len(self.months)
+
+
+@dataclass(frozen=True, slots=True)
+class LongRun:
+    """How many of the months of two methods begin on the same day, decisions left aside."""
+
+    first_year: int
+    last_year: int
+    months: int
+    same: int
+
+
+def long_run(ours: Method, theirs: Method, first_year: int, last_year: int) -> LongRun | None:
+    """The agreement of two methods over whole Hijri years; None where one of them cannot answer for all."""
+    try:
+        pairs = zip(ours.months(first_year, last_year), theirs.months(first_year, last_year), strict=True)
+        same = [our.starts == their.starts for our, their in pairs]
+    except RequestError:
+        return None
+    return LongRun(first_year, last_year, len(same), sum(same))
 
 
 def beside(method: Method, ours: Sequence[Month], our_method: Method) -> Beside:

@@ -13,6 +13,7 @@ from moonwrit.content.models import in_language
 from moonwrit.journal import Entry, Ledger, month_key
 from moonwrit.observances import Occurrence
 from moonwrit.policy import Month
+from moonwrit.policy.differ import Beside
 from moonwrit.publish import pictures, words
 from moonwrit.publish.language import Language
 from moonwrit.publish.render import Page, svg
@@ -59,6 +60,8 @@ def pages(
         title = _("Evening of %(date)s") % {"date": language.long_date(evening.on)}
         yield frame.page(evening_path(evening), "evening", title, **_evening(almanac, evening, language))
     yield frame.page("policy/", "policy", _("The policy"))
+    if almanac.others:
+        yield frame.page("differences/", "differences", _("Why it is another day elsewhere"), **_differences(almanac))
     yield frame.page("changes/", "changes", _("Changes"), moved=ledger.moved(almanac.calendar_id))
     yield frame.page("subscribe/", "subscribe", _("Subscribe"))
     yield frame.page("reading/", "reading", _("How to read these pages"))
@@ -150,6 +153,27 @@ def _cells(almanac: Almanac, month: Month) -> list[Cell]:
         Cell(number, day, on(day), day == almanac.as_of)
         for number, day in enumerate(days, 1)
     ]
+
+
+def _differences(almanac: Almanac) -> dict[str, object]:
+    shown = [other.beside for other in almanac.others]
+    rows = []
+    for index, month in enumerate(almanac.months):
+        theirs = [one.months[index].starts for one in shown]
+        rows.append((month, [(day, (day - month.starts).days) for day in theirs]))
+    feasts = [one for one in almanac.occurrences if "main" in one.tags and not one.night]
+    return {
+        "others": almanac.others,
+        "rows": rows,
+        "feasts": [
+            (one, [(other, _shift(other, one)) for other in shown]) for one in feasts
+        ],
+    }
+
+
+def _shift(beside: Beside, one: Occurrence) -> int:
+    """Days by which another policy keeps an observance later than ours: that of its month."""
+    return next((d.days for d in beside.differences if (d.ours.year, d.ours.month) == (one.year, one.month)), 0)
 
 
 def _evening(almanac: Almanac, evening: Evening, language: Language) -> dict[str, object]:
