@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass, replace
 from typing import TypeVar
 
@@ -86,7 +86,11 @@ class _Reader:
                 self._adopted(adopted, index) for index, adopted in enumerate(policy.adopts)
             ))
         assert policy.clause is not None
-        return replace(base, eras=(Era(0, self._condition(policy.clause, ())),))
+        condition = self._condition(policy.clause, ())
+        return replace(
+            base, eras=(Era(0, condition),),
+            rests_on=tuple(criterion(name) for name in dict.fromkeys(_criteria_in(policy.clause))),
+        )
 
     def _pointing(self, path: tuple[str | int, ...], make: Callable[[], T]) -> T:
         """Run ``make``; a RequestError becomes a ContentError at the declaration's line."""
@@ -173,6 +177,22 @@ class _Reader:
             place, name=f"{abs(instead.latitude):g} {side} on the meridian of {place.name}",
             latitude_deg=instead.latitude,
         )
+
+
+def _criteria_in(part: object) -> Iterator[str]:
+    """The names of the criteria anywhere in a clause or a test."""
+    match part:
+        case declared.Criterion():
+            yield part.criterion
+        case declared.AllOf():
+            for test in part.all:
+                yield from _criteria_in(test)
+        case declared.AnyOf():
+            for test in part.any:
+                yield from _criteria_in(test)
+        case declared.Clause():
+            for below in (part.test, *(part.every or ()), *(part.either or ())):
+                yield from _criteria_in(below)
 
 
 def _rule(test: declared.Criterion | declared.AllOf | declared.AnyOf | declared.Threshold) -> compare.Rule:

@@ -18,6 +18,7 @@ from moonwrit.policy.months import FIXED, Basis, Evidence, Margin, Month, Note, 
 from moonwrit.policy.uncertainty import uncertainty_note
 from moonwrit.policy.walk import Era, Questions, Step, walk
 from moonwrit.policy.windows import windows
+from moonwrit.sky.criteria import Criterion
 
 
 @dataclass(frozen=True)
@@ -25,7 +26,8 @@ class Method:
     """A policy that can be asked for months. Exactly one of ``eras``, ``tabular``, ``table`` and ``adopts``.
 
     ``table`` maps the ordinal of a month to its first day. ``adopts`` names authorities of which the first to
-    begin a month decides. ``note`` says what is inferred, unverified or our own choice about it.
+    begin a month decides. ``note`` says what is inferred, unverified or our own choice about it; ``rests_on``
+    are the published criteria it uses.
     """
 
     name: str
@@ -38,6 +40,7 @@ class Method:
     adopts: tuple[Method, ...] = ()
     note: str = ""
     summary: str = ""
+    rests_on: tuple[Criterion, ...] = ()
 
     @property
     def in_words(self) -> str:

@@ -70,6 +70,7 @@ def _umm_al_qura() -> Method:
             Era(_year(1420), _at("moonset-after-sunset", MAKKAH)),
             Era(_year(1423), _at("moon-up-after-conjunction", MAKKAH)),
         ),
+        rests_on=(criterion("moonset-after-sunset"), criterion("moon-up-after-conjunction")),
         note="From the year 1451 on the table carried by common software no longer follows the published rule; "
         "Moonwrit follows the rule.",
     )
@@ -101,6 +102,7 @@ def _istanbul_1978() -> Method:
     return Method(
         "istanbul-1978", "Istanbul 1978", criterion("istanbul-5-8").source, "calculation",
         eras=(Era(0, Scoped(rule, Anywhere(Before(hour_ut=24.0)))),),
+        rests_on=(criterion("istanbul-5-8"),),
         note="Anywhere between 60 S and 60 N before 24:00 UT of the date; geocentric elongation, topocentric "
         "airless altitude, the frames that reproduce the dates Türkiye announced.",
     )
@@ -120,6 +122,7 @@ def _istanbul_2016() -> Method:
                 Scoped(rule, Within(american_mainland())),
             )),
         ))),),
+        rests_on=(criterion("istanbul-5-8"),),
         note="One zone for the whole Earth; the clause for the American mainland and New Zealand's dawn included. "
         "Searches stay between 60 S and 60 N.",
     )
@@ -135,7 +138,8 @@ def _here(
     return Method(
         name, title, test.source, "record" if test.grades else "calculation",
         eras=(Era(0, Scoped(test.rule(accept), place.scope())),),
-        note=("Unverified: " if test.unverified else "") + test.frame,
+        note="Unverified: its values could not be confirmed." if test.unverified else "",
+        rests_on=(test,),
     )
 
 
