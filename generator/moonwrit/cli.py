@@ -329,7 +329,8 @@ def begin(folder: Path) -> None:
     if folder.exists() and any(folder.iterdir() if folder.is_dir() else [folder]):
         raise RequestError(f"{folder} is there already and not empty", "name a new folder")
     try:
-        shutil.copytree(starter_folder(), folder, dirs_exist_ok=True)
+        # The demonstration's record and journal are its own: a new community begins without.
+        shutil.copytree(starter_folder(), folder, dirs_exist_ok=True, ignore=shutil.ignore_patterns("record"))
     except OSError as fault:
         raise RequestError(f"{folder} cannot be written ({fault.strerror})", "name another folder") from None
     click.echo(f"{folder} is yours to change: begin with {folder / 'site.yaml'}")
