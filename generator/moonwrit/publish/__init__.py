@@ -6,9 +6,9 @@ from collections.abc import Sequence
 from pathlib import Path
 
 from moonwrit.almanac import Almanac
-from moonwrit.journal import Ledger
+from moonwrit.journal import Ledger, site_marker
 from moonwrit.publish.basis import basis_feed, basis_schema
-from moonwrit.publish.icalendar import months_feed, observances_feed
+from moonwrit.publish.icalendar import evenings_feed, months_feed, observances_feed
 from moonwrit.publish.jscalendar import calendar_feed
 from moonwrit.publish.language import Language
 from moonwrit.publish.pages import pages
@@ -26,9 +26,10 @@ def site_files(almanacs: Sequence[Almanac], ledger: Ledger) -> dict[str, bytes]:
         for page in pages(almanac, ledger, language, base, almanacs):
             files[page.path] = renderer.render(page)
         feeds = {
-            "observances.ics": observances_feed(almanac, language),
-            "months.ics": months_feed(almanac, language),
-            "calendar.json": calendar_feed(almanac, language),
+            "observances.ics": observances_feed(almanac, ledger, language),
+            "months.ics": months_feed(almanac, ledger, language),
+            "evenings.ics": evenings_feed(almanac, ledger, language),
+            "calendar.json": calendar_feed(almanac, ledger, language),
             "basis.json": basis_feed(almanac),
         }
         folders = [f"feeds/{almanac.calendar_id}/"] if len(almanacs) > 1 else []
@@ -40,7 +41,7 @@ def site_files(almanacs: Sequence[Almanac], ledger: Ledger) -> dict[str, bytes]:
 def publish(almanacs: Sequence[Almanac], ledger: Ledger, output: Path) -> int:
     """Build the site and put it in place; returns the number of its files."""
     files = site_files(almanacs, ledger)
-    put_in_place(files, output)
+    put_in_place(files, output, site_marker(ledger, almanacs[0].site.address))
     return len(files)
 
 

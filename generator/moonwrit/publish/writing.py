@@ -18,8 +18,8 @@ _MARKER_TEXT = "This folder was built by moonwrit and is replaced whole at every
 _KEPT = ".gitkeep"
 
 
-def put_in_place(files: Mapping[str, bytes], output: Path) -> None:
-    """Make ``output`` hold exactly ``files`` (relative path with slashes -> content).
+def put_in_place(files: Mapping[str, bytes], output: Path, marker: str = _MARKER_TEXT) -> None:
+    """Make ``output`` hold exactly ``files`` (relative path with slashes -> content), and the text of the ``marker``.
 
     A ``.gitkeep`` that was there stays. Raises RequestError where the folder is not ours, where a path would leave
     it, or where it cannot be written; the old site is then untouched.
@@ -34,7 +34,7 @@ def put_in_place(files: Mapping[str, bytes], output: Path) -> None:
         _recover(output, old)
         _refuse_what_is_not_ours(output)
         shutil.rmtree(new, ignore_errors=True)
-        _write(files, new, keep=(output / _KEPT).exists())
+        _write(files, new, marker, keep=(output / _KEPT).exists())
         if output.exists():
             os.replace(output, old)
         os.replace(new, output)
@@ -69,9 +69,9 @@ def _refuse_what_is_not_ours(output: Path) -> None:
         )
 
 
-def _write(files: Mapping[str, bytes], new: Path, *, keep: bool) -> None:
+def _write(files: Mapping[str, bytes], new: Path, marker: str, *, keep: bool) -> None:
     new.mkdir(parents=True)
-    (new / MARKER).write_text(_MARKER_TEXT, encoding="utf-8")
+    (new / MARKER).write_text(marker, encoding="utf-8")
     if keep:
         (new / _KEPT).touch()
     for path in sorted(files):
