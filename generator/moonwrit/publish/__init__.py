@@ -11,6 +11,8 @@ from moonwrit.publish.basis import basis_feed, basis_schema
 from moonwrit.publish.icalendar import evenings_feed, months_feed, observances_feed
 from moonwrit.publish.jscalendar import calendar_feed
 from moonwrit.publish.language import Language
+from moonwrit.publish.messages import messages
+from moonwrit.publish.notices import atom_feed, json_feed
 from moonwrit.publish.pages import pages
 from moonwrit.publish.render import Renderer, stylesheet
 from moonwrit.publish.writing import put_in_place
@@ -31,7 +33,11 @@ def site_files(almanacs: Sequence[Almanac], ledger: Ledger) -> dict[str, bytes]:
             "evenings.ics": evenings_feed(almanac, ledger, language),
             "calendar.json": calendar_feed(almanac, ledger, language),
             "basis.json": basis_feed(almanac),
+            "notices.atom": atom_feed(almanac, ledger, language),
+            "notices.json": json_feed(almanac, ledger, language),
         }
+        if index == 0:
+            files.update(messages(almanac, renderer, language))
         folders = [f"feeds/{almanac.calendar_id}/"] if len(almanacs) > 1 else []
         for folder in (["feeds/"] if index == 0 else []) + folders:
             files.update({folder + name: content for name, content in feeds.items()})

@@ -40,7 +40,7 @@ class Renderer:
     def __init__(self, site: Site, language: Language) -> None:
         self.environment = Environment(
             loader=FileSystemLoader(themes_folder() / THEME),
-            autoescape=True,
+            autoescape=lambda name: name is None or not name.endswith(".txt"),
             undefined=StrictUndefined,
             trim_blocks=True,
             lstrip_blocks=True,
@@ -60,6 +60,10 @@ class Renderer:
             outcomes=labels.OUTCOMES,
             aids=labels.AIDS,
         )
+
+    def text(self, template: str, given: dict[str, Any]) -> bytes:
+        """A plain text, not escaped."""
+        return self.environment.get_template(template).render(**given).encode()
 
     def render(self, page: Page) -> bytes:
         template = self.environment.get_template(f"pages/{page.template}.html")

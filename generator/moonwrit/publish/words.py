@@ -5,9 +5,10 @@ Used by pages, feeds and ``moonwrit why``. Every sentence is looked up in the la
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from datetime import date
 
-from moonwrit.content.models import When
+from moonwrit.content.models import Observance, When, in_language
 from moonwrit.observances import Occurrence
 from moonwrit.policy.months import Closeness, Finding, Margin, Month, Standing
 from moonwrit.publish import labels
@@ -317,3 +318,19 @@ def rule(when: When, language: Language = ENGLISH) -> str:
 
 
 _WEEKDAYS = ("monday", "tuesday", "wednesday", "thursday", "friday", "saturday", "sunday")
+
+
+def published_name(key: str, observances: Mapping[str, Observance], site_language: str, language: Language) -> str:
+    """A key of the journal in words: Ramadan 1447; Ashura 1448; White days 1448, 3."""
+    kind, _dash, rest = key.partition("-")
+    if kind == "month" and rest[:1].isdigit():
+        year, month = rest.split("-")
+        return title_of(int(year), int(month), language)
+    for name in sorted(observances, key=len, reverse=True):
+        if key.startswith(f"{name}-"):
+            year, *others = key.removeprefix(f"{name}-").split("-")
+            shown = in_language(observances[name].name, language.code, site_language)
+            if others and observances[name].when.month == "every":
+                return f"{shown}, {title_of(int(year), int(others[0]), language)}"
+            return " ".join([shown, year, *others])
+    return key
