@@ -17,7 +17,7 @@ from moonwrit.sky.horizon import EARTH_RADIUS_KM, MOON_RADIUS_KM
 # Nutation IAU 2000B stays within 1 mas of 2000A in each angle by its authors' word for 1995-2050; measured over
 # 1899-2053 the two together come to 2.3 mas. Interpolation adds 0.1 mas or less.
 ANGLE_ARCSEC = 0.003
-DISTANCE_KM = 0.001
+DISTANCE_KM = 0.0005
 # Greenwich apparent sidereal time is computed from UT1 kept as one double: 0.04 ms, 0.6 mas, at worst.
 TURN_ARCSEC = 0.005
 
