@@ -46,8 +46,8 @@ class LongRun:
 def long_run(ours: Method, theirs: Method, first_year: int, last_year: int) -> LongRun | None:
     """The agreement of two methods over whole Hijri years; None where one of them cannot answer for all."""
     try:
-        pairs = zip(ours.months(first_year, last_year), theirs.months(first_year, last_year), strict=True)
-        same = [our.starts == their.starts for our, their in pairs]
+        pairs = zip(ours.starts(first_year, last_year), theirs.starts(first_year, last_year), strict=True)
+        same = [our == their for our, their in pairs]
     except RequestError:
         return None
     return LongRun(first_year, last_year, len(same), sum(same))

@@ -75,6 +75,13 @@ class Method:
             months = self._adopted(first_year, last_year)
         return _overridden(months, decisions)
 
+    def starts(self, first_year: int, last_year: int) -> tuple[date, ...]:
+        """The first days of the months of those years, without decisions and without evidence."""
+        if not self.eras:
+            return tuple(month.starts for month in self.months(first_year, last_year))
+        _, steps = walk(self.eras, (first_year - 1) * 12, last_year * 12 - 1)
+        return tuple(date.fromordinal(step.start) for step in steps[-12 * (last_year - first_year + 1) - 1 : -1])
+
     @property
     def standing(self) -> Standing:
         return "settled" if self.decided_by == "calculation" else "expected"

@@ -7,7 +7,7 @@ whatever the sky does, unless the community has recorded so.
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from functools import cached_property
 from types import MappingProxyType
@@ -62,7 +62,7 @@ class Questions:
     @cached_property
     def answers(self) -> Flags:
         """[lunation, evening]"""
-        return self._met(np.arange(len(self.moons)), self.days)
+        return self.asked(np.arange(len(self.moons)), self.days, lambda condition: condition)
 
     def condition(self, ordinal: int) -> Condition:
         return [era.condition for era in self.eras if era.first <= ordinal][-1]
@@ -71,7 +71,7 @@ class Questions:
         column = day - int(self.days[row, 0])
         if 0 <= column < _EVENINGS:
             return bool(self.answers[row, column])
-        return bool(self._met(np.array([row]), np.array([[day]]))[0, 0])
+        return bool(self.asked(np.array([row]), np.array([[day]]), lambda condition: condition)[0, 0])
 
     def evenings(self, rows: Integers, days: Integers) -> Evenings:
         """Evenings ``days`` [row, evening] of the lunations ``rows``; a row whose dates lie outside the
@@ -85,14 +85,15 @@ class Questions:
             windows = windows.replaced(away, moons.ephemeris.windows(middle, windows.half_days))
         return Evenings(moons.ephemeris, windows, moons.conjunction_tt[rows], days)
 
-    def _met(self, rows: Integers, days: Integers) -> Flags:
+    def asked(self, rows: Integers, days: Integers, of: Callable[[Condition], Condition]) -> Flags:
+        """Whether ``of`` the condition of each row's month is met on ``days`` [row, evening]."""
         answers = np.zeros(days.shape, dtype=bool)
         ordinals = self.moons.ordinal[rows]
         for index, era in enumerate(self.eras):
             until = self.eras[index + 1].first if index + 1 < len(self.eras) else np.inf
             mine = np.flatnonzero((ordinals >= era.first) & (ordinals < until))
             if len(mine):
-                answers[mine] = era.condition.met(self.evenings(rows[mine], days[mine]))
+                answers[mine] = of(era.condition).met(self.evenings(rows[mine], days[mine]))
         return answers
 
 

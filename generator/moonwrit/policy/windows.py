@@ -22,29 +22,28 @@ def windows(questions: Questions, steps: list[Step], decided: Container[int]) ->
     No month has fewer than 29 or more than 30 days; none begins before the evening that follows its
     conjunction in the policy's scope, nor, for planning, more than two evenings after that one.
     """
+    first_eves = _first_evenings(questions, steps)
     earliest = latest = steps[0].start
     out = [(date.fromordinal(earliest), date.fromordinal(latest))]
-    for step in steps[1:]:
+    for step, first_eve in zip(steps[1:], first_eves[1:], strict=True):
         if step.ordinal in decided:
             earliest = latest = step.start
-            out.append((date.fromordinal(earliest), date.fromordinal(latest)))
-            continue
-        row = step.ordinal - int(questions.moons.ordinal[0])
-        first_eve = _first_evening(questions, row, step)
-        earliest = max(earliest + 29, first_eve + 1)
-        latest = max(earliest, min(latest + 30, first_eve + LATEST_EVENING + 1))
-        # What the policy itself expects is always possible.
-        earliest, latest = min(earliest, step.start), max(latest, step.start)
+        else:
+            earliest = max(earliest + 29, first_eve + 1)
+            latest = max(earliest, min(latest + 30, first_eve + LATEST_EVENING + 1))
+            # What the policy itself expects is always possible.
+            earliest, latest = min(earliest, step.start), max(latest, step.start)
         out.append((date.fromordinal(earliest), date.fromordinal(latest)))
     return out
 
 
-def _first_evening(questions: Questions, row: int, step: Step) -> int:
-    """The first evening after the conjunction in the scope of the policy."""
-    after = _with_age_alone(questions.condition(step.ordinal))
-    days = questions.days[row][None, :]
-    met = after.met(questions.evenings(np.array([row]), days))[0]
-    return int(days[0, int(np.argmax(met))]) if met.any() else int(days[0, -1])
+def _first_evenings(questions: Questions, steps: list[Step]) -> list[int]:
+    """For each step, the first evening after the conjunction in the scope of the policy."""
+    rows = np.array([step.ordinal for step in steps]) - int(questions.moons.ordinal[0])
+    days = questions.days[rows]
+    after = questions.asked(rows, days, _with_age_alone)
+    column = np.where(after.any(axis=1), after.argmax(axis=1), days.shape[1] - 1)
+    return [int(day) for day in days[np.arange(len(rows)), column]]
 
 
 def _with_age_alone(condition: Condition) -> Condition:
