@@ -12,9 +12,10 @@ from moonwrit.calendars import (
     julian_from_date,
     rumi_from_date,
 )
+from moonwrit.content.models import OtherCalendar
 from moonwrit.errors import RequestError
 
-TITLES: Mapping[str, str] = {
+TITLES: Mapping[OtherCalendar, str] = {
     "solar-hijri": "Solar Hijri",
     "solar-hijri-33": "Solar Hijri (33-year approximation)",
     "rumi": "Rumi",
@@ -30,7 +31,7 @@ def _astronomical() -> SolarHijri:
     return SolarHijri.from_equinoxes(march_equinox)
 
 
-def in_calendar(day: date, calendar: str) -> str | None:
+def in_calendar(day: date, calendar: OtherCalendar) -> str | None:
     """``day`` in another calendar as "year-month-day"; None where that calendar did not run.
 
     The solar Hijri calendar is the astronomical one (noon of 52.5 E) inside the ephemeris.
@@ -48,8 +49,6 @@ def in_calendar(day: date, calendar: str) -> str | None:
                 if rumi is None:
                     return None
                 year, month, dom = rumi
-            case _:
-                raise KeyError(calendar)
     except RequestError:
         return None
     return f"{year}-{month:02d}-{dom:02d}"

@@ -283,6 +283,9 @@ class Calendar(_Model):
     region: Identifier
 
 
+OtherCalendar = Literal["solar-hijri", "solar-hijri-33", "rumi", "julian"]
+
+
 class Site(_Model):
     """The community and its site."""
 
@@ -302,6 +305,9 @@ class Site(_Model):
     ]
     authority: Words
     contact: Words | None = None
+    also: Annotated[
+        tuple[OtherCalendar, ...], Field(description="other calendars whose dates stand beside the lunar ones")
+    ] = ()
     calendars: Annotated[dict[Identifier, Calendar], Field(min_length=1)]
 
 

@@ -16,6 +16,7 @@ from icalendar import Calendar, Event, vDDDTypes, vDuration, vText, vUri
 from moonwrit import __version__
 from moonwrit.almanac import Almanac, Evening
 from moonwrit.calendars import month_slug
+from moonwrit.concordance import TITLES, in_calendar
 from moonwrit.content.models import in_language
 from moonwrit.journal import Entry, Ledger, month_key
 from moonwrit.policy import Month
@@ -105,6 +106,15 @@ def was_sentence(entry: Entry, language: Language) -> list[str]:
     }]
 
 
+def _also(almanac: Almanac, day: date, language: Language) -> list[str]:
+    """The first day in the other calendars that the site keeps beside its own."""
+    found = [
+        f"{language.gettext(TITLES[calendar])} {other}" for calendar in almanac.site.also
+        if (other := in_calendar(day, calendar)) is not None
+    ]
+    return [language.listing(found) + "."] if found else []
+
+
 def _reasons(month: Month, language: Language) -> list[str]:
     return [
         words.basis_sentence(month, language), words.margin_sentence(month.margin, language),
@@ -118,7 +128,8 @@ def _all_day(
 ) -> Event:
     if entry.was is not None and entry.standing != "expected":
         title = language.gettext("%(title)s (moved)") % {"title": title}
-    event = _event(almanac, language, entry.key, entry, title, [*was_sentence(entry, language), *paragraphs], path)
+    paragraphs = [*was_sentence(entry, language), *paragraphs, *_also(almanac, entry.starts, language)]
+    event = _event(almanac, language, entry.key, entry, title, paragraphs, path)
     _span(event, entry.starts, entry.starts if one_day else entry.ends)
     event.add("status", "TENTATIVE" if entry.standing == "expected" else "CONFIRMED")
     if tags := list(tags):

@@ -30,6 +30,7 @@ class Cell:
     on: date
     occurrences: tuple[Occurrence, ...]
     today: bool
+    also: tuple[str | None, ...]
 
 
 def pages(
@@ -139,7 +140,7 @@ def _month(almanac: Almanac, ledger: Ledger, index: int) -> dict[str, object]:
         "cells": _cells(almanac, month),
         "superseded": almanac.superseded.get(month.ordinal, ()),
         "noted": _noted(almanac, ledger, month_key(month.year, month.month)),
-        "beside": [(TITLES[name], in_calendar(month.starts, name)) for name in ("solar-hijri", "rumi", "julian")],
+        "also": [TITLES[calendar] for calendar in almanac.site.also],
     }
 
 
@@ -150,7 +151,10 @@ def _cells(almanac: Almanac, month: Month) -> list[Cell]:
     def on(day: date) -> tuple[Occurrence, ...]:
         return tuple(one for one in near if one.starts <= day <= one.ends)
     return [
-        Cell(number, day, on(day), day == almanac.as_of)
+        Cell(
+            number, day, on(day), day == almanac.as_of,
+            tuple(in_calendar(day, calendar) for calendar in almanac.site.also),
+        )
         for number, day in enumerate(days, 1)
     ]
 
