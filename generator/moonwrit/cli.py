@@ -23,6 +23,7 @@ if TYPE_CHECKING:
     from zoneinfo import ZoneInfo
 
     from moonwrit.content import Content
+    from moonwrit.content.models import OtherCalendar
     from moonwrit.content.record import Decision, Report
     from moonwrit.policy import Method, Month, NamedPlace
 
@@ -131,7 +132,7 @@ def check(folder: Path) -> None:
               help=f"The first days in another calendar too: {', '.join(sorted(TITLES))}; may be repeated.")
 def months(
     folder: Path, policy: str | None, places: tuple[str, ...], first: int | None, last: int | None, as_json: bool,
-    calendars: tuple[str, ...],
+    calendars: tuple[OtherCalendar, ...],
 ) -> None:
     """Month starts as a table."""
     content = _content_if_there(folder, policy)

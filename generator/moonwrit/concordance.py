@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from datetime import date
 from functools import cache
+from typing import TYPE_CHECKING
 
 from moonwrit.calendars import (
     THIRTY_THREE_YEAR,
@@ -12,8 +13,10 @@ from moonwrit.calendars import (
     julian_from_date,
     rumi_from_date,
 )
-from moonwrit.content.models import OtherCalendar
 from moonwrit.errors import RequestError
+
+if TYPE_CHECKING:
+    from moonwrit.content.models import OtherCalendar
 
 TITLES: Mapping[OtherCalendar, str] = {
     "solar-hijri": "Solar Hijri",
