@@ -82,3 +82,34 @@ def test_what_is_refused(tmp_path: Path, value: Any, said: str) -> None:
     with pytest.raises(ContentError) as caught:
         outline(tmp_path, value)
     assert str(caught.value) == f"{tmp_path}/bay.geojson{said}"
+
+
+@pytest.mark.parametrize(
+    ("ring", "what"),
+    [
+        # A bow tie: its two long sides cross in the middle.
+        ([[0, 0], [10, 10], [10, 0], [0, 10], [0, 0]], "crosses itself near"),
+        # A spike that comes back onto another side.
+        ([[0, 0], [10, 0], [10, 10], [5, -1], [0, 10], [0, 0]], "crosses itself near"),
+        # Fiji drawn the short way round on the map, the long way round in numbers.
+        ([[177, -19], [-178, -19], [-178, -16], [177, -16], [177, -19]], "crosses the antimeridian"),
+    ],
+)
+def test_a_ring_that_is_no_outline_is_refused(tmp_path: Path, ring: list[list[float]], what: str) -> None:
+    file = tmp_path / "outline.geojson"
+    file.write_text(json.dumps({"type": "Polygon", "coordinates": [ring]}), encoding="utf-8")
+    with pytest.raises(ContentError, match=what):
+        read_outline(file)
+
+
+def test_a_long_coast_is_taken(tmp_path: Path) -> None:
+    """Thousands of sides that only meet at their ends: a star-shaped coast, checked in reasonable time."""
+    import math
+
+    points = [
+        [(20 + 5 * (i % 2)) * math.cos(i * math.pi / 2000), (20 + 5 * (i % 2)) * math.sin(i * math.pi / 2000)]
+        for i in range(4000)
+    ]
+    file = tmp_path / "outline.geojson"
+    file.write_text(json.dumps({"type": "Polygon", "coordinates": [[*points, points[0]]]}), encoding="utf-8")
+    assert len(read_outline(file)[0][0]) == 4001

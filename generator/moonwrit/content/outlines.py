@@ -4,12 +4,14 @@ from __future__ import annotations
 
 import json
 from collections.abc import Iterator
+from itertools import pairwise
 from pathlib import Path
 from typing import Any
 
 from moonwrit.errors import ContentError
 
 MAX_BYTES = 8 * 1024 * 1024
+MAX_POINTS = 20_000
 
 _Position = tuple[float, float]
 Polygons = tuple[tuple[tuple[_Position, ...], ...], ...]
@@ -72,7 +74,52 @@ def _ring(file: Path, name: str, ring: Any) -> tuple[_Position, ...]:
     if len(ring) < 4 or ring[0] != ring[-1]:
         mend = "give at least three points, and the first again at the end"
         raise ContentError(file, 0, f"{name} is not closed", mend)
-    return tuple((float(point[0]), float(point[1])) for point in ring)
+    if len(ring) > MAX_POINTS:
+        raise ContentError(file, 0, f"{name} has more than {MAX_POINTS} points", "simplify it")
+    points = tuple((float(point[0]), float(point[1])) for point in ring)
+    if any(abs(one[0] - other[0]) > 180 for one, other in pairwise(points)):
+        mend = "cut the polygon in two at 180 degrees (RFC 7946, 3.1.9)"
+        raise ContentError(file, 0, f"{name} crosses the antimeridian", mend)
+    if (where := _crossing(points)) is not None:
+        what = f"{name} crosses itself near {where[0]:g}, {where[1]:g}"
+        raise ContentError(file, 0, what, "draw it so that its sides meet only at its points")
+    return points
+
+
+def _crossing(points: tuple[_Position, ...]) -> _Position | None:
+    """Where two sides of a ring cross or touch that are not neighbours; None where none do.
+
+    Sides are swept from west to east, so that only those that overlap in longitude are compared.
+    """
+    sides = sorted(
+        (min(one[0], other[0]), max(one[0], other[0]), number, one, other)
+        for number, (one, other) in enumerate(pairwise(points))
+        if one != other
+    )
+    last = len(points) - 2
+    near: list[tuple[float, int, _Position, _Position]] = []
+    for west, east, number, one, other in sides:
+        near = [side for side in near if side[0] >= west]
+        for _, earlier, start, end in near:
+            if abs(number - earlier) <= 1 or {number, earlier} == {0, last}:
+                continue
+            if _meet(one, other, start, end):
+                return one
+        near.append((east, number, one, other))
+    return None
+
+
+def _meet(a: _Position, b: _Position, c: _Position, d: _Position) -> bool:
+    """Do the sides ab and cd share a point?"""
+
+    def turn(p: _Position, q: _Position, r: _Position) -> float:
+        return (q[0] - p[0]) * (r[1] - p[1]) - (q[1] - p[1]) * (r[0] - p[0])
+
+    if max(a[1], b[1]) < min(c[1], d[1]) or max(c[1], d[1]) < min(a[1], b[1]):
+        return False
+    if max(a[0], b[0]) < min(c[0], d[0]) or max(c[0], d[0]) < min(a[0], b[0]):
+        return False
+    return turn(a, b, c) * turn(a, b, d) <= 0 and turn(c, d, a) * turn(c, d, b) <= 0
 
 
 def _on_earth(point: list[Any]) -> bool:
