@@ -96,7 +96,7 @@ def publish(folder: Path, output: Path, as_of: date | None) -> None:
     """Build the site and its feeds."""
     from moonwrit import journal
     from moonwrit.almanac import assemble
-    from moonwrit.publish import publish as put
+    from moonwrit.publish.site import publish as put
     from moonwrit.publish.writing import MARKER
 
     content = _content(folder)

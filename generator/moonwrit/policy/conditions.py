@@ -93,6 +93,7 @@ class _Part:
         self.scoped = scoped
         self.verdict: Verdict = scoped.scope.decide(scoped.rule, evenings)
         self.c: Circumstances = evenings.at(self._places())
+        self.described = described(self.c)
         shape = self.c.sunset_tt.shape
         self.values = {
             leaf: np.broadcast_to(leaf.quantity.of(self.c), shape) for leaf in scoped.rule.leaves()
@@ -156,7 +157,7 @@ def _row_evidence(
         Evidence(
             date.fromordinal(int(evenings.day[row, 0])), bool(share >= 0), part.place_name(row), conjunction,
             tuple(each.finding(one, row) for each in parts for one in each.scoped.rule.leaves()),
-            described(part.c, part.index(row)), tuple(notes),
+            part.described(part.index(row)), tuple(notes),
         ),
         margin_of(finding, share),
     )

@@ -45,7 +45,7 @@ def evening_at(on: date, places: Sequence[NamedPlace]) -> list[Row]:
             "elevation_m": place.elevation_m,
             "timezone": place.zone.key if place.zone else None,
             "conjunction_utc": iso(instant(sky, float(conjunction[0]))),
-            **described(c, (0, 0, index)),
+            **described(c)((0, 0, index)),
         }
         for index, place in enumerate(places)
     ]

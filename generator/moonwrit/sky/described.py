@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from datetime import UTC, datetime, timedelta
 
 import numpy as np
@@ -26,26 +27,19 @@ def iso(moment: datetime | None) -> str | None:
     return None if moment is None else moment.strftime("%Y-%m-%dT%H:%M:%SZ")
 
 
-def described(c: Circumstances, index: tuple[int, int, int]) -> dict[str, float | str | None]:
-    """The circumstances of [lunation, evening, place] ``index``; None where the event does not happen."""
+def described(c: Circumstances) -> Callable[[tuple[int, int, int]], dict[str, float | str | None]]:
+    """The circumstances of any [lunation, evening, place] of ``c``, all of them computed at once; None where
+    the event does not happen."""
+    shape = c.sunset_tt.shape
 
-    def number(values: Array, places: int) -> float | None:
-        value = float(np.broadcast_to(values, c.sunset_tt.shape)[index])
-        return round(value, places) + 0.0 if np.isfinite(value) else None
-
-    def moment(tt: Array) -> str | None:
-        return iso(instant(c.sky, float(tt[index])))
+    def number(values: Array, places: int) -> tuple[Array, int]:
+        return np.broadcast_to(values, shape), places
 
     sunset, best = c.sunset, c.best
     q, v = CRITERIA["yallop-1997"].quantity, CRITERIA["odeh-2004"].quantity
     assert q is not None
     assert v is not None
-    return {
-        "sunset_utc": moment(c.sunset_tt),
-        "sun": _STATES[Crossing(int(c.sunset_state[index]))],
-        "moonset_utc": moment(c.moonset_tt),
-        "moon": _STATES[Crossing(int(c.moonset_state[index]))],
-        "best_time_utc": moment(c.best_tt),
+    numbers = {
         "lag_min": number(c.lag_min, 2),
         "age_h": number(c.age_h, 3),
         "moon_altitude_topocentric_deg": number(sunset.moon_altitude_topo_deg, 4),
@@ -70,3 +64,21 @@ def described(c: Circumstances, index: tuple[int, int, int]) -> dict[str, float 
         "yallop_q": number(q.of(c), 4),
         "odeh_v": number(v.of(c), 4),
     }
+
+    def at(index: tuple[int, int, int]) -> dict[str, float | str | None]:
+        def moment(tt: Array) -> str | None:
+            return iso(instant(c.sky, float(tt[index])))
+
+        values = ((name, float(column[index]), places) for name, (column, places) in numbers.items())
+        return {
+            "sunset_utc": moment(c.sunset_tt),
+            "sun": _STATES[Crossing(int(c.sunset_state[index]))],
+            "moonset_utc": moment(c.moonset_tt),
+            "moon": _STATES[Crossing(int(c.moonset_state[index]))],
+            "best_time_utc": moment(c.best_tt),
+            **{
+                name: round(value, places) + 0.0 if np.isfinite(value) else None for name, value, places in values
+            },
+        }
+
+    return at
