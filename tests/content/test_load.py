@@ -13,7 +13,7 @@ import jsonschema
 import pytest
 
 from moonwrit.content import Content, load, schemas, yaml
-from moonwrit.content.load import SHAPES
+from moonwrit.content.load import RECORD, SHAPES
 from moonwrit.errors import ContentError
 
 EXAMPLE = Path(__file__).resolve().parents[2] / "content"
@@ -26,7 +26,7 @@ address: https://example.org/
 years:
   from: 1447
   to: 1448
-revised: 2026-12-01T09:00:00+11:00
+contact: us@example.org
 authority: The council
 calendars:
   main:
@@ -71,6 +71,13 @@ fast:
     day: 1
     run: month
 """,
+    "record/decisions.yaml": """\
+- month: 1448-07
+  starts: 2026-12-10
+  basis: sighted
+  by: The committee
+  at: 2026-12-01T09:00:00+11:00
+""",
 }
 PUBLISHED = frozenset({"umm-al-qura", "tabular-16-civil"})
 
@@ -86,6 +93,7 @@ def write(tmp_path: Path) -> Write:
             if name == file:
                 assert text.count(old) == 1, f"{old!r} stands {text.count(old)} times in {name}"
                 text = text.replace(old, new)
+            (tmp_path / name).parent.mkdir(exist_ok=True)
             (tmp_path / name).write_text(text, encoding="utf-8")
         return tmp_path
 
@@ -109,7 +117,7 @@ def test_values_are_typed_and_in_the_order_written(write: Write) -> None:
     assert content.places["north"].elevation == 0.0
     assert content.policies["seen"].adopted == date(2025, 6, 1)
     melbourne = timezone(timedelta(hours=11))
-    assert content.site.revised == datetime(2026, 12, 1, 9, tzinfo=melbourne)
+    assert content.decisions[0].at == datetime(2026, 12, 1, 9, tzinfo=melbourne)
     assert content.site.years.first == 1447
     assert content.observances["fast"].when.run == "month"
 
@@ -267,23 +275,23 @@ FAULTS = [
         "site.yaml:3: years is 1447, which is not a mapping; write its keys and values, indented",
     ),
     (
-        "site.yaml", "2026-12-01T09:00:00+11:00", "2026-02-30T09:00:00+11:00",
-        'site.yaml:6: revised: "2026-02-30T09:00:00+11:00" is not a date and time '
+        "record/decisions.yaml", "2026-12-01T09:00:00+11:00", "2026-02-30T09:00:00+11:00",
+        'record/decisions.yaml:5: at: "2026-02-30T09:00:00+11:00" is not a date and time '
         "(day is out of range for month); write for instance 2026-12-01T09:00:00+11:00",
     ),
     (
-        "site.yaml", "2026-12-01T09:00:00+11:00", '"1796083200"',
-        'site.yaml:6: revised: "1796083200" is not a date and time; '
+        "record/decisions.yaml", "2026-12-01T09:00:00+11:00", '"1796083200"',
+        'record/decisions.yaml:5: at: "1796083200" is not a date and time; '
         "write for instance 2026-12-01T09:00:00+11:00",
     ),
     (
-        "site.yaml", "2026-12-01T09:00:00+11:00", "20261201",
-        "site.yaml:6: revised is 20261201, which is not a date and time; "
-        "write when the content was last changed, for instance 2026-12-01T09:00:00+11:00",
+        "record/decisions.yaml", "2026-12-01T09:00:00+11:00", "20261201",
+        "record/decisions.yaml:5: at is 20261201, which is not a date and time; "
+        "write a date and time such as 2026-12-01T09:00:00+11:00",
     ),
     (
-        "site.yaml", "T09:00:00+11:00", "",
-        "site.yaml:6: revised: 2026-12-01T00:00:00 has no time zone; write it as 2026-12-01T09:00:00+11:00",
+        "record/decisions.yaml", "T09:00:00+11:00", "",
+        "record/decisions.yaml:5: at: 2026-12-01T00:00:00 has no time zone; write it as 2026-12-01T09:00:00+11:00",
     ),
     (
         "site.yaml", "  main:\n    name: Calendar\n    policy: seen\n    region: all\n", "  {}\n",
@@ -510,8 +518,9 @@ def test_the_example_is_whole() -> None:
 
 
 def test_the_schemas_are_schemas_and_the_example_keeps_them() -> None:
-    assert [*schemas()] == [*SHAPES] == [*FILES]
-    for file, schema in schemas().items():
+    assert [*schemas()] == [*SHAPES, *RECORD]
+    for file in FILES:
+        schema = schemas()[file]
         assert schema["$schema"] == "https://json-schema.org/draft/2020-12/schema"
         jsonschema.Draft202012Validator.check_schema(schema)
         validator = jsonschema.Draft202012Validator(schema)

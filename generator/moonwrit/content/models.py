@@ -299,10 +299,6 @@ class Site(_Model):
     ]
     language: Language = "en"
     years: Years
-    revised: Annotated[
-        Moment,
-        Field(description="when the content was last changed, for instance 2026-12-01T09:00:00+11:00"),
-    ]
     authority: Words
     contact: Words | None = None
     also: Annotated[

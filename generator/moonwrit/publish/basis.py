@@ -88,7 +88,6 @@ def basis_feed(almanac: Almanac) -> bytes:
         "calendar": almanac.calendar_id,
         "site": almanac.site.address,
         "policy": {"name": method.name, "title": method.title, "source": method.source, "note": method.note},
-        "revised": almanac.site.revised.isoformat(),
         "months": [month_json(month) for month in almanac.months],
     })
 
@@ -161,7 +160,6 @@ def basis_schema() -> bytes:
             "calendar": text,
             "site": text,
             "policy": policy,
-            "revised": {"type": "string", "format": "date-time"},
             "months": {"type": "array", "items": month},
         }, "Keys may be added; none is given another meaning without a new version."),
     })
