@@ -196,6 +196,7 @@ def _evening(almanac: Almanac, evening: Evening, language: Language) -> dict[str
         ],
         "before": almanac.months[index - 1] if index else None,
         "coming": evening.on >= almanac.as_of,
+        "elsewhere": [(other.beside.method.title, other.beside.months[index].starts) for other in almanac.others],
     }
 
 
