@@ -40,7 +40,8 @@ class Grade:
 
 @dataclass(frozen=True, slots=True)
 class Criterion:
-    """A published test. Either ``quantity`` with ``grades`` (best first), or a fixed ``rule``."""
+    """A published test. Either ``quantity`` with ``grades`` (best first), or a fixed rule; ``formula`` is the test as
+    a reader would write it down."""
 
     name: str
     title: str
@@ -52,6 +53,7 @@ class Criterion:
     accepted: tuple[str, ...] = ()
     fixed: Rule | None = None
     unverified: bool = False
+    formula: str = ""
 
     def rule(self, accept: Sequence[str] | None = None) -> Rule:
         """The rule that accepts the grades named (default: those for the naked eye).
@@ -196,6 +198,8 @@ CRITERIA: dict[str, Criterion] = {c.name: c for c in (
             Grade("E", -0.293, "not visible even with a telescope"),
         ),
         ("A", "B"),
+        formula="q = (ARCV − (11.8371 − 6.3226 W′ + 0.7319 W′² − 0.1018 W′³)) / 10, W′ = SD′ (1 − cos "
+        "ARCL) in arc minutes, SD′ = 0.27245 π (1 + sin h sin π)",
     ),
     Criterion(
         "odeh-2004", "Odeh 2004",
@@ -209,6 +213,7 @@ CRITERIA: dict[str, Criterion] = {c.name: c for c in (
             Grade("C", -0.96, "visible with optical aid only"),
         ),
         ("A", "B"),
+        formula="V = ARCV − (7.1651 − 6.3226 W + 0.7319 W² − 0.1018 W³), W in arc minutes",
     ),
     Criterion(
         "fotheringham-1910", "Fotheringham 1910",
@@ -217,6 +222,7 @@ CRITERIA: dict[str, Criterion] = {c.name: c for c in (
         fixed=Comparison(
             Quantity("arc of vision above Fotheringham's curve", "geocentric, airless, at sunset", "deg", 10.0,
                      _fotheringham), ">=", 0.0),
+        formula="ARCV at least 12.0, 11.9, 11.4, 11.0, 10.0, 7.7 degrees at DAZ 0, 5, 10, 15, 20, 23",
     ),
     Criterion(
         "maunder-1911", "Maunder 1911",
@@ -225,6 +231,7 @@ CRITERIA: dict[str, Criterion] = {c.name: c for c in (
         fixed=Comparison(
             Quantity("arc of vision above Maunder's curve", "geocentric, airless, at sunset", "deg", 10.0,
                      lambda c: c.sunset.arcv_geo_deg - maunder_limit_deg(c.sunset.daz_geo_deg)), ">=", 0.0),
+        formula="ARCV at least 11 − |DAZ|/20 − (DAZ/10)²",
     ),
     Criterion(
         "schoch-1930", "Schoch 1930 (Indian)",
@@ -233,6 +240,7 @@ CRITERIA: dict[str, Criterion] = {c.name: c for c in (
         fixed=Comparison(
             Quantity("arc of vision above Schoch's curve", "geocentric, airless, at sunset", "deg", 10.0,
                      lambda c: c.sunset.arcv_geo_deg - schoch_limit_deg(c.sunset.daz_geo_deg)), ">=", 0.0),
+        formula="ARCV at least 10.3743 − 0.0137 |DAZ| − 0.0097 DAZ²",
     ),
     Criterion(
         "bruin-1977", "Bruin 1977",
@@ -241,18 +249,21 @@ CRITERIA: dict[str, Criterion] = {c.name: c for c in (
         fixed=Comparison(
             Quantity("arc of vision above Bruin's curve", "geocentric, airless, at best time", "deg", 10.0,
                      _bruin), ">=", 0.0),
+        formula="ARCV at least 12.4023 − 9.4878 W + 3.9512 W² − 0.5632 W³, W in arc minutes",
     ),
     Criterion(
         "saao-2001-probable", "SAAO, probable (Caldwell & Laney 2001)",
         "J. A. R. Caldwell and C. D. Laney, African Skies 5, 15 (2001); table from memory, not confirmed",
         "apparent altitude of the Moon's lower limb against DAZ, topocentric, at sunset",
         fixed=Comparison(_saao(1), ">", 0.0), unverified=True,
+        formula="lower limb above 8.2, 7.8, 6.8, 5.7, 4.5 degrees at DAZ 0, 5, 10, 15, 20",
     ),
     Criterion(
         "saao-2001-possible", "SAAO, not impossible (Caldwell & Laney 2001)",
         "J. A. R. Caldwell and C. D. Laney, African Skies 5, 15 (2001); table from memory, not confirmed",
         "apparent altitude of the Moon's lower limb against DAZ, topocentric, at sunset",
         fixed=Comparison(_saao(2), ">=", 0.0), unverified=True,
+        formula="lower limb at least 6.3, 5.9, 4.9, 3.8, 2.6 degrees at DAZ 0, 5, 10, 15, 20",
     ),
     Criterion(
         "ilyas-1988", "Ilyas (altitude and azimuth)",
@@ -262,24 +273,28 @@ CRITERIA: dict[str, Criterion] = {c.name: c for c in (
             Quantity("altitude above the Ilyas curve", "geocentric, airless, at sunset", "deg", 10.0, _ilyas),
             ">=", 0.0),
         unverified=True,
+        formula="altitude at least 10.5 degrees at DAZ 0, falling in a straight line to 4 at DAZ 40",
     ),
     Criterion(
         "rgo-sheet-6", "RGO sheet 6",
         "Royal Greenwich Observatory, Astronomical Information Sheet 6; from memory",
         "elongation above 10 deg, and altitude above 5 deg when the Sun is 3 deg down; frame taken as topocentric",
         fixed=_sheet_six(),
+        formula="ARCL > 10 degrees and altitude > 5 degrees",
     ),
     Criterion(
         "babylonian", "Babylonian rule",
         "age above 24 h and lag above 48 min at sunset, as quoted in Odeh 2004, section 2.1",
         "geocentric age, lag on the standard horizon",
         fixed=All((Comparison(age(), ">", 24.0), Comparison(lag(), ">", 48.0))),
+        formula="age > 24 h and lag > 48 min",
     ),
     Criterion(
         "lag-48", "Lag of 48 minutes",
         "the lag alone (twelve degrees of the equator), as other authors state the Babylonian rule; from memory",
         "lag on the standard horizon",
         fixed=Comparison(lag(), ">", 48.0),
+        formula="lag > 48 min",
     ),
     Criterion(
         "shaukat", "Shaukat (Reingold & Dershowitz)",
@@ -287,6 +302,7 @@ CRITERIA: dict[str, Criterion] = {c.name: c for c in (
         "attributed to S. K. Shaukat",
         "geocentric elongation and altitude when the Sun is 4.5 deg down",
         fixed=_shaukat(),
+        formula="10.6 ≤ ARCL ≤ 90 degrees and altitude > 4.1 degrees",
     ),
     Criterion(
         "danjon-7", "Danjon limit of 7 degrees",
@@ -294,6 +310,7 @@ CRITERIA: dict[str, Criterion] = {c.name: c for c in (
         "find 5 to 7.5 degrees",
         "topocentric elongation at best time: a floor below which no crescent is seen, not a criterion of its own",
         fixed=Comparison(elongation("topocentric", "best-time"), ">=", 7.0),
+        formula="ARCL at least 7 degrees",
     ),
     Criterion(
         "mabims-1995", "MABIMS 1995 (2-3-8)",
@@ -304,6 +321,7 @@ CRITERIA: dict[str, Criterion] = {c.name: c for c in (
             Comparison(altitude("topocentric", refracted=True), ">=", 2.0),
             Any((Comparison(elongation("geocentric"), ">=", 3.0), Comparison(age(), ">=", 8.0))),
         )),
+        formula="altitude at least 2 degrees and (ARCL at least 3 degrees or age at least 8 h)",
     ),
     Criterion(
         "mabims-2021", "MABIMS 2021",
@@ -314,6 +332,7 @@ CRITERIA: dict[str, Criterion] = {c.name: c for c in (
             Comparison(altitude("topocentric", refracted=True), ">=", 3.0),
             Comparison(elongation("geocentric"), ">=", 6.4),
         )),
+        formula="altitude at least 3 degrees and ARCL at least 6.4 degrees",
     ),
     Criterion(
         "istanbul-5-8", "Altitude 5 and elongation 8 (Istanbul)",
@@ -323,6 +342,7 @@ CRITERIA: dict[str, Criterion] = {c.name: c for c in (
             Comparison(altitude("topocentric"), ">=", 5.0),
             Comparison(elongation("geocentric"), ">=", 8.0),
         )),
+        formula="altitude at least 5 degrees and ARCL at least 8 degrees",
     ),
     Criterion(
         "moon-up-after-conjunction", "Conjunction before sunset, Moon still up",
@@ -330,24 +350,28 @@ CRITERIA: dict[str, Criterion] = {c.name: c for c in (
         "authorities that use the rule was not found",
         "geocentric conjunction; moonset after sunset on the standard horizon",
         fixed=All((Comparison(age(), ">", 0.0), Comparison(lag(), ">", 0.0))),
+        formula="conjunction before sunset and moonset after sunset",
     ),
     Criterion(
         "conjunction-before-sunset", "Conjunction before sunset",
         "common practice, no source",
         "geocentric conjunction in apparent longitude",
         fixed=Comparison(age(), ">", 0.0),
+        formula="conjunction before sunset",
     ),
     Criterion(
         "moonset-after-sunset", "Moonset after sunset",
         "the Umm al-Qura rule of 1420-1422 AH: R. H. van Gent, The Islamic calendar, Utrecht University (web)",
         "lag on the standard horizon",
         fixed=Comparison(lag(), ">", 0.0),
+        formula="moonset after sunset",
     ),
     Criterion(
         "moonset-5-minutes", "Moonset five minutes after sunset",
         "common statement of the Egyptian practice, after conjunction; from memory, later values differ",
         "geocentric conjunction; lag on the standard horizon",
         fixed=All((Comparison(age(), ">", 0.0), Comparison(lag(), ">=", 5.0))),
+        formula="conjunction before sunset and moonset at least 5 min after it",
     ),
 )}
 
