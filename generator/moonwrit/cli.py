@@ -127,19 +127,19 @@ def check(folder: Path) -> None:
 
 
 @main.command()
-@_shared("content", "policy", "place", "years", "json")
+@_shared("content", "policy", "place", "years", "as_of", "json")
 @click.option("--also", "calendars", multiple=True, metavar="CALENDAR", type=click.Choice(sorted(TITLES)),
               help=f"The first days in another calendar too: {', '.join(sorted(TITLES))}; may be repeated.")
 def months(
-    folder: Path, policy: str | None, places: tuple[str, ...], first: int | None, last: int | None, as_json: bool,
-    calendars: tuple[OtherCalendar, ...],
+    folder: Path, policy: str | None, places: tuple[str, ...], first: int | None, last: int | None,
+    as_of: date | None, as_json: bool, calendars: tuple[OtherCalendar, ...],
 ) -> None:
     """Month starts as a table."""
     content = _content_if_there(folder, policy)
     method = _method(content, policy, places)
     years = _years(content, first, last)
     with _progress("Computing months"):
-        found = method.months(*years)
+        found = method.months(*years, _on_record(content, method, as_of))
     from moonwrit.publish.basis import month_json
 
     also = [{calendar: in_calendar(month.starts, calendar) for calendar in calendars} for month in found]
@@ -166,11 +166,16 @@ def months(
 
 
 @main.command()
-@click.argument("on", metavar="DATE", callback=_date)
-@_shared("content", "place", "json")
-def evening(on: date, folder: Path, places: tuple[str, ...], as_json: bool) -> None:
-    """Circumstances of the evening of a civil date at places."""
-    content = _content(folder) if not places or _is_folder(folder) else None
+@click.argument("on", metavar="[DATE]", callback=_date, required=False)
+@_shared("content", "place", "as_of", "json")
+def evening(
+    on: date | None, folder: Path, places: tuple[str, ...], as_of: date | None, as_json: bool
+) -> None:
+    """Circumstances of the evening of a civil date at places.
+
+    Without DATE, the next 29th evening of the community's calendar.
+    """
+    content = _content(folder) if on is None or not places or _is_folder(folder) else None
     from moonwrit.policy import named_place
     from moonwrit.policy.evening import evening_at
 
@@ -179,6 +184,9 @@ def evening(on: date, folder: Path, places: tuple[str, ...], as_json: bool) -> N
     else:
         assert content is not None
         chosen = [named_place(content, place_id) for place_id in content.places]
+    if on is None:
+        assert content is not None
+        on = _next_evening(content, as_of)
     rows = evening_at(on, chosen)
     if as_json:
         _print_json(rows)
@@ -194,8 +202,10 @@ def evening(on: date, folder: Path, places: tuple[str, ...], as_json: bool) -> N
 
 @main.command()
 @click.argument("what")
-@_shared("content", "policy", "place", "json")
-def why(what: str, folder: Path, policy: str | None, places: tuple[str, ...], as_json: bool) -> None:
+@_shared("content", "policy", "place", "as_of", "json")
+def why(
+    what: str, folder: Path, policy: str | None, places: tuple[str, ...], as_of: date | None, as_json: bool
+) -> None:
     """The basis of one date, in words.
 
     WHAT is a lunar month (1447-9), a civil date (2026-02-19), or an observance and its year
@@ -205,7 +215,8 @@ def why(what: str, folder: Path, policy: str | None, places: tuple[str, ...], as
     from moonwrit.publish.words import why_paragraphs
 
     content = _content_if_there(folder, policy)
-    month, about = _asked(what, _method(content, policy, places), content)
+    method = _method(content, policy, places)
+    month, about = _asked(what, method, content, _on_record(content, method, as_of))
     if as_json:
         _print_json(month_json(month))
         return
@@ -217,10 +228,10 @@ def why(what: str, folder: Path, policy: str | None, places: tuple[str, ...], as
 @_shared("content")
 @click.option("--policy", "policies", multiple=True, metavar="P",
               help="A policy to put beside the community's; may be repeated. Default: all others of the content.")
-@_shared("place", "years", "json")
+@_shared("place", "years", "as_of", "json")
 def differ(
     folder: Path, policies: tuple[str, ...], places: tuple[str, ...], first: int | None, last: int | None,
-    as_json: bool,
+    as_of: date | None, as_json: bool,
 ) -> None:
     """Policies side by side: month starts, and the computed reason for each difference."""
     from moonwrit.policy.differ import beside
@@ -234,7 +245,7 @@ def differ(
         raise RequestError("there is no other policy to put beside the community's", "name one with --policy")
     years = _years(content, first, last)
     with _progress("Computing policies"):
-        months = ours.months(*years)
+        months = ours.months(*years, _on_record(content, ours, as_of))
         found = [beside(other, months, ours) for other in others]
     if as_json:
         _print_json([beside_json(one) for one in found])
@@ -379,6 +390,16 @@ def _content(folder: Path) -> Content:
     return load(folder, published_names(), CRITERIA)
 
 
+def _next_evening(content: Content, as_of: date | None) -> date:
+    """The first 29th evening from today on, by the community's own policy and record."""
+    method, today = _method(content, None, ()), as_of or _today(content, _now())
+    years = content.site.years
+    for month in method.months(years.first, years.last, _on_record(content, method, as_of)):
+        if month.evidence.evening >= today:
+            return month.evidence.evening
+    raise RequestError("no 29th evening is left in the years of site.yaml", "give a DATE, or add years")
+
+
 def _is_folder(folder: Path) -> bool:
     return (folder / "site.yaml").exists()
 
@@ -412,7 +433,18 @@ def _place(content: Content | None, text: str) -> NamedPlace:
     return place_from_text(text, content.places if content else ())
 
 
-def _asked(what: str, method: Method, content: Content | None) -> tuple[Month, list[str]]:
+def _on_record(content: Content | None, method: Method, as_of: date | None) -> dict[int, Decision]:
+    """The decisions in force for a policy that one of the content's calendars follows; none for any other."""
+    from moonwrit.record import in_force
+
+    if content is None or method.name not in {calendar.policy for calendar in content.site.calendars.values()}:
+        return {}
+    return in_force(content.decisions, None if as_of is None else _end_of(as_of, content))
+
+
+def _asked(
+    what: str, method: Method, content: Content | None, decisions: dict[int, Decision]
+) -> tuple[Month, list[str]]:
     """The month on which the thing asked for rests, and a line that dates the thing itself."""
     from moonwrit.calendars import Tabular, month_name
 
@@ -420,7 +452,7 @@ def _asked(what: str, method: Method, content: Content | None) -> tuple[Month, l
         year, number = int(match[1]), int(match[2])
         if not 1 <= number <= 12:
             raise RequestError(f"there is no month {number}", "lunar months are 1 to 12")
-        return method.months(year, year)[number - 1], []
+        return method.months(year, year, decisions)[number - 1], []
     if re.fullmatch(r"\d{4}-\d{2}-\d{2}", what):
         try:
             day = date.fromisoformat(what)
@@ -428,7 +460,7 @@ def _asked(what: str, method: Method, content: Content | None) -> tuple[Month, l
             raise RequestError(f"{what} is not a date", "write year-month-day") from None
         near = Tabular().from_date(day)
         for year in (near.year, near.year + (1 if near.month > 6 else -1)):
-            for month in method.months(year, year):
+            for month in method.months(year, year, decisions):
                 if month.starts <= day <= month.ends:
                     lunar = f"{(day - month.starts).days + 1} {month_name(month.month)} {month.year}"
                     return month, [f"{day:%A %d %B %Y} is {lunar}."]
@@ -436,7 +468,7 @@ def _asked(what: str, method: Method, content: Content | None) -> tuple[Month, l
         from moonwrit.observances import occurrences
 
         year = int(match[2])
-        found = method.months(year, year)
+        found = method.months(year, year, decisions)
         dated = {one.key: one for one in occurrences(content.observances, found)}
         if what in dated:
             one = dated[what]
