@@ -1,14 +1,17 @@
 """Putting a built site in place: written aside, then swapped in by two renames.
 
 The folder is ours where it holds the marker. Nothing else is ever overwritten. At every moment either the old or
-the new site stands whole, in its place or beside it; the next run puts right what an interruption left.
+the new site stands whole, in its place or beside it; the next run puts right what an interruption left. Of two
+builds into one folder the second waits for the first.
 """
 
 from __future__ import annotations
 
 import os
 import shutil
-from collections.abc import Mapping
+import sys
+from collections.abc import Iterator, Mapping
+from contextlib import contextmanager, suppress
 from pathlib import Path, PurePosixPath
 
 from moonwrit.errors import RequestError
@@ -24,43 +27,66 @@ def put_in_place(files: Mapping[str, bytes], output: Path, marker: str = _MARKER
     A ``.gitkeep`` that was there stays. Raises RequestError where the folder is not ours, where a path would leave
     it, or where it cannot be written; the old site is then untouched.
     """
-    output = output.absolute()
-    new, old = (output.with_name(f".{output.name}.{word}") for word in ("new", "old"))
     for path in files:
         parts = PurePosixPath(path).parts
         if not parts or path.startswith("/") or ".." in parts or "\\" in path or "\0" in path:
             raise RequestError(f'the page "{path}" would lie outside the output folder', "give it another name")
+    output = Path(os.path.abspath(output))
     try:
-        _recover(output, old)
-        _refuse_what_is_not_ours(output)
-        shutil.rmtree(new, ignore_errors=True)
-        _write(files, new, marker, keep=(output / _KEPT).exists())
-        if output.exists():
-            os.replace(output, old)
-        os.replace(new, output)
-        shutil.rmtree(old, ignore_errors=True)
+        output.parent.mkdir(parents=True, exist_ok=True)
+        with _alone_in(output.parent):
+            _swap(files, output, marker)
     except OSError as fault:
-        _recover(output, old)
-        shutil.rmtree(new, ignore_errors=True)
         raise RequestError(
             f"{output} cannot be written ({fault.strerror or fault})",
             "free space, or name a folder that can be written and renamed with --output",
         ) from None
 
 
-def _recover(output: Path, old: Path) -> None:
-    """After an interruption between the two renames only the old site is left, aside: put it back."""
-    if old.exists():
+@contextmanager
+def _alone_in(folder: Path) -> Iterator[None]:
+    """Wait until no other build writes in ``folder``. The lock ends with the process, however that ends."""
+    if sys.platform == "win32":  # which cannot lock a folder
+        yield
+        return
+    import fcntl
+
+    opened = os.open(folder, os.O_RDONLY)
+    try:
+        with suppress(OSError):  # some network file systems have no locks
+            fcntl.flock(opened, fcntl.LOCK_EX)
+        yield
+    finally:
+        os.close(opened)
+
+
+def _swap(files: Mapping[str, bytes], output: Path, marker: str) -> None:
+    new, old = (output.parent / f".{output.name}.moonwrit-{word}" for word in ("new", "old"))
+    _settle(output, new, old)
+    _refuse_what_is_not_ours(output)
+    try:
+        _write(files, new, marker, keep=(output / _KEPT).exists())
         if output.exists():
-            shutil.rmtree(old, ignore_errors=True)
-        else:
-            os.replace(old, output)
+            os.replace(output, old)
+        os.replace(new, output)
+    finally:
+        _settle(output, new, old)
+
+
+def _settle(output: Path, new: Path, old: Path) -> None:
+    """Leave nothing aside. After an interruption between the two renames only the old site is left: put it back."""
+    if old.exists() and not output.exists():
+        os.replace(old, output)
+    for aside in (new, old):
+        shutil.rmtree(aside, ignore_errors=True)
 
 
 def _refuse_what_is_not_ours(output: Path) -> None:
+    if output.is_symlink():
+        raise RequestError(f"{output} is a link", "name the folder itself with --output")
     if not output.exists():
         return
-    if not output.is_dir() or output.is_symlink():
+    if not output.is_dir():
         raise RequestError(f"{output} is not a folder", "name another with --output")
     there = {entry.name for entry in output.iterdir()} - {_KEPT}
     if there and MARKER not in there:
@@ -70,7 +96,7 @@ def _refuse_what_is_not_ours(output: Path) -> None:
 
 
 def _write(files: Mapping[str, bytes], new: Path, marker: str, *, keep: bool) -> None:
-    new.mkdir(parents=True)
+    new.mkdir()
     (new / MARKER).write_text(marker, encoding="utf-8")
     if keep:
         (new / _KEPT).touch()
