@@ -2,7 +2,8 @@
 
 The package marks each date as confirmed or estimated; only confirmed ones are taken. Days in lieu, eves and the
 further days of a feast are made elsewhere in the package and do not come in: the calendar class gives the
-feast's own day. Only these two feasts are taken, because the package's dates of other days (the new year, the
+feast's own day. Some dates that it writes for one country look like such days all the same; the tests in
+tests/policy name them. Only these two feasts are taken, because the package's dates of other days (the new year, the
 Prophet's birthday) are those of the day off, which was sometimes moved: Indonesia, 10 to 11 August 2021.
 """
 
