@@ -109,7 +109,8 @@ def publish(folder: Path, output: Path, as_of: date | None) -> None:
         seen = [entry for entry in journal.read(folder) if until is None or entry.at <= until]
         ledger = journal.hold_against(seen, almanacs, content.decisions, content.amendments, until or now)
     with _progress("Writing the site"):
-        files = put(almanacs, ledger, output)
+        # A replay leaves nothing in the site for the journal to recover.
+        files = put(almanacs, ledger if as_of is None else replace(ledger, added=()), output)
     if as_of is None:
         journal.append(folder, ledger.added)
     click.echo(f"{files} files in {output}")

@@ -19,6 +19,7 @@ from typing import Literal
 from moonwrit.almanac import Almanac
 from moonwrit.content.record import Amendment, Decision
 from moonwrit.errors import ContentError, MoonwritError
+from moonwrit.policy import Month
 
 FILE = "record/journal.jsonl"
 _MARKER = "This folder was built by moonwrit and is replaced whole at every build."
@@ -119,7 +120,8 @@ def hold_against(
     """What the build changes of what was published.
 
     A change of a date is explained by a decision on that month or an earlier one, or by an amendment that covers it,
-    made after the date was published. Raises SilentChangeError, with the list, where one is not.
+    made after the date was published; and by the first decision on a month that was only expected so far, for it may
+    be written down late. Raises SilentChangeError, with the list, where a change is not explained.
     """
     last: dict[tuple[str, str], Entry] = {}
     for entry in entries:
@@ -127,14 +129,14 @@ def hold_against(
         if known is None or entry.seq >= known.seq:
             last[entry.calendar, entry.key] = entry
     stamp = now.astimezone(UTC).replace(microsecond=0)
-    reasons = _Reasons(tuple(decisions), tuple(amendments))
     added: list[Entry] = []
     silent: list[str] = []
     for almanac in almanacs:
+        reasons = _Reasons(tuple(decisions), tuple(amendments), _first_decided(almanac, last))
         seen = set()
-        for fresh, ordinal in _published_by(almanac, stamp):
+        for fresh, month in _published_by(almanac, stamp):
             seen.add(fresh.key)
-            _compare(last, fresh, ordinal, reasons, added, silent)
+            _compare(last, fresh, month, reasons, added, silent)
         years = almanac.site.years
         for gone in [e for (calendar, key), e in last.items() if calendar == almanac.calendar_id and key not in seen]:
             year = _year_of(gone.key)
@@ -196,10 +198,11 @@ def recover(folder: Path, marker: Path, address: str) -> None:
 class _Reasons:
     decisions: tuple[Decision, ...]
     amendments: tuple[Amendment, ...]
+    first_decided: tuple[Decision, ...]
 
     def for_change(self, key: str, ordinal: int, since: datetime) -> str | None:
         """Why a thing that hangs on the month ``ordinal`` may have changed since it was published."""
-        made = [d for d in self.decisions if d.ordinal <= ordinal and d.at > since]
+        made = [d for d in self.decisions if d.ordinal <= ordinal and (d.at > since or d in self.first_decided)]
         if made:
             latest = max(made, key=lambda decision: (decision.ordinal, decision.at))
             return f"decision of {latest.at.date().isoformat()} on month {latest.month} by {latest.by}"
@@ -209,19 +212,30 @@ class _Reasons:
         return None
 
 
-def _published_by(almanac: Almanac, stamp: datetime) -> Iterable[tuple[Entry, int]]:
-    """Every month and occurrence of a build as an entry, with the ordinal of the month it hangs on."""
+def _first_decided(almanac: Almanac, last: Mapping[tuple[str, str], Entry]) -> tuple[Decision, ...]:
+    """The decisions of this build on months that were only expected when they were last published."""
+    return tuple(
+        month.decision for month in almanac.months
+        if month.decision is not None
+        and (known := last.get((almanac.calendar_id, month_key(month.year, month.month)))) is not None
+        and known.standing == "expected"
+    )
+
+
+def _published_by(almanac: Almanac, stamp: datetime) -> Iterable[tuple[Entry, Month]]:
+    """Every month and occurrence of a build as an entry, with the month it hangs on."""
     for month in almanac.months:
         key = month_key(month.year, month.month)
-        yield Entry(almanac.calendar_id, key, month.starts, month.ends, month.standing, 0, stamp), month.ordinal
+        yield Entry(almanac.calendar_id, key, month.starts, month.ends, month.standing, 0, stamp), month
+    month_of = {(month.year, month.month): month for month in almanac.months}
     for one in almanac.occurrences:
         # Its last days hang on where the month ends, and so on the month after it.
-        ordinal = (one.year - 1) * 12 + one.month
-        yield Entry(almanac.calendar_id, one.key, one.starts, one.ends, one.standing, 0, stamp), ordinal
+        entry = Entry(almanac.calendar_id, one.key, one.starts, one.ends, one.standing, 0, stamp)
+        yield entry, month_of[one.year, one.month]
 
 
 def _compare(
-    last: dict[tuple[str, str], Entry], fresh: Entry, ordinal: int, reasons: _Reasons,
+    last: dict[tuple[str, str], Entry], fresh: Entry, month: Month, reasons: _Reasons,
     added: list[Entry], silent: list[str],
 ) -> None:
     """Add what changed of one thing to ``last`` and ``added``, or to ``silent`` where nothing explains it."""
@@ -243,9 +257,9 @@ def _compare(
             return
         entry = replace(fresh, standing=standing, seq=known.seq + 1)
     else:
-        because = reasons.for_change(fresh.key, ordinal, known.at)
+        because = reasons.for_change(fresh.key, month.ordinal, known.at)
         if because is None:
-            silent.append(_silent_line(known, fresh))
+            silent.append(_silent_line(known, fresh, month))
             return
         amended = known.standing in ("settled", "amended") and fresh.standing == "settled"
         entry = replace(
@@ -262,18 +276,28 @@ def _withdraw(
 ) -> None:
     because = reasons.for_change(gone.key, year * 12 - 1, gone.at)
     if because is None:
-        silent.append(f"{gone.key}: was {gone.starts} ({gone.standing}) -> would be withdrawn")
+        silent.append(
+            f"{gone.key}: was {gone.starts} ({gone.standing}) -> would be withdrawn, because the content no longer gives it"
+        )
         return
     entry = replace(gone, standing="withdrawn", seq=gone.seq + 1, at=stamp, was=None, because=because)
     last[gone.calendar, gone.key] = entry
     added.append(entry)
 
 
-def _silent_line(known: Entry, fresh: Entry) -> str:
+def _silent_line(known: Entry, fresh: Entry, month: Month) -> str:
     def days(entry: Entry) -> str:
-        return f"{entry.starts}" if entry.starts == entry.ends else f"{entry.starts} to {entry.ends}"
+        one = entry.starts == entry.ends or entry.key.startswith("month-")
+        return f"{entry.starts}" if one else f"{entry.starts} to {entry.ends}"
 
-    return f"{known.key}: was {days(known)} ({known.standing}) -> would be {days(fresh)} ({fresh.standing})"
+    margin = month.margin
+    because: str = month.basis
+    if margin.value is not None and margin.threshold is not None:
+        because += f", {margin.quantity} {margin.value:g} {margin.unit}".rstrip() + f" against {margin.threshold:g}"
+    return (
+        f"{known.key}: was {days(known)} ({known.standing}) -> would be {days(fresh)} ({fresh.standing}), because "
+        f"{month.year}-{month.month:02d} begins {month.starts}: {because}"
+    )
 
 
 def _year_of(key: str) -> int | None:

@@ -9,7 +9,6 @@ from __future__ import annotations
 from collections.abc import Iterable, Mapping
 from datetime import date, datetime, timedelta
 from urllib.parse import urlsplit
-from uuid import NAMESPACE_URL, uuid5
 
 from icalendar import Calendar, Event, vDDDTypes, vDuration, vText, vUri
 
@@ -226,7 +225,7 @@ def _feed(
     calendar.add("prodid", f"-//Moonwrit//Moonwrit {__version__}//EN")
     calendar.add("version", "2.0")
     calendar.add("calscale", "GREGORIAN")
-    calendar.add("uid", str(uuid5(NAMESPACE_URL, f"{address}#{almanac.calendar_id}")))
+    # No UID for the whole (RFC 7986, 5.3): subscribers that split a feed, such as vdirsyncer, give it to every event.
     calendar.add("name", vText(title, params={"LANGUAGE": language.code}))
     calendar.add("x-wr-calname", title)
     calendar.add("description", vText(

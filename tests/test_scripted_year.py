@@ -1,0 +1,218 @@
+"""A year as its public lives through it: expected dates, three decisions, and a subscriber's calendar after each.
+
+The subscriber is vdirsyncer, which fetches the feed over HTTP, and khal, which reads what it fetched. vdirsyncer puts
+hashes in place of the UIDs of a plain HTTP feed, so events are told apart by their titles and counted; that UIDs last
+is held against the feed itself.
+"""
+
+from __future__ import annotations
+
+import functools
+import http.server
+import json
+import os
+import shutil
+import subprocess
+import threading
+from collections import Counter
+from collections.abc import Iterator
+from dataclasses import dataclass
+from datetime import date, datetime
+from pathlib import Path
+from xml.etree import ElementTree as ET
+
+import pytest
+from click.testing import CliRunner
+
+from moonwrit.cli import main
+
+ROOT = Path(__file__).resolve().parent.parent
+
+
+class _Quiet(http.server.SimpleHTTPRequestHandler):
+    def log_message(self, format: str, *args: object) -> None:
+        pass
+
+
+@dataclass(frozen=True)
+class Community:
+    """An officer's folder, and the site that the public reads."""
+
+    content: Path
+    output: Path
+
+    def run(self, now: str, *words: str) -> str:
+        """A command at a moment; it must end well."""
+        at = str(int(datetime.fromisoformat(now).timestamp()))
+        done = CliRunner(env={"SOURCE_DATE_EPOCH": at}).invoke(main, [*words, "--content", str(self.content)])
+        assert done.exit_code == 0, done.output
+        return done.output
+
+    def publish(self, now: str) -> None:
+        self.run(now, "publish", "--output", str(self.output))
+
+    def decide(self, now: str, month: str, starts: str, basis: str) -> None:
+        self.run(now, "record", "decision", "--month", month, "--starts", starts, "--basis", basis, "--by", "Us")
+
+
+@pytest.fixture
+def community(tmp_path: Path) -> Community:
+    content = tmp_path / "content"
+    shutil.copytree(ROOT / "content", content, ignore=shutil.ignore_patterns("record"))
+    site = content / "site.yaml"
+    text = site.read_text(encoding="utf-8")
+    site.write_text(text.replace("years: {from: 1447, to: 1449}", "years: {from: 1448, to: 1448}"), encoding="utf-8")
+    return Community(content, tmp_path / "output")
+
+
+@dataclass(frozen=True)
+class Subscriber:
+    """vdirsyncer and khal, set up once for one feed."""
+
+    home: Path
+
+    def look(self) -> list[tuple[str, date]]:
+        """Fetch, and give what the calendar then shows: titles and first days."""
+        self._run("vdirsyncer", "-c", str(self.home / "vdirsyncer.conf"), "sync", "--force-delete")
+        listed = self._run(
+            "khal", "-c", str(self.home / "khal.conf"), "list", "--once", "--notstarted", "--day-format", "",
+            "--format", "{start-date}|{title}", "2026-06-01", "400d",
+        )
+        lines = [line.partition("|") for line in listed.splitlines() if line]
+        return [(title.strip(), date.fromisoformat(day)) for day, _, title in lines]
+
+    def _run(self, *command: str) -> str:
+        done = subprocess.run(
+            command, env={**os.environ, "HOME": str(self.home), "XDG_DATA_HOME": str(self.home), "LC_ALL": "C.UTF-8"},
+            capture_output=True, encoding="utf-8", timeout=120,
+        )
+        assert done.returncode == 0, f"{command[0]}: {done.stdout}\n{done.stderr}"
+        return done.stdout
+
+
+@pytest.fixture
+def subscriber(community: Community, tmp_path: Path) -> Iterator[Subscriber]:
+    handler = functools.partial(_Quiet, directory=str(community.output))
+    server = http.server.ThreadingHTTPServer(("127.0.0.1", 0), handler)
+    threading.Thread(target=server.serve_forever, daemon=True).start()
+    home = tmp_path / "home"
+    (home / "phone").mkdir(parents=True)
+    address = f"http://127.0.0.1:{server.server_address[1]}/feeds/observances.ics"
+    (home / "vdirsyncer.conf").write_text(
+        f'[general]\nstatus_path = "{home}/status/"\n'
+        '[pair feed]\na = "site"\nb = "phone"\ncollections = null\nconflict_resolution = "a wins"\n'
+        f'[storage site]\ntype = "http"\nurl = "{address}"\n'
+        f'[storage phone]\ntype = "filesystem"\npath = "{home}/phone/"\nfileext = ".ics"\n',
+        encoding="utf-8",
+    )
+    (home / "khal.conf").write_text(
+        f"[calendars]\n[[phone]]\npath = {home}/phone\nreadonly = True\n"
+        "[locale]\nlocal_timezone = Australia/Melbourne\ndefault_timezone = Australia/Melbourne\n"
+        "timeformat = %H:%M\ndateformat = %Y-%m-%d\nlongdateformat = %Y-%m-%d\n"
+        "datetimeformat = %Y-%m-%d %H:%M\nlongdatetimeformat = %Y-%m-%d %H:%M\n"
+        f"[sqlite]\npath = {home}/khal.db\n",
+        encoding="utf-8",
+    )
+    community.publish("2026-06-01T00:00:00Z")
+    reader = Subscriber(home)
+    reader._run("vdirsyncer", "-c", str(home / "vdirsyncer.conf"), "discover")
+    yield reader
+    server.shutdown()
+    server.server_close()
+
+
+def _plain(title: str) -> str:
+    """A title without what it says of its standing."""
+    return title.partition(" (")[0]
+
+
+def _uids(community: Community) -> list[str]:
+    lines = _feed(community, "observances.ics").replace("\r\n ", "").splitlines()
+    return sorted(line for line in lines if line.startswith("UID:"))
+
+
+def _feed(community: Community, name: str) -> str:
+    return (community.output / "feeds" / name).read_text(encoding="utf-8")
+
+
+@pytest.mark.judge("vdirsyncer", "khal")
+def test_subscribers_follow_three_decisions_and_lose_nothing(community: Community, subscriber: Subscriber) -> None:
+    """One decision as expected, one that moves a month by a day, one superseded the same night."""
+    expected = subscriber.look()
+    assert ("Ramadan (expected)", date(2027, 2, 9)) in expected
+    assert ("Eid al-Fitr (expected)", date(2027, 3, 11)) in expected
+    uids = _uids(community)
+
+    # As expected: nothing moves, and what hangs on that month alone is no longer only expected.
+    community.decide("2027-01-08T21:00:00+11:00", "1448-08", "2027-01-10", "completed")
+    community.publish("2027-01-08T21:05:00+11:00")
+    first = subscriber.look()
+    assert sorted(day for _, day in first) == sorted(day for _, day in expected)
+    mid_shaban = ("Mid-Shaban: night of 15 Shaban (begins at sunset)", date(2027, 1, 23))
+    assert mid_shaban in first
+    assert mid_shaban not in expected
+
+    # Sighted a day before it was expected: Ramadan moves, and the feast that ends it with it.
+    community.decide("2027-02-07T21:00:00+11:00", "1448-09", "2027-02-08", "sighted")
+    community.publish("2027-02-07T21:05:00+11:00")
+    second = subscriber.look()
+    assert ("Ramadan (expected)", date(2027, 2, 8)) in second  # its last day is still open
+    assert ("Eid al-Fitr (expected)", date(2027, 3, 10)) in second
+    assert mid_shaban in second
+
+    # Completed, and two hours later a late report is accepted: the second word stands.
+    community.decide("2027-05-07T20:00:00+10:00", "1448-12", "2027-05-09", "completed")
+    community.publish("2027-05-07T20:05:00+10:00")
+    assert [day for title, day in subscriber.look() if title.startswith("Eid al-Adha")] == [date(2027, 5, 18)]
+    community.decide("2027-05-07T22:00:00+10:00", "1448-12", "2027-05-08", "sighted")
+    community.publish("2027-05-07T22:05:00+10:00")
+    third = subscriber.look()
+    assert ("Eid al-Adha (moved)", date(2027, 5, 17)) in third
+
+    # None is doubled and none is lost, and each keeps its UID.
+    for later in (first, second, third):
+        assert Counter(_plain(title) for title, _ in later) == Counter(_plain(title) for title, _ in expected)
+    assert _uids(community) == uids
+
+    # The journal and the notices tell the same story.
+    lines = [json.loads(line) for line in (community.content / "record/journal.jsonl").read_text().splitlines()]
+    moved = {(one["key"], one["starts"]) for one in lines if "was" in one}
+    assert ("month-1448-09", "2027-02-08") in moved
+    assert ("eid-al-fitr-1448", "2027-03-10") in moved
+    assert {("month-1448-12", "2027-05-09"), ("month-1448-12", "2027-05-08")} & moved
+    atom = ET.fromstring(_feed(community, "notices.atom"))
+    titles = [str(title.text) for title in atom.iterfind("{*}entry/{*}title")]
+    told = [one["title"] for one in json.loads(_feed(community, "notices.json"))["items"]]
+    assert titles == told
+    assert len([title for title in told if " has moved to " in title]) == len([one for one in lines if "was" in one])
+    assert [title for title in told if title.startswith("Dhu al-Hijja 1448 begins on")] == [
+        "Dhu al-Hijja 1448 begins on Saturday, 8 May 2027", "Dhu al-Hijja 1448 begins on Sunday, 9 May 2027",
+    ]
+    page = (community.output / "changes/index.html").read_text(encoding="utf-8")
+    assert page.count("<tr><td>") == len([one for one in lines if "was" in one])
+
+
+def test_replay_gives_what_the_public_saw(community: Community, tmp_path: Path) -> None:
+    """``publish --as-of`` a past day writes byte for byte the site of that day, whatever was decided since."""
+    community.publish("2027-02-05T12:00:00+11:00")
+    community.decide("2027-02-07T21:00:00+11:00", "1448-09", "2027-02-08", "sighted")
+    community.publish("2027-02-07T23:00:00+11:00")
+    seen = _files(community.output)
+    community.decide("2027-05-07T20:00:00+10:00", "1448-12", "2027-05-08", "sighted")
+    community.publish("2027-05-07T20:05:00+10:00")
+    journal = (community.content / "record/journal.jsonl").read_bytes()
+    assert _files(community.output) != seen
+
+    replayed = tmp_path / "replayed"
+    community.run("2028-01-01T00:00:00Z", "publish", "--as-of", "2027-02-07", "--output", str(replayed))
+    assert _files(replayed) == seen
+    community.run("2028-01-01T00:00:00Z", "publish", "--output", str(replayed))
+    lines = (community.content / "record/journal.jsonl").read_bytes().splitlines()
+    assert lines == journal.splitlines(), "a replay leaves nothing behind for the journal"
+
+
+def _files(folder: Path) -> dict[str, bytes]:
+    return {
+        path.relative_to(folder).as_posix(): path.read_bytes()
+        for path in folder.rglob("*") if path.is_file() and path.name != ".moonwrit"
+    }
