@@ -277,7 +277,8 @@ def _withdraw(
     because = reasons.for_change(gone.key, year * 12 - 1, gone.at)
     if because is None:
         silent.append(
-            f"{gone.key}: was {gone.starts} ({gone.standing}) -> would be withdrawn, because the content no longer gives it"
+            f"{gone.key}: was {gone.starts} ({gone.standing}) -> would be withdrawn, "
+            "because the content no longer gives it"
         )
         return
     entry = replace(gone, standing="withdrawn", seq=gone.seq + 1, at=stamp, was=None, because=because)
