@@ -191,8 +191,8 @@ def _evening(almanac: Almanac, evening: Evening, language: Language) -> dict[str
         "names": names,
         "zones": {place: value.zone for place, value in almanac.places.items()},
         "horizons": [
-            (names[place], svg(drawn)) for place in almanac.places
-            if (drawn := pictures.horizon(evening, place, names[place], language))
+            (names[place], svg(drawn)) for place, value in almanac.places.items()
+            if (drawn := pictures.horizon(evening.at[place], value.zone, names[place], language))
         ],
         "before": almanac.months[index - 1] if index else None,
         "coming": evening.on >= almanac.as_of,
