@@ -309,8 +309,9 @@ CRITERIA: dict[str, Criterion] = {c.name: c for c in (
         "A. Danjon, 1932-1936, as listed by A. H. Sultan, The Observatory 127, 53 (2007); others "
         "find 5 to 7.5 degrees",
         "topocentric elongation at best time: a floor below which no crescent is seen, not a criterion of its own",
-        fixed=Comparison(elongation("topocentric", "best-time"), ">=", 7.0),
-        formula="ARCL at least 7 degrees",
+        # An elongation is as large before the conjunction: without its age the old Moon would do as well.
+        fixed=All((Comparison(elongation("topocentric", "best-time"), ">=", 7.0), Comparison(age(), ">", 0.0))),
+        formula="ARCL at least 7 degrees, after the conjunction",
     ),
     Criterion(
         "mabims-1995", "MABIMS 1995 (2-3-8)",
