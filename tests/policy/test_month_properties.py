@@ -146,10 +146,10 @@ def test_the_window_holds_what_is_expected(name: str) -> None:
 # --- whatever is asked ----------------------------------------------------------------------------
 
 QUANTITIES: tuple[tuple[Quantity, float, float], ...] = (
-    # quantity, and the range that thresholds are drawn from; not those that are as large before the conjunction
-    (altitude("topocentric", refracted=True), 0, 12),
-    (altitude("geocentric"), 0, 12),
-    (lag(), 0, 70),
+    # quantity, and the range that thresholds are drawn from; none that the old Moon meets as well
+    (altitude("topocentric", refracted=True), 2, 12),
+    (altitude("geocentric"), 3, 12),
+    (lag(), 10, 70),
     (age(), -10, 40),
     (arc_of_vision("topocentric"), 2, 14),
     (conjunction_before_hour(24), -20, 20),
@@ -194,7 +194,7 @@ def test_a_tighter_threshold_anywhere_on_earth_makes_no_month_earlier(
 ) -> None:
     """The search over the Earth must not find more for a stricter test, nor for an earlier deadline."""
     quantity, low, high = data.draw(st.sampled_from(QUANTITIES[:3]))
-    threshold = data.draw(st.floats(low, high / 2))
+    threshold = data.draw(st.floats(high / 3, high))
     loose = starts(Comparison(quantity, ">=", threshold), Anywhere(Before(hour_ut=hour)), year)
     tighter = Comparison(quantity, ">=", threshold + step * quantity.per_day)
     assert all_not_later(loose, starts(tighter, Anywhere(Before(hour_ut=hour)), year))
