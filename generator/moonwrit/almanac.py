@@ -76,7 +76,7 @@ def assemble(content: Content, as_of: date, known_until: datetime | None = None)
     """The almanac of each calendar of the site, the main one first.
 
     Of the record, only what was written down until ``known_until`` counts (all: None). Raises ContentError where a
-    declaration or a decision is at fault, RequestError where a year cannot be computed.
+    declaration or a decision is at fault, or a year cannot be computed.
     """
     years = content.site.years
     decisions = in_force(content.decisions, known_until)
@@ -84,7 +84,10 @@ def assemble(content: Content, as_of: date, known_until: datetime | None = None)
     out = []
     for calendar_id, calendar in content.site.calendars.items():
         adopted = method(calendar.policy, content)
-        months = adopted.months(years.first, years.last, decisions)
+        try:
+            months = adopted.months(years.first, years.last, decisions)
+        except RequestError as fault:
+            raise content.error("site.yaml", ("years",), fault.what, fault.mend) from None
         months = tuple(_amended(month, replaced.get(month.ordinal, ())) for month in months)
         region = content.regions[calendar.region]
         evenings = tuple(_evening(month, region, content, known_until) for month in months)

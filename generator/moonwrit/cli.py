@@ -11,7 +11,7 @@ from contextlib import contextmanager
 from dataclasses import replace
 from datetime import UTC, date, datetime
 from pathlib import Path
-from typing import TYPE_CHECKING, Any, TypeVar
+from typing import TYPE_CHECKING, Any
 
 import click
 
@@ -24,11 +24,8 @@ if TYPE_CHECKING:
 
     from moonwrit.content import Content
     from moonwrit.content.models import OtherCalendar
-    from moonwrit.content.record import Decision, Report
+    from moonwrit.content.record import Decision
     from moonwrit.policy import Method, Month, NamedPlace
-
-
-Entry = TypeVar("Entry", bound="Report | Decision")
 
 
 class _Commands(click.Group):
@@ -59,8 +56,8 @@ _OPTIONS: dict[str, list[Callable[[Callable[..., None]], Callable[..., None]]]] 
     "json": [click.option("--json", "as_json", is_flag=True, help="Print JSON.")],
     "as_of": [click.option("--as-of", metavar="DATE", callback=_date, help='The date to take for "today".')],
     "years": [
-        click.option("--from", "first", type=int, metavar="YEAR", help="First Hijri year."),
-        click.option("--to", "last", type=int, metavar="YEAR", help="Last Hijri year, included."),
+        click.option("--from", "first", type=click.IntRange(min=1), metavar="YEAR", help="First Hijri year."),
+        click.option("--to", "last", type=click.IntRange(min=1), metavar="YEAR", help="Last Hijri year, included."),
     ],
     "policy": [click.option("--policy", metavar="P", help="A policy of the content, or a published one.")],
     "place": [click.option(
@@ -290,6 +287,7 @@ def report(folder: Path, **given: Any) -> None:
     from moonwrit.content.models import in_language
     from moonwrit.content.record import Report
     from moonwrit.record import weighed
+    from moonwrit.record.appending import append, tried
 
     content = _content(folder)
     given["evening"] = _asked_for(given["evening"], "Evening (year-month-day)")
@@ -297,12 +295,14 @@ def report(folder: Path, **given: Any) -> None:
     given["outcome"] = _asked_for(given["outcome"], "Outcome (seen, not-seen, could-not-look)")
     if given["outcome"] == "seen":
         given["aid"] = _asked_for(given["aid"], "Aid (naked-eye, binoculars, telescope, camera)")
-    made = _recorded(folder / "record/reports.yaml", Report, {**given, "recorded": _stamp(content)}, content)
+    file, entry = folder / "record/reports.yaml", _entry({**given, "recorded": _stamp(content)})
+    made, _ = tried(file, Report, entry, content)
     names = {name: in_language(place.name, content.site.language) for name, place in content.places.items()}
-    for one in weighed([made], content.places, names):
-        click.echo(f"recorded; weighed against the sky, as advice only: {one.weight}")
-        for advice in one.advice:
-            click.echo(f"  {advice}")
+    (one,) = weighed([made], content.places, names)
+    append(file, entry)
+    click.echo(f"recorded; weighed against the sky, as advice only: {one.weight}")
+    for advice in one.advice:
+        click.echo(f"  {advice}")
 
 
 @record.command()
@@ -317,7 +317,9 @@ def report(folder: Path, **given: Any) -> None:
 @click.option("--knowingly", is_flag=True, help="The community knows that the rules or the sky speak against it.")
 def decision(folder: Path, **given: Any) -> None:
     """The community's word on when a month begins."""
+    from moonwrit.almanac import assemble
     from moonwrit.content.record import Decision
+    from moonwrit.record.appending import append, tried
 
     content = _content(folder)
     given["month"] = _asked_for(given["month"], "Lunar month (year-month)")
@@ -327,7 +329,15 @@ def decision(folder: Path, **given: Any) -> None:
     if given["basis"] == "adopted":
         given["adopted_from"] = _asked_for(given["adopted_from"], "Adopted from")
     given["at"] = given["at"] or _stamp(content)
-    made = _recorded(folder / "record/decisions.yaml", Decision, given, content)
+    file, entry = folder / "record/decisions.yaml", _entry(given)
+    made, document = tried(file, Decision, entry, content)
+    years, year = content.site.years, made.ordinal // 12 + 1
+    if not years.first <= year <= years.last:
+        raise RequestError(f"{made.month} is none of the months published, {years.first} to {years.last} AH",
+                           "correct it, or change the years in site.yaml")
+    documents = {**content.documents, "record/decisions.yaml": document}
+    assemble(replace(content, decisions=(*content.decisions, made), documents=documents), _today(content, _now()))
+    append(file, entry)
     click.echo(f"recorded: {made.month} begins on {made.starts:%A %Y-%m-%d}; publish to tell the public")
 
 
@@ -366,19 +376,9 @@ def _stamp(content: Content) -> str:
     return _now().astimezone(_zone(content)).replace(microsecond=0).isoformat()
 
 
-def _recorded(file: Path, shape: type[Entry], given: dict[str, Any], content: Content) -> Entry:
-    """Add an entry to the record once the whole record is sound with it; nothing is written otherwise."""
-    from moonwrit.content.record import Decision
-    from moonwrit.record.appending import append, tried
-
-    entry = {key: value for key, value in given.items() if value not in (None, (), False, "")}
-    made = tried(file, shape, entry, content)
-    if isinstance(made, Decision):
-        from moonwrit.almanac import assemble
-
-        assemble(replace(content, decisions=(*content.decisions, made)), _today(content, _now()))
-    append(file, entry)
-    return made
+def _entry(given: dict[str, Any]) -> dict[str, Any]:
+    """What was given, as it is written down: what was not given is left out."""
+    return {key: value for key, value in given.items() if value not in (None, (), False, "")}
 
 
 # --- what the commands share ----------------------------------------------------------------------
@@ -409,9 +409,12 @@ def _content_if_there(folder: Path, policy: str | None) -> Content | None:
     """The content; a published policy can do without where the folder is not there."""
     from moonwrit.policy import published_names
 
-    if policy in published_names() and not _is_folder(folder):
-        return None
-    return _content(folder)
+    if policy is None or _is_folder(folder):
+        return _content(folder)
+    if policy not in published_names():
+        raise RequestError(f'policy "{policy}" is not a published one, and {folder} is no content folder',
+                           did_you_mean(policy, published_names()))
+    return None
 
 
 def _method(content: Content | None, policy: str | None, places: tuple[str, ...]) -> Method:
@@ -453,6 +456,8 @@ def _asked(
         year, number = int(match[1]), int(match[2])
         if not 1 <= number <= 12:
             raise RequestError(f"there is no month {number}", "lunar months are 1 to 12")
+        if year < 1:
+            raise RequestError("there is no year 0", "Hijri years begin with 1")
         return method.months(year, year, decisions)[number - 1], []
     if re.fullmatch(r"\d{4}-\d{2}-\d{2}", what):
         try:

@@ -161,9 +161,10 @@ class _Model(BaseModel):
 
 
 @cache
-def _zone_info(name: str) -> ZoneInfo:
+def zone_named(name: str) -> ZoneInfo:
+    """The time zone of an IANA name. Raises ValueError, which says how to mend it, for any other."""
     # From the tzdata package, for the same reason: ZoneInfo(name) would prefer the machine's own files.
-    with resources.files("tzdata").joinpath("zoneinfo", *name.split("/")).open("rb") as file:
+    with resources.files("tzdata").joinpath("zoneinfo", *_zone(name).split("/")).open("rb") as file:
         return ZoneInfo.from_file(file, key=name)
 
 
@@ -188,7 +189,7 @@ class Place(_Model):
 
     @property
     def zone(self) -> ZoneInfo:
-        return _zone_info(self.timezone)
+        return zone_named(self.timezone)
 
 
 class Region(_Model):
@@ -323,4 +324,5 @@ __all__ = [
     "Years",
     "date",
     "in_language",
+    "zone_named",
 ]

@@ -4,10 +4,10 @@ from __future__ import annotations
 
 from collections.abc import Collection, Sequence
 from datetime import date
-from zoneinfo import ZoneInfo, ZoneInfoNotFoundError
 
 import numpy as np
 
+from moonwrit.content.models import zone_named
 from moonwrit.errors import RequestError, did_you_mean
 from moonwrit.policy.published import NamedPlace
 from moonwrit.sky import Evenings, Places, ephemeris
@@ -73,6 +73,6 @@ def place_from_text(text: str, known: Collection[str] = ()) -> NamedPlace:
             "latitude is -90 to 90, longitude -180 to 180 degrees, elevation -500 to 9000 metres",
         )
     try:
-        return NamedPlace(name or "here", latitude, longitude, elevation, ZoneInfo(zone) if zone else None)
-    except (ZoneInfoNotFoundError, ValueError, OSError):
-        raise RequestError(f'time zone "{zone}" is unknown', "write for instance Australia/Melbourne") from None
+        return NamedPlace(name or "here", latitude, longitude, elevation, zone_named(zone) if zone else None)
+    except ValueError as fault:
+        raise RequestError(str(fault)) from None

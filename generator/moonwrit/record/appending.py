@@ -13,7 +13,7 @@ from pydantic import TypeAdapter
 from moonwrit.content import Content
 from moonwrit.content.faults import validated
 from moonwrit.content.record import Decision, Report
-from moonwrit.content.yaml import parse
+from moonwrit.content.yaml import Document, parse
 from moonwrit.errors import RequestError, did_you_mean
 
 _HEADS = {
@@ -25,19 +25,21 @@ _HEADS = {
 Entry = TypeVar("Entry", bound=Report | Decision)
 
 
-def tried(file: Path, shape: type[Entry], entry: Mapping[str, Any], content: Content) -> Entry:
-    """The entry as it would be read back. Raises ContentError where it is not sound in itself.
+def tried(file: Path, shape: type[Entry], entry: Mapping[str, Any], content: Content) -> tuple[Entry, Document]:
+    """The entry as it would be read back, and ``file`` with it at its end.
 
-    ``file`` gives the name and, for errors, the line on which the entry would stand.
+    Raises ContentError, with the line on which the fault would stand, where the entry is not sound in itself or the
+    file is not one to whose end an entry can be added.
     """
-    text = _text(entry)
-    document = parse(text.encode(), file)
-    made: list[Entry] = validated(document, TypeAdapter(list[shape]))  # type: ignore[valid-type]
-    if isinstance(made[0], Report) and made[0].place not in content.places:
+    document = parse(_with(file, entry).encode(), file)
+    entries: list[Entry] = validated(document, TypeAdapter(list[shape]))  # type: ignore[valid-type]
+    made = entries[-1]
+    if isinstance(made, Report) and made.place not in content.places:
         raise document.error(
-            (0, "place"), f'place "{made[0].place}" is not defined', did_you_mean(made[0].place, content.places)
+            (len(entries) - 1, "place"), f'place "{made.place}" is not defined',
+            did_you_mean(made.place, content.places),
         )
-    return made[0]
+    return made, document
 
 
 def append(file: Path, entry: Mapping[str, Any]) -> None:
@@ -45,19 +47,21 @@ def append(file: Path, entry: Mapping[str, Any]) -> None:
 
     The file is replaced in one step. Raises RequestError where it cannot be written.
     """
-    text = _text(entry)
+    text = _with(file, entry)
+    aside = file.with_name(f".{file.name}.new")
     try:
         file.parent.mkdir(parents=True, exist_ok=True)
-        before = file.read_text(encoding="utf-8") if file.exists() else _HEADS.get(file.name, "")
-        if before and not before.endswith("\n"):
-            before += "\n"
-        aside = file.with_name(f".{file.name}.new")
-        aside.write_text(before + ("\n" if before else "") + text, encoding="utf-8")
+        aside.write_text(text, encoding="utf-8")
         os.replace(aside, file)
-    except (OSError, UnicodeDecodeError) as fault:
+    except OSError as fault:
         raise RequestError(f"{file} cannot be written ({fault})", "free space, or mend its permissions") from None
 
 
-def _text(entry: Mapping[str, Any]) -> str:
+def _with(file: Path, entry: Mapping[str, Any]) -> str:
+    """The text of ``file`` with the entry at its end."""
+    before = file.read_text(encoding="utf-8") if file.exists() else _HEADS.get(file.name, "")
+    if before and not before.endswith("\n"):
+        before += "\n"
     values = {key: list(value) if isinstance(value, tuple) else value for key, value in entry.items()}
-    return yaml.safe_dump([values], sort_keys=False, allow_unicode=True, width=100)
+    text = yaml.safe_dump([values], sort_keys=False, allow_unicode=True, width=100)
+    return before + ("\n" if before else "") + text
