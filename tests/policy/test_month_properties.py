@@ -193,7 +193,7 @@ def test_a_tighter_threshold_anywhere_on_earth_makes_no_month_earlier(
     data: st.DataObject, hour: float, year: int, step: float
 ) -> None:
     """The search over the Earth must not find more for a stricter test, nor for an earlier deadline."""
-    quantity, low, high = data.draw(st.sampled_from(QUANTITIES[:3]))
+    quantity, _, high = data.draw(st.sampled_from(QUANTITIES[:3]))
     threshold = data.draw(st.floats(high / 3, high))
     loose = starts(Comparison(quantity, ">=", threshold), Anywhere(Before(hour_ut=hour)), year)
     tighter = Comparison(quantity, ">=", threshold + step * quantity.per_day)
