@@ -192,8 +192,8 @@ class _Sky:
 
     WIDTH = 320
     _LEFT, _RIGHT, _TOP = 32.0, 314.0, 26.0
-    _WIDEST = 16.0  # units for a degree
-    _TALLEST = 200.0
+    _WIDEST = 12.0  # units for a degree
+    _TALLEST = 160.0
     _MOON = 10.0  # radius
 
     def __init__(
@@ -269,7 +269,7 @@ class _Sky:
         last = self.sun_azimuth + (self._RIGHT - self.sun_x) / self.scale
         for azimuth in range(ceil(first / step) * step, floor(last / step) * step + 1, step):
             x, _y = self.at(azimuth, 0)
-            parts.append(_line("grid", x, self._TOP, x, self.bottom + 4))
+            parts += [_line("grid", x, self._TOP, x, self.ground), _line("grid", x, self.bottom, x, self.bottom + 4)]
             if x + 18 < self.WIDTH:
                 name = f"{language.number(azimuth % 360, 0)}°"
                 parts.append(_text(x, self.bottom + 17, name, "tick azimuth", "middle"))
@@ -295,7 +295,7 @@ class _Sky:
         """Beside their marks, moved up where they would overlap or sink into the ground."""
         half = text_width(self.sun_name) / 2
         x = min(max(self.sun_x, self._LEFT + half), self._RIGHT - half)
-        parts = [_text(x, self.bottom - 6, self.sun_name, "name", "middle")]
+        parts = [_text(x, self.bottom - 6, self.sun_name, "name low", "middle")]
         beside = self._MOON + 4
         lowest = self.ground - 9
         for mark in sorted(self.moon, key=lambda one: one.altitude):
