@@ -299,13 +299,33 @@ class Site(_Model):
         ),
     ]
     language: Language = "en"
+    languages: Annotated[
+        tuple[Language, ...], Field(description="further languages of the site, each in a folder of its own")
+    ] = ()
     years: Years
     authority: Words
     contact: Words | None = None
     also: Annotated[
         tuple[OtherCalendar, ...], Field(description="other calendars whose dates stand beside the lunar ones")
     ] = ()
+    remind_hours_before: Annotated[
+        int | None,
+        Field(ge=0, le=168, description="hours before midnight at which feeds remind of main observances, 0 to 168"),
+    ] = None
     calendars: Annotated[dict[Identifier, Calendar], Field(min_length=1)]
+
+    @property
+    def all_languages(self) -> tuple[str, ...]:
+        """The default language first."""
+        return (self.language, *self.languages)
+
+    @model_validator(mode="after")
+    def _languages_apart(self) -> Site:
+        if len(set(self.all_languages)) < len(self.all_languages):
+            raise ValueError("a language is named twice; languages lists those besides language")
+        if both := set(self.languages) & set(self.calendars):
+            raise ValueError(f'"{min(both)}" is a language and a calendar, which want one folder; rename the calendar')
+        return self
 
 
 __all__ = [

@@ -1,7 +1,4 @@
-"""Months and differences as JSON: the published form of what a date rests on, and its schema.
-
-Keys are added, never quietly given another meaning; ``version`` rises when one has to go.
-"""
+"""Months and differences as JSON: the published form of what a date rests on. ``schemas`` describes it."""
 
 from __future__ import annotations
 
@@ -17,6 +14,7 @@ if TYPE_CHECKING:
     from moonwrit.policy.differ import Beside
 
 VERSION = 1
+"""Of every JSON that is ours: keys are added within a version, none is dropped or given another meaning."""
 
 
 def month_json(month: Month) -> dict[str, Any]:
@@ -80,10 +78,10 @@ def utc(moment: datetime | None) -> str | None:
 
 
 def basis_feed(almanac: Almanac) -> bytes:
-    """``feeds/basis.json``: every month of a calendar with its full evidence."""
+    """``feeds/basis.json``: every month of a calendar with its full evidence; the same in every language."""
     method = almanac.method
     return json_bytes({
-        "$schema": "schema/basis.schema.json",
+        "$schema": almanac.site.address.rstrip("/") + "/feeds/schema/basis.schema.json",
         "version": VERSION,
         "calendar": almanac.calendar_id,
         "site": almanac.site.address,
@@ -95,78 +93,3 @@ def basis_feed(almanac: Almanac) -> bytes:
 def json_bytes(value: Any) -> bytes:
     """Readable JSON in UTF-8, a line feed at its end."""
     return (json.dumps(value, ensure_ascii=False, indent=1, allow_nan=False) + "\n").encode()
-
-
-def basis_schema() -> bytes:
-    """``feeds/schema/basis.schema.json``, JSON Schema 2020-12."""
-    date = {"type": "string", "format": "date", "pattern": r"^\d{4}-\d{2}-\d{2}$"}
-    number = {"type": ["number", "null"]}
-    text = {"type": "string"}
-    comparison = {"enum": [">=", ">", "<=", "<"]}
-    margin = _object({
-        "quantity": text,
-        "value": number,
-        "threshold": number,
-        "margin": number,
-        "unit": text,
-        "day_share": number,
-        "closeness": {"enum": ["fixed", "wide", "close", "edge"]},
-    }, "How far the deciding quantity is from the value at which the date would flip: value minus threshold, in "
-       "the quantity's unit, positive where the test is met.")
-    finding = _object({
-        "quantity": text,
-        "frame": text,
-        "place": text,
-        "value": number,
-        "comparison": comparison,
-        "threshold": {"type": "number"},
-        "unit": text,
-        "met": {"type": "boolean"},
-        "margin": number,
-    }, "One comparison of the policy's test on the deciding evening.")
-    evidence = _object({
-        "evening": date,
-        "met": {"type": ["boolean", "null"]},
-        "place": {"type": ["string", "null"]},
-        "conjunction_utc": {"type": ["string", "null"], "pattern": r"^\d{4}-\d{2}-\d{2}T\d{2}:\d{2}:\d{2}Z$"},
-        "findings": {"type": "array", "items": finding},
-        "circumstances": {
-            "type": "object",
-            "additionalProperties": {"type": ["number", "string", "null"]},
-            "description": "Names with their units; instants in UTC; null where the event does not happen.",
-        },
-        "notes": {"type": "array", "items": text},
-    }, "What the start of the month rests on: the 29th evening of the month before.")
-    month = _object({
-        "year": {"type": "integer"},
-        "month": {"type": "integer", "minimum": 1, "maximum": 12},
-        "starts": date,
-        "eve": date,
-        "length": {"type": "integer", "minimum": 28, "maximum": 31},
-        "standing": {"enum": ["expected", "settled", "amended"]},
-        "basis": {"enum": ["arithmetic", "calculated", "sighted", "completed", "adopted", "tabulated"]},
-        "window": _object({"earliest": date, "latest": date}, "The first days that the rules still allow."),
-        "margin": margin,
-        "policy": text,
-        "evidence": evidence,
-    }, "One lunar month.")
-    policy = _object({"name": text, "title": text, "source": text, "note": text}, "The policy of the calendar.")
-    return json_bytes({
-        "$schema": "https://json-schema.org/draft/2020-12/schema",
-        "title": "Moonwrit: the basis of every month",
-        **_object({
-            "$schema": text,
-            "version": {"const": VERSION},
-            "calendar": text,
-            "site": text,
-            "policy": policy,
-            "months": {"type": "array", "items": month},
-        }, "Keys may be added; none is given another meaning without a new version."),
-    })
-
-
-def _object(properties: dict[str, Any], description: str) -> dict[str, Any]:
-    """An object with these keys at least: readers must allow for more."""
-    return {
-        "type": "object", "description": description, "required": list(properties), "properties": properties,
-    }

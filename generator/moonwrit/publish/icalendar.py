@@ -6,21 +6,21 @@ every build, and one that moved keeps its UID.
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
+from collections.abc import Callable, Iterable, Mapping
 from datetime import date, datetime, timedelta
-from urllib.parse import urlsplit
 
-from icalendar import Calendar, Event, vDDDTypes, vDuration, vText, vUri
+from icalendar import Alarm, Calendar, Event, vDDDTypes, vDuration, vText, vUri
 
 from moonwrit import __version__
-from moonwrit.almanac import Almanac, Evening
+from moonwrit.almanac import Evening
 from moonwrit.calendars import month_slug
 from moonwrit.concordance import TITLES, in_calendar
-from moonwrit.content.models import in_language
-from moonwrit.journal import Entry, Ledger, month_key
+from moonwrit.journal import Entry, month_key
+from moonwrit.observances import Occurrence
 from moonwrit.policy import Month
 from moonwrit.publish import words
-from moonwrit.publish.language import ENGLISH, Language
+from moonwrit.publish.edition import Edition
+from moonwrit.publish.language import Language
 
 REFRESH = timedelta(hours=12)
 """A lower bound on how often a client should ask (RFC 7986, 5.7); clients keep their own hours."""
@@ -28,72 +28,60 @@ WITHDRAWN_DAYS = 60
 """A withdrawn event stays in the feeds as cancelled for this many days, so that clients learn of it."""
 
 
-def observances_feed(almanac: Almanac, ledger: Ledger, language: Language = ENGLISH) -> bytes:
-    """``feeds/observances.ics``: one event for each occurrence, and those withdrawn lately."""
-    months = {(month.year, month.month): month for month in almanac.months}
-    events = []
-    for one in almanac.occurrences:
-        observance = almanac.observances[one.observance]
-        name = in_language(observance.name, language.code, almanac.site.language)
-        about = [in_language(observance.about, language.code, almanac.site.language)] if observance.about else []
-        events.append(_all_day(
-            almanac, language, ledger.entry(almanac.calendar_id, one.key), words.event_title(name, one, language),
-            [*about, *_reasons(months[one.year, one.month], language)], f"observances/{one.observance}/", one.tags,
-        ))
-    events += [_cancelled(almanac, language, entry) for entry in withdrawn_lately(almanac, ledger)]
-    title = _titled("%(calendar)s: observances", almanac, language)
-    return _feed(almanac, ledger, language, "observances", title, events)
+def observances_feed(edition: Edition) -> bytes:
+    """``observances.ics``: one event for each occurrence, and those withdrawn lately."""
+    title = edition.language.gettext("%(calendar)s: observances") % {"calendar": edition.name}
+    first = edition.first_rolling_year
+    events = [*_occurrences(edition, lambda one: one.year >= first), *_withdrawn(edition, None)]
+    return _feed(edition, "observances.ics", title, events)
 
 
-def months_feed(almanac: Almanac, ledger: Ledger, language: Language = ENGLISH) -> bytes:
-    """``feeds/months.ics``: one event for the first day of each month."""
-    events = []
-    for month in almanac.months:
-        entry = ledger.entry(almanac.calendar_id, month_key(month.year, month.month))
-        title = words.month_title(month, language)
-        if month.standing == "expected":
-            title = language.gettext("%(title)s (expected)") % {"title": title}
-        events.append(_all_day(
-            almanac, language, entry, title, _reasons(month, language),
-            f"{month.year}/{month_slug(month.month)}/", ("month",), one_day=True,
-        ))
-    return _feed(almanac, ledger, language, "months", _titled("%(calendar)s: months", almanac, language), events)
+def tag_feed(edition: Edition, tag: str) -> bytes:
+    """``tags/<tag>.ics``: the observances of one tag."""
+    title = edition.language.gettext("%(calendar)s: %(tag)s") % {"calendar": edition.name, "tag": tag}
+    first = edition.first_rolling_year
+    events = [*_occurrences(edition, lambda one: one.year >= first and tag in one.tags), *_withdrawn(edition, tag)]
+    return _feed(edition, f"tags/{tag}.ics", title, events)
 
 
-def evenings_feed(almanac: Almanac, ledger: Ledger, language: Language = ENGLISH) -> bytes:
-    """``feeds/evenings.ics``: every 29th evening at each place, from sunset to moonset.
+def year_feed(edition: Edition, year: int) -> bytes:
+    """``years/<year>.ics``: the month starts and observances of one Hijri year, for a single import."""
+    title = edition.language.gettext("%(calendar)s: year %(year)s") % {"calendar": edition.name, "year": year}
+    events = [*_months(edition, lambda month: month.year == year), *_occurrences(edition, lambda one: one.year == year)]
+    return _feed(edition, f"years/{year}.ics", title, events)
+
+
+def months_feed(edition: Edition) -> bytes:
+    """``months.ics``: one event for the first day of each month."""
+    title = edition.language.gettext("%(calendar)s: months") % {"calendar": edition.name}
+    first = edition.first_rolling_year
+    return _feed(edition, "months.ics", title, list(_months(edition, lambda month: month.year >= first)))
+
+
+def evenings_feed(edition: Edition) -> bytes:
+    """``evenings.ics``: every 29th evening at each place, from sunset to moonset.
 
     No event where the Moon sets before the Sun or one of them does not set: there is nothing to look for.
     """
+    almanac, first = edition.almanac, edition.first_rolling_year
     events = []
     for before, evening in zip([None, *almanac.months[:-1]], almanac.evenings, strict=True):
+        if evening.month.year < first:
+            continue
         # The evening's date hangs on where the month before began.
         month = before or evening.month
-        entry = ledger.entry(almanac.calendar_id, month_key(month.year, month.month))
+        entry = edition.entry(month_key(month.year, month.month))
         for place in almanac.places:
-            event = _timed(almanac, language, entry, evening, place)
+            event = _timed(edition, entry, evening, place)
             if event is not None:
                 events.append(event)
-    title = _titled("%(calendar)s: evenings for observers", almanac, language)
-    return _feed(almanac, ledger, language, "evenings", title, events, zoned=True)
+    title = edition.language.gettext("%(calendar)s: evenings for observers") % {"calendar": edition.name}
+    return _feed(edition, "evenings.ics", title, events, zoned=True)
 
 
-def uid(almanac: Almanac, key: str) -> str:
-    """The lasting name of an event: it does not change when its date does."""
-    return f"{key}.{almanac.calendar_id}@{urlsplit(almanac.site.address).hostname}"
-
-
-def page(almanac: Almanac, path: str) -> str:
-    return almanac.site.address.rstrip("/") + "/" + path
-
-
-def withdrawn_lately(almanac: Almanac, ledger: Ledger) -> list[Entry]:
-    """Entries of the calendar that were withdrawn and are still to be announced as cancelled."""
-    return [
-        entry for (calendar, _), entry in sorted(ledger.current.items())
-        if calendar == almanac.calendar_id and entry.standing == "withdrawn"
-        and almanac.as_of - entry.at.date() <= timedelta(days=WITHDRAWN_DAYS)
-    ]
+def tags(edition: Edition) -> list[str]:
+    """Every tag of the observances, in order."""
+    return sorted({tag for observance in edition.almanac.observances.values() for tag in observance.tags})
 
 
 def was_sentence(entry: Entry, language: Language) -> list[str]:
@@ -105,13 +93,46 @@ def was_sentence(entry: Entry, language: Language) -> list[str]:
     }]
 
 
-def _also(almanac: Almanac, day: date, language: Language) -> list[str]:
-    """The first day in the other calendars that the site keeps beside its own."""
-    found = [
-        f"{language.gettext(TITLES[calendar])} {other}" for calendar in almanac.site.also
-        if (other := in_calendar(day, calendar)) is not None
-    ]
-    return [language.listing(found) + "."] if found else []
+# --- events ---------------------------------------------------------------------------------------
+
+
+def _occurrences(edition: Edition, wanted: Callable[[Occurrence], bool]) -> Iterable[Event]:
+    for one in filter(wanted, edition.almanac.occurrences):
+        observance = edition.almanac.observances[one.observance]
+        about = [edition.say(observance.about)] if observance.about else []
+        event = _all_day(
+            edition, edition.entry(one.key), words.event_title(edition.say(observance.name), one, edition.language),
+            [*about, *_reasons(edition.month_of[one.year, one.month], edition.language)],
+            f"observances/{one.observance}/", one.tags,
+        )
+        if edition.site.remind_hours_before is not None and "main" in one.tags:
+            event.add_component(_reminder(edition.site.remind_hours_before, str(event["summary"])))
+        yield event
+
+
+def _months(edition: Edition, wanted: Callable[[Month], bool]) -> Iterable[Event]:
+    _ = edition.language.gettext
+    for month in filter(wanted, edition.almanac.months):
+        title = words.month_title(month, edition.language)
+        if month.standing == "expected":
+            title = _("%(title)s (expected)") % {"title": title}
+        yield _all_day(
+            edition, edition.entry(month_key(month.year, month.month)), title, _reasons(month, edition.language),
+            f"{month.year}/{month_slug(month.month)}/", ("month",), one_day=True,
+        )
+
+
+def _withdrawn(edition: Edition, tag: str | None) -> Iterable[Event]:
+    """Withdrawn lately and still to be announced as cancelled; of one tag, those whose observance still carries it."""
+    almanac = edition.almanac
+    for (calendar, _), entry in sorted(edition.ledger.current.items()):
+        if calendar != almanac.calendar_id or entry.standing != "withdrawn":
+            continue
+        if almanac.as_of - entry.at.date() > timedelta(days=WITHDRAWN_DAYS):
+            continue
+        observance = words.observance_of(entry.key, almanac.observances)
+        if tag is None or (observance is not None and tag in almanac.observances[observance].tags):
+            yield _cancelled(edition, entry)
 
 
 def _reasons(month: Month, language: Language) -> list[str]:
@@ -121,14 +142,23 @@ def _reasons(month: Month, language: Language) -> list[str]:
     ]
 
 
+def _also(edition: Edition, day: date) -> list[str]:
+    """The first day in the other calendars that the site keeps beside its own."""
+    found = [
+        f"{edition.language.gettext(TITLES[calendar])} {other}" for calendar in edition.site.also
+        if (other := in_calendar(day, calendar)) is not None
+    ]
+    return [edition.language.listing(found) + "."] if found else []
+
+
 def _all_day(
-    almanac: Almanac, language: Language, entry: Entry, title: str, paragraphs: Iterable[str], path: str,
-    tags: Iterable[str], *, one_day: bool = False,
+    edition: Edition, entry: Entry, title: str, paragraphs: Iterable[str], path: str, tags: Iterable[str],
+    *, one_day: bool = False,
 ) -> Event:
-    if entry.was is not None and entry.standing != "expected":
-        title = language.gettext("%(title)s (moved)") % {"title": title}
-    paragraphs = [*was_sentence(entry, language), *paragraphs, *_also(almanac, entry.starts, language)]
-    event = _event(almanac, language, entry.key, entry, title, paragraphs, path)
+    if entry.was is not None:
+        title = edition.language.gettext("%(title)s (moved)") % {"title": title}
+    paragraphs = [*was_sentence(entry, edition.language), *paragraphs, *_also(edition, entry.starts)]
+    event = _event(edition, entry.key, entry, title, paragraphs, path)
     _span(event, entry.starts, entry.starts if one_day else entry.ends)
     event.add("status", "TENTATIVE" if entry.standing == "expected" else "CONFIRMED")
     if tags := list(tags):
@@ -136,35 +166,29 @@ def _all_day(
     return event
 
 
-def _cancelled(almanac: Almanac, language: Language, entry: Entry) -> Event:
-    observance = next((name for name in sorted(almanac.observances, key=len, reverse=True)
-                       if entry.key.startswith(f"{name}-")), None)
-    name = entry.key if observance is None else in_language(
-        almanac.observances[observance].name, language.code, almanac.site.language)
-    title = language.gettext("%(title)s (withdrawn)") % {"title": name}
-    reason = language.gettext("Withdrawn: %(reason)s.") % {"reason": entry.because or ""}
-    event = _event(almanac, language, entry.key, entry, title, [reason], "changes/")
+def _cancelled(edition: Edition, entry: Entry) -> Event:
+    _ = edition.language.gettext
+    name = words.published_name(entry.key, edition.almanac.observances, edition.site.language, edition.language)
+    reason = _("Withdrawn: %(reason)s.") % {"reason": entry.because or ""}
+    event = _event(edition, entry.key, entry, _("%(title)s (withdrawn)") % {"title": name}, [reason], "changes/")
     _span(event, entry.starts, entry.ends)
     event.add("status", "CANCELLED")
     return event
 
 
-def _timed(
-    almanac: Almanac, language: Language, entry: Entry, evening: Evening, place: str
-) -> Event | None:
+def _timed(edition: Edition, entry: Entry, evening: Evening, place: str) -> Event | None:
     row: Mapping[str, float | str | None] = evening.at[place]
     sunset, moonset, best = row["sunset_utc"], row["moonset_utc"], row["best_time_utc"]
     lag = row["lag_min"]
     if not isinstance(sunset, str) or not isinstance(moonset, str) or not isinstance(lag, float) or lag <= 0:
         return None
-    zone = almanac.places[place].zone
-    name = in_language(almanac.places[place].name, language.code, almanac.site.language)
-    month = evening.month
+    here = edition.almanac.places[place]
+    name, month, language = edition.say(here.name), evening.month, edition.language
     _ = language.gettext
-    starts, ends = (datetime.fromisoformat(text).astimezone(zone) for text in (sunset, moonset))
-    best_clock = language.clock(datetime.fromisoformat(str(best)).astimezone(zone))
+    starts, ends = (datetime.fromisoformat(text).astimezone(here.zone) for text in (sunset, moonset))
+    best_clock = language.clock(datetime.fromisoformat(str(best)).astimezone(here.zone))
     event = _event(
-        almanac, language, f"evening-{month.year}-{month.month:02d}-{place}", entry,
+        edition, f"evening-{month.year}-{month.month:02d}-{place}", entry,
         _("Look for the crescent of %(month)s: %(place)s") % {
             "month": words.month_title(month, language), "place": name},
         [_("Best time %(best)s.") % {"best": best_clock}, words.basis_sentence(month, language), _(words.EYES)],
@@ -173,29 +197,29 @@ def _timed(
     event.add("dtstart", starts)
     event.add("dtend", ends)
     event.add("location", vText(name))
-    event.add("geo", (almanac.places[place].latitude, almanac.places[place].longitude))
+    event.add("geo", (here.latitude, here.longitude))
     event.add("status", "CONFIRMED" if month.standing != "expected" else "TENTATIVE")
     return event
 
 
 def _event(
-    almanac: Almanac, language: Language, key: str, entry: Entry, title: str, paragraphs: Iterable[str], path: str
+    edition: Edition, key: str, entry: Entry, title: str, paragraphs: Iterable[str], path: str
 ) -> Event:
     """What every event has; its days and status are the caller's."""
-    authority = in_language(almanac.site.authority, language.code, almanac.site.language)
+    language = edition.language
     event = Event()
-    event.add("uid", uid(almanac, key))
+    event.add("uid", edition.uid(key))
     # Without a METHOD, DTSTAMP means when the event was last revised (RFC 5545, 3.8.7.2).
     event.add("dtstamp", entry.at)
     event.add("last-modified", entry.at)
     event.add("sequence", entry.seq)
     event.add("summary", vText(title, params={"LANGUAGE": language.code}))
     event.add("description", vText(
-        "\n\n".join([*paragraphs, words.authority_sentence(authority, language)]),
+        "\n\n".join([*paragraphs, words.authority_sentence(edition.say(edition.site.authority), language)]),
         params={"LANGUAGE": language.code},
     ))
     event.add("transp", "TRANSPARENT")
-    event.add("url", vUri(page(almanac, path)))
+    event.add("url", vUri(edition.page(path)))
     return event
 
 
@@ -205,22 +229,18 @@ def _span(event: Event, starts: date, ends: date) -> None:
     event.add("dtend", ends + timedelta(days=1))
 
 
-def _titled(message: str, almanac: Almanac, language: Language) -> str:
-    name = in_language(almanac.calendar.name, language.code, almanac.site.language)
-    return language.gettext(message) % {"calendar": name}
+def _reminder(hours: int, title: str) -> Alarm:
+    """Shown so many hours before the day's midnight (RFC 5545, 3.6.6)."""
+    alarm = Alarm()
+    alarm.add("action", "DISPLAY")
+    alarm.add("trigger", timedelta(hours=-hours))
+    alarm.add("description", title)
+    return alarm
 
 
-def last_change(almanac: Almanac, ledger: Ledger) -> datetime:
-    """When anything of the calendar was last published anew."""
-    return max(entry.at for (calendar, _), entry in ledger.current.items() if calendar == almanac.calendar_id)
-
-
-def _feed(
-    almanac: Almanac, ledger: Ledger, language: Language, name: str, title: str, events: list[Event],
-    *, zoned: bool = False,
-) -> bytes:
-    address = page(almanac, f"feeds/{name}.ics")
-    authority = in_language(almanac.site.authority, language.code, almanac.site.language)
+def _feed(edition: Edition, name: str, title: str, events: list[Event], *, zoned: bool = False) -> bytes:
+    language = edition.language
+    authority = edition.say(edition.site.authority)
     calendar = Calendar()
     calendar.add("prodid", f"-//Moonwrit//Moonwrit {__version__}//EN")
     calendar.add("version", "2.0")
@@ -231,26 +251,23 @@ def _feed(
     calendar.add("description", vText(
         words.authority_sentence(authority, language), params={"LANGUAGE": language.code}
     ))
-    calendar.add("url", vUri(page(almanac, "")))
-    calendar.add("last-modified", last_change(almanac, ledger))
+    calendar.add("url", vUri(edition.page()))
+    calendar.add("last-modified", edition.last_change)
     # The library leaves out the parameter that RFC 7986, 5.7 requires.
     refresh = vDDDTypes(REFRESH)
     refresh.params["VALUE"] = "DURATION"
     calendar.add("refresh-interval", refresh)
     calendar.add("x-published-ttl", vDuration(REFRESH))
-    source = vUri(address)
+    source = vUri(edition.feed(name))
     source.params["VALUE"] = "URI"
     calendar.add("source", source)
     calendar.add("color", "midnightblue")
     for event in events:
         calendar.add_component(event)
     if zoned:
-        first, last = almanac.evenings[0].on, almanac.evenings[-1].on
+        first, last = edition.almanac.evenings[0].on, edition.almanac.evenings[-1].on
         calendar.add_missing_timezones(date(first.year - 1, 1, 1), date(last.year + 1, 12, 31))
     return bytes(calendar.to_ical())
 
 
-__all__ = [
-    "evenings_feed", "last_change", "months_feed", "observances_feed", "page", "uid", "was_sentence",
-    "withdrawn_lately",
-]
+__all__ = ["evenings_feed", "months_feed", "observances_feed", "tag_feed", "tags", "was_sentence", "year_feed"]

@@ -5,26 +5,25 @@ from __future__ import annotations
 from typing import Any
 
 from moonwrit import __version__
-from moonwrit.almanac import Almanac
-from moonwrit.content.models import in_language
-from moonwrit.journal import Ledger
 from moonwrit.publish import words
 from moonwrit.publish.basis import json_bytes, utc
-from moonwrit.publish.icalendar import last_change, page, uid, was_sentence
-from moonwrit.publish.language import ENGLISH, Language
+from moonwrit.publish.edition import Edition
+from moonwrit.publish.icalendar import was_sentence
 
 
-def calendar_feed(almanac: Almanac, ledger: Ledger, language: Language = ENGLISH) -> bytes:
+def calendar_feed(edition: Edition) -> bytes:
     """All-day events: a start without a zone, a duration in days, ``showWithoutTime``."""
-    months = {(month.year, month.month): month for month in almanac.months}
+    language = edition.language
     entries: list[dict[str, Any]] = []
-    for one in almanac.occurrences:
-        name = in_language(almanac.observances[one.observance].name, language.code, almanac.site.language)
-        month = months[one.year, one.month]
-        entry = ledger.entry(almanac.calendar_id, one.key)
-        entries.append({
+    for one in edition.almanac.occurrences:
+        if one.year < edition.first_rolling_year:
+            continue
+        name = edition.say(edition.almanac.observances[one.observance].name)
+        month = edition.month_of[one.year, one.month]
+        entry = edition.entry(one.key)
+        event: dict[str, Any] = {
             "@type": "Event",
-            "uid": uid(almanac, one.key),
+            "uid": edition.uid(one.key),
             "updated": utc(entry.at),
             "sequence": entry.seq,
             "title": words.event_title(name, one, language),
@@ -39,21 +38,22 @@ def calendar_feed(almanac: Almanac, ledger: Ledger, language: Language = ENGLISH
             "showWithoutTime": True,
             "freeBusyStatus": "free",
             "status": "tentative" if one.standing == "expected" else "confirmed",
-            "keywords": dict.fromkeys(one.tags, True),
             "links": {
                 "page": {
-                    "@type": "Link", "href": page(almanac, f"observances/{one.observance}/"), "rel": "describedby",
+                    "@type": "Link", "href": edition.page(f"observances/{one.observance}/"), "rel": "describedby",
                 },
             },
-        })
-    title = in_language(almanac.calendar.name, language.code, almanac.site.language)
+        }
+        if one.tags:
+            event["keywords"] = dict.fromkeys(one.tags, True)
+        entries.append(event)
     return json_bytes({
         "@type": "Group",
-        "uid": f"{almanac.calendar_id}@{uid(almanac, '').split('@')[1]}",
+        "uid": edition.uid("calendar"),
         "prodId": f"-//Moonwrit//Moonwrit {__version__}//EN",
-        "updated": utc(last_change(almanac, ledger)),
-        "title": title,
+        "updated": utc(edition.last_change),
+        "title": edition.name,
         "locale": language.code,
-        "source": page(almanac, "feeds/calendar.json"),
+        "source": edition.feed("calendar.json"),
         "entries": entries,
     })

@@ -29,6 +29,12 @@ class Language:
         return Locale.parse(_LOCALES.get(self.code, self.code.replace("-", "_")))
 
     @property
+    def own_name(self) -> str:
+        """The name that the language has for itself, as it is written within a line or alone."""
+        name = Locale.parse(self.code.replace("-", "_")).get_display_name() or self.code
+        return name[:1].upper() + name[1:]
+
+    @property
     def direction(self) -> Literal["ltr", "rtl"]:
         return "rtl" if self.locale.text_direction == "rtl" else "ltr"
 

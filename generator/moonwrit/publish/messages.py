@@ -2,39 +2,34 @@
 
 from __future__ import annotations
 
-from moonwrit.almanac import Almanac
-from moonwrit.content.models import in_language
-from moonwrit.publish.icalendar import page
-from moonwrit.publish.language import Language
+from moonwrit.publish.edition import Edition
 from moonwrit.publish.pages import month_path
 from moonwrit.publish.render import Renderer
 
 
-def messages(almanac: Almanac, renderer: Renderer, language: Language) -> dict[str, bytes]:
+def messages(edition: Edition, renderer: Renderer) -> dict[str, bytes]:
     """``messages/<year>-<month>/<language>.txt`` for a text message and ``...-email.txt`` for a letter; those of
-    observances in a folder of their own below the month."""
+    observances in a folder of their own below the month. Paths are from the top of the site."""
     files = {}
-    months = {(month.year, month.month): month for month in almanac.months}
 
     def write(folder: str, kind: str, given: dict[str, object]) -> None:
         for length, ending in (("short", ""), ("email", "-email")):
             text = renderer.text(f"messages/{kind}-{length}.txt", given)
-            files[f"messages/{folder}/{language.code}{ending}.txt"] = text
+            files[f"messages/{folder}/{edition.language.code}{ending}.txt"] = text
 
-    for month in almanac.months:
+    for month in edition.almanac.months:
         if month.decision is not None:
             write(f"{month.year}-{month.month:02d}", "month",
-                  {"month": month, "address": page(almanac, month_path(month))})
-    for one in almanac.occurrences:
+                  {"month": month, "address": edition.page(month_path(month))})
+    for one in edition.almanac.occurrences:
         if "main" not in one.tags:
             continue
-        observance = almanac.observances[one.observance]
-        own = almanac.site.language
+        observance = edition.almanac.observances[one.observance]
         write(f"{one.year}-{one.month:02d}/{one.key}", "observance", {
             "one": one,
-            "name": in_language(observance.name, language.code, own),
-            "about": in_language(observance.about, language.code, own) if observance.about else "",
-            "month": months[one.year, one.month],
-            "address": page(almanac, f"observances/{one.observance}/"),
+            "name": edition.say(observance.name),
+            "about": edition.say(observance.about) if observance.about else "",
+            "month": edition.month_of[one.year, one.month],
+            "address": edition.page(f"observances/{one.observance}/"),
         })
     return files

@@ -9,16 +9,13 @@ from typing import Any
 from xml.etree import ElementTree as ET
 
 from moonwrit import __version__
-from moonwrit.almanac import Almanac
 from moonwrit.calendars import month_slug
-from moonwrit.content.models import in_language
 from moonwrit.content.record import Decision
-from moonwrit.journal import Ledger
 from moonwrit.policy import Month
 from moonwrit.publish import words
 from moonwrit.publish.basis import json_bytes, utc
-from moonwrit.publish.icalendar import last_change, page, uid
-from moonwrit.publish.language import ENGLISH, Language
+from moonwrit.publish.edition import Edition
+from moonwrit.publish.language import Language
 
 _ATOM = "http://www.w3.org/2005/Atom"
 KEPT = 60
@@ -36,70 +33,70 @@ class Notice:
     at: datetime
 
 
-def notices(almanac: Almanac, ledger: Ledger, language: Language = ENGLISH) -> list[Notice]:
+def notices(edition: Edition) -> list[Notice]:
     """Newest first, at most ``KEPT``."""
-    found = [*_decisions(almanac, language), *_changes(almanac, ledger, language)]
+    found = [*_decisions(edition), *_changes(edition)]
     return sorted(found, key=lambda notice: (notice.at, notice.name), reverse=True)[:KEPT]
 
 
-def atom_feed(almanac: Almanac, ledger: Ledger, language: Language = ENGLISH) -> bytes:
+def atom_feed(edition: Edition) -> bytes:
     """``feeds/notices.atom``"""
-    address = page(almanac, "feeds/notices.atom")
-    root = ET.Element("feed", {"xmlns": _ATOM, "xml:lang": language.code})
+    address = edition.feed("notices.atom")
+    root = ET.Element("feed", {"xmlns": _ATOM, "xml:lang": edition.language.code})
     _add(root, "id", address)
-    _add(root, "title", _title(almanac, language))
-    _add(root, "updated", str(utc(_updated(almanac, ledger, language))))
+    _add(root, "title", _title(edition))
+    _add(root, "updated", str(utc(_updated(edition))))
     ET.SubElement(root, "link", {"rel": "self", "href": address, "type": "application/atom+xml"})
-    ET.SubElement(root, "link", {"rel": "alternate", "href": page(almanac, "changes/"), "type": "text/html"})
+    ET.SubElement(root, "link", {"rel": "alternate", "href": edition.page("changes/"), "type": "text/html"})
     author = ET.SubElement(root, "author")
-    _add(author, "name", in_language(almanac.site.community, language.code, almanac.site.language))
+    _add(author, "name", edition.say(edition.site.community))
     _add(root, "generator", "Moonwrit").set("version", __version__)
-    for notice in notices(almanac, ledger, language):
+    for notice in notices(edition):
         entry = ET.SubElement(root, "entry")
-        _add(entry, "id", _id(almanac, notice))
+        _add(entry, "id", _id(edition, notice))
         _add(entry, "title", notice.title)
         _add(entry, "updated", str(utc(notice.at)))
         _add(entry, "published", str(utc(notice.at)))
-        ET.SubElement(entry, "link", {"rel": "alternate", "href": page(almanac, notice.path), "type": "text/html"})
+        ET.SubElement(entry, "link", {"rel": "alternate", "href": edition.page(notice.path), "type": "text/html"})
         _add(entry, "content", notice.text).set("type", "text")
     ET.indent(root, " ")
     text = ET.tostring(root, encoding="unicode")
     return f'<?xml version="1.0" encoding="utf-8"?>\n{text}\n'.encode()
 
 
-def json_feed(almanac: Almanac, ledger: Ledger, language: Language = ENGLISH) -> bytes:
+def json_feed(edition: Edition) -> bytes:
     """``feeds/notices.json``"""
     value: dict[str, Any] = {
         "version": "https://jsonfeed.org/version/1.1",
-        "title": _title(almanac, language),
-        "home_page_url": page(almanac, "changes/"),
-        "feed_url": page(almanac, "feeds/notices.json"),
-        "language": language.code,
-        "authors": [{"name": in_language(almanac.site.community, language.code, almanac.site.language)}],
+        "title": _title(edition),
+        "home_page_url": edition.page("changes/"),
+        "feed_url": edition.feed("notices.json"),
+        "language": edition.language.code,
+        "authors": [{"name": edition.say(edition.site.community)}],
         "items": [
             {
-                "id": _id(almanac, notice),
-                "url": page(almanac, notice.path),
+                "id": _id(edition, notice),
+                "url": edition.page(notice.path),
                 "title": notice.title,
                 "content_text": notice.text,
                 "date_published": utc(notice.at),
             }
-            for notice in notices(almanac, ledger, language)
+            for notice in notices(edition)
         ],
     }
     return json_bytes(value)
 
 
-def _decisions(almanac: Almanac, language: Language) -> Iterable[Notice]:
-    for month in almanac.months:
-        made = [*almanac.superseded.get(month.ordinal, ())]
+def _decisions(edition: Edition) -> Iterable[Notice]:
+    for month in edition.almanac.months:
+        made = [*edition.almanac.superseded.get(month.ordinal, ())]
         if month.decision is not None:
             made.append(month.decision)
         for number, decision in enumerate(made, 1):
             yield Notice(
                 f"decision-{month.year}-{month.month:02d}-{number}",
-                _decision_title(month, decision, language),
-                _decision_text(month, decision, almanac, language),
+                _decision_title(month, decision, edition.language),
+                _decision_text(month, decision, edition),
                 f"{month.year}/{month_slug(month.month)}/",
                 decision.at.astimezone(UTC),
             )
@@ -111,23 +108,23 @@ def _decision_title(month: Month, decision: Decision, language: Language) -> str
     }
 
 
-def _decision_text(month: Month, decision: Decision, almanac: Almanac, language: Language) -> str:
-    _ = language.gettext
+def _decision_text(month: Month, decision: Decision, edition: Edition) -> str:
+    _, language = edition.language.gettext, edition.language
     parts = [_("Decided by %(who)s.") % {"who": decision.by}]
     if decision is not month.decision:
         parts.append(_("This decision has been superseded since."))
     if decision.text is not None:
-        parts.append(in_language(decision.text, language.code, almanac.site.language))
+        parts.append(edition.say(decision.text))
     if decision is month.decision:
         parts += [words.basis_sentence(month, language), words.margin_sentence(month.margin, language)]
     return " ".join(parts)
 
 
-def _changes(almanac: Almanac, ledger: Ledger, language: Language) -> Iterable[Notice]:
-    _ = language.gettext
-    for entry in ledger.moved(almanac.calendar_id):
+def _changes(edition: Edition) -> Iterable[Notice]:
+    _, language = edition.language.gettext, edition.language
+    for entry in edition.ledger.moved(edition.almanac.calendar_id):
         names = {
-            "what": words.published_name(entry.key, almanac.observances, almanac.site.language, language),
+            "what": words.published_name(entry.key, edition.almanac.observances, edition.site.language, language),
             "was": language.full_date(entry.was or entry.starts),
             "is": language.full_date(entry.starts),
             "reason": entry.because or "",
@@ -140,17 +137,16 @@ def _changes(almanac: Almanac, ledger: Ledger, language: Language) -> Iterable[N
         yield Notice(f"change-{entry.key}-{entry.seq}", title % names, text % names, "changes/", entry.at)
 
 
-def _updated(almanac: Almanac, ledger: Ledger, language: Language) -> datetime:
-    return max([last_change(almanac, ledger), *(notice.at for notice in notices(almanac, ledger, language))])
+def _updated(edition: Edition) -> datetime:
+    return max([edition.last_change, *(notice.at for notice in notices(edition))])
 
 
-def _title(almanac: Almanac, language: Language) -> str:
-    name = in_language(almanac.calendar.name, language.code, almanac.site.language)
-    return language.gettext("%(calendar)s: decisions and changes") % {"calendar": name}
+def _title(edition: Edition) -> str:
+    return edition.language.gettext("%(calendar)s: decisions and changes") % {"calendar": edition.name}
 
 
-def _id(almanac: Almanac, notice: Notice) -> str:
-    return page(almanac, f"changes/#{uid(almanac, notice.name)}")
+def _id(edition: Edition, notice: Notice) -> str:
+    return edition.page(f"changes/#{edition.uid(notice.name)}")
 
 
 def _add(parent: ET.Element, name: str, text: str) -> ET.Element:

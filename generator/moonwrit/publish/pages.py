@@ -2,21 +2,27 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from datetime import date, timedelta
 
+import segno
+from markupsafe import Markup, escape
+
 from moonwrit.almanac import Almanac, Evening
 from moonwrit.calendars import month_slug
 from moonwrit.concordance import TITLES, in_calendar
-from moonwrit.content.models import in_language
 from moonwrit.journal import Entry, Ledger, month_key
 from moonwrit.observances import Occurrence
 from moonwrit.policy import Month
 from moonwrit.policy.differ import Beside
 from moonwrit.publish import pictures, words
+from moonwrit.publish.edition import Edition, tree
+from moonwrit.publish.icalendar import tags
 from moonwrit.publish.language import Language
 from moonwrit.publish.render import Page, svg
+from moonwrit.publish.schemas import schemas
 
 NOTED_DAYS = 60
 """A moved date is pointed out on its pages for this many days."""
@@ -33,14 +39,12 @@ class Cell:
     also: tuple[str | None, ...]
 
 
-def pages(
-    almanac: Almanac, ledger: Ledger, language: Language, base: str, almanacs: Sequence[Almanac]
-) -> Iterator[Page]:
-    """Every page of one calendar; ``base`` is the folder in which its pages stand ("" for the main calendar)."""
+def pages(edition: Edition, editions: Sequence[Edition]) -> Iterator[Page]:
+    """Every page of one calendar in one language; ``editions`` are all calendars in it, the main one first."""
+    almanac, ledger, language = edition.almanac, edition.ledger, edition.language
     _ = language.gettext
-    frame = _Frame(almanac, ledger, language, base, almanacs)
-    yield frame.page("", "home", in_language(almanac.calendar.name, language.code, almanac.site.language),
-                     **_home(almanac))
+    frame = _Frame(edition, editions)
+    yield frame.page("", "home", edition.name, **_home(almanac))
     months = almanac.months
     for year in range(months[0].year, months[-1].year + 1):
         yield frame.page(f"{year}/", "year", _("Year %(year)s") % {"year": year}, **_year(almanac, year, language))
@@ -51,45 +55,44 @@ def pages(
         )
     for name, observance in almanac.observances.items():
         found = [one for one in almanac.occurrences if one.observance == name]
-        title = in_language(observance.name, language.code, almanac.site.language)
         yield frame.page(
-            f"observances/{name}/", "observance", title, observance=observance, found=found,
+            f"observances/{name}/", "observance", edition.say(observance.name), observance=observance, found=found,
             notes=[entry for one in found if (entry := _noted(almanac, ledger, one.key))],
         )
     yield frame.page("observances/", "observances", _("Observances"))
     for evening in almanac.evenings:
         title = _("Evening of %(date)s") % {"date": language.long_date(evening.on)}
-        yield frame.page(evening_path(evening), "evening", title, **_evening(almanac, evening, language))
+        yield frame.page(evening_path(evening), "evening", title, **_evening(edition, evening))
     yield frame.page("policy/", "policy", _("The policy"))
     if almanac.others:
         yield frame.page("differences/", "differences", _("Why it is another day elsewhere"), **_differences(almanac))
     yield frame.page("changes/", "changes", _("Changes"), moved=ledger.moved(almanac.calendar_id))
-    yield frame.page("subscribe/", "subscribe", _("Subscribe"))
+    yield frame.page("subscribe/", "subscribe", _("Subscribe"), **_subscribe(edition))
+    yield frame.page("embed/", "embed", _("Put this calendar on your site"), **_embed(edition))
     yield frame.page("reading/", "reading", _("How to read these pages"))
-    if not base:
+    if edition.is_main:
         yield Page("404.html", "missing", _("No such page"), frame.common)
 
 
 class _Frame:
     """What every page of a calendar is given."""
 
-    def __init__(
-        self, almanac: Almanac, ledger: Ledger, language: Language, base: str, almanacs: Sequence[Almanac]
-    ) -> None:
-        self.base = base
+    def __init__(self, edition: Edition, editions: Sequence[Edition]) -> None:
+        almanac = edition.almanac
+        self.base = edition.base
         self.common = {
+            "edition": edition,
             "almanac": almanac,
-            "base": base,
-            "calendars": [
-                ("" if index == 0 else f"{one.calendar_id}/",
-                 in_language(one.calendar.name, language.code, one.site.language))
-                for index, one in enumerate(almanacs)
+            "base": edition.base,
+            "feeds": edition.feeds,
+            "calendars": [(one.base, one.name) for one in editions],
+            "languages": [
+                (code, tree(edition.site, code), Language(code)) for code in edition.site.all_languages
             ],
             "years": range(almanac.months[0].year, almanac.months[-1].year + 1),
             "month_path": month_path,
             "evening_path": evening_path,
-            "month_of": {(month.year, month.month): month for month in almanac.months}.__getitem__,
-            "feeds": f"feeds/{almanac.calendar_id}/" if base else "feeds/",
+            "month_of": edition.month_of.__getitem__,
             "reach": pictures.reach,
         }
 
@@ -180,10 +183,9 @@ def _shift(beside: Beside, one: Occurrence) -> int:
     return next((d.days for d in beside.differences if (d.ours.year, d.ours.month) == (one.year, one.month)), 0)
 
 
-def _evening(almanac: Almanac, evening: Evening, language: Language) -> dict[str, object]:
-    names = {
-        place: in_language(value.name, language.code, almanac.site.language) for place, value in almanac.places.items()
-    }
+def _evening(edition: Edition, evening: Evening) -> dict[str, object]:
+    almanac, language = edition.almanac, edition.language
+    names = {place: edition.say(value.name) for place, value in almanac.places.items()}
     index = almanac.evenings.index(evening)
     return {
         "evening": evening,
@@ -197,6 +199,62 @@ def _evening(almanac: Almanac, evening: Evening, language: Language) -> dict[str
         "before": almanac.months[index - 1] if index else None,
         "coming": evening.on >= almanac.as_of,
         "elsewhere": [(other.beside.method.title, other.beside.months[index].starts) for other in almanac.others],
+    }
+
+
+def _subscribe(edition: Edition) -> dict[str, object]:
+    _ = edition.language.gettext
+    feeds = [
+        _Feed(edition, "observances.ics", _("Observances"), _("Named days, nights and runs of days.")),
+        _Feed(edition, "months.ics", _("First days of the months"), _("One entry for each lunar month.")),
+        _Feed(edition, "evenings.ics", _("Evenings for observers"),
+              _("Each 29th evening at each place, from sunset to moonset.")),
+    ]
+    some = [_Feed(edition, f"tags/{tag}.ics", tag, "") for tag in tags(edition)]
+    return {"subscriptions": feeds, "by_tag": some, "schemas": list(schemas())}
+
+
+@dataclass(frozen=True)
+class _Feed:
+    """A feed to subscribe to."""
+
+    edition: Edition
+    name: str
+    title: str
+    about: str
+
+    @property
+    def address(self) -> str:
+        return self.edition.feed(self.name)
+
+    @property
+    def webcal(self) -> str:
+        """With the scheme that makes phones and desktop calendars subscribe rather than import."""
+        return re.sub(r"^https?:", "webcal:", self.address)
+
+    @property
+    def qr(self) -> Markup:
+        """Dark on light whatever the page's colours, with the quiet zone that readers need (ISO/IEC 18004)."""
+        title = self.edition.language.gettext("QR code: %(address)s") % {"address": self.webcal}
+        made = segno.make(self.webcal, error="m", micro=False)
+        return svg(made.svg_inline(scale=4, border=4, light="#fff", dark="#000", title=title, omitsize=True,
+                                   svgclass="qr", lineclass=None))
+
+
+def _embed(edition: Edition) -> dict[str, object]:
+    _ = edition.language.gettext
+    script, frame = (edition.site_path(f"embed/{edition.base}{edition.language.code}{end}") for end in (".js", ".html"))
+    link = f'<a href="{escape(edition.page())}">{escape(edition.name)}</a>'
+    return {
+        "script": script,
+        "frame": frame,
+        "script_text": (
+            f'<script async src="{escape(script)}"></script>\n<moonwrit-dates count="5">{link}</moonwrit-dates>'
+        ),
+        "frame_text": (
+            f'<iframe src="{escape(frame)}" title="{escape(edition.name)}" width="100%" height="360" '
+            'loading="lazy" style="border:0"></iframe>'
+        ),
     }
 
 

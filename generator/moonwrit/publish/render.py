@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, field
 from datetime import datetime
 from functools import cache
@@ -13,6 +14,7 @@ from markupsafe import Markup
 
 from moonwrit.content.models import Site, in_language
 from moonwrit.publish import labels, words
+from moonwrit.publish.edition import tree
 from moonwrit.publish.language import Language
 from moonwrit.resources import themes_folder
 
@@ -21,7 +23,7 @@ THEME = "moonwrit"
 
 @dataclass(frozen=True, slots=True)
 class Page:
-    """One page: its path in the site, its template, its title, and what the template is given."""
+    """One page: its path in the tree of its language, its template, its title, and what the template is given."""
 
     path: str
     template: str
@@ -29,18 +31,28 @@ class Page:
     given: dict[str, Any] = field(default_factory=dict)
 
     @property
+    def folder(self) -> str:
+        """The path as it is linked to: a folder's own page is its folder."""
+        return self.path.removesuffix("index.html")
+
+    @property
     def root(self) -> str:
-        """From the page to the top of the site."""
+        """From the page to the top of its language's tree."""
         return "../" * (len(PurePosixPath(self.path).parts) - 1)
 
 
 class Renderer:
-    """Renders pages of one language. ``url`` in templates makes a link relative, so that a site works in any folder."""
+    """Renders pages of one language.
+
+    ``url`` in templates makes a link relative, so that a site works in any folder: to a path in the language's tree;
+    ``top`` to a path from the top of the site.
+    """
 
     def __init__(self, site: Site, language: Language) -> None:
+        self.up = "../" if tree(site, language.code) else ""
         self.environment = Environment(
             loader=FileSystemLoader(themes_folder() / THEME),
-            autoescape=lambda name: name is None or not name.endswith(".txt"),
+            autoescape=lambda name: name is None or name.endswith((".html", ".xml")),
             undefined=StrictUndefined,
             trim_blocks=True,
             lstrip_blocks=True,
@@ -52,6 +64,7 @@ class Renderer:
         )
         self.environment.globals.update(
             site=site, L=language, words=words, labels=labels,
+            tree=lambda code: tree(site, code), address=site.address.rstrip("/") + "/",
             say=lambda text: in_language(text, language.code, site.language),
             community=in_language(site.community, language.code, site.language),
             authority=in_language(site.authority, language.code, site.language),
@@ -65,11 +78,16 @@ class Renderer:
         """A plain text, not escaped."""
         return self.environment.get_template(template).render(**given).encode()
 
+    def sitemap(self, pages: Sequence[Page]) -> bytes:
+        """``sitemap.xml`` (sitemaps.org 0.9), each page with its other languages."""
+        return self.environment.get_template("sitemap.xml").render(pages=pages).encode()
+
     def render(self, page: Page) -> bytes:
         template = self.environment.get_template(f"pages/{page.template}.html")
         text = template.render(
             page=page,
             url=lambda path: (page.root + path) or "./",
+            top=lambda path: (page.root + self.up + path) or "./",
             **page.given,
         )
         return text.encode()

@@ -4,44 +4,71 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from pathlib import Path
+from urllib.parse import urlsplit
 
 from moonwrit.almanac import Almanac
 from moonwrit.journal import Ledger, site_marker
-from moonwrit.publish.basis import basis_feed, basis_schema
-from moonwrit.publish.icalendar import evenings_feed, months_feed, observances_feed
+from moonwrit.publish.basis import basis_feed
+from moonwrit.publish.dates import next_feed, year_file
+from moonwrit.publish.edition import Edition
+from moonwrit.publish.embed import embed_files
+from moonwrit.publish.icalendar import evenings_feed, months_feed, observances_feed, tag_feed, tags, year_feed
 from moonwrit.publish.jscalendar import calendar_feed
 from moonwrit.publish.language import Language
 from moonwrit.publish.messages import messages
 from moonwrit.publish.notices import atom_feed, json_feed
 from moonwrit.publish.pages import pages
-from moonwrit.publish.render import Renderer, stylesheet
+from moonwrit.publish.render import Page, Renderer, stylesheet
+from moonwrit.publish.schemas import schema_files
 from moonwrit.publish.writing import put_in_place
 
 
 def site_files(almanacs: Sequence[Almanac], ledger: Ledger) -> dict[str, bytes]:
     """The whole site, path -> content. The first almanac is the main calendar."""
-    language = Language(almanacs[0].site.language)
-    files = {"style.css": stylesheet(), "feeds/schema/basis.schema.json": basis_schema()}
-    renderer = Renderer(almanacs[0].site, language)
-    for index, almanac in enumerate(almanacs):
-        base = "" if index == 0 else f"{almanac.calendar_id}/"
-        for page in pages(almanac, ledger, language, base, almanacs):
-            files[page.path] = renderer.render(page)
-        feeds = {
-            "observances.ics": observances_feed(almanac, ledger, language),
-            "months.ics": months_feed(almanac, ledger, language),
-            "evenings.ics": evenings_feed(almanac, ledger, language),
-            "calendar.json": calendar_feed(almanac, ledger, language),
-            "basis.json": basis_feed(almanac),
-            "notices.atom": atom_feed(almanac, ledger, language),
-            "notices.json": json_feed(almanac, ledger, language),
-        }
-        if index == 0:
-            files.update(messages(almanac, renderer, language))
-        folders = [f"feeds/{almanac.calendar_id}/"] if len(almanacs) > 1 else []
-        for folder in (["feeds/"] if index == 0 else []) + folders:
-            files.update({folder + name: content for name, content in feeds.items()})
+    site = almanacs[0].site
+    files = {"style.css": stylesheet(), **schema_files()}
+    listed: list[Page] = []
+    for code in site.all_languages:
+        language = Language(code)
+        renderer = Renderer(site, language)
+        editions = [Edition(almanac, ledger, language, index == 0) for index, almanac in enumerate(almanacs)]
+        for edition in editions:
+            for page in pages(edition, editions):
+                files[edition.tree + page.path] = renderer.render(page)
+                if edition.tree == "" and page.template != "missing":
+                    listed.append(page)
+            files.update(_feeds(edition, alone=len(editions) == 1))
+            files.update(embed_files(edition, renderer))
+        files.update(messages(editions[0], renderer))
+    files["sitemap.xml"] = Renderer(site, Language(site.language)).sitemap(listed)
+    if urlsplit(site.address).path in ("", "/"):
+        # Robots ask for it at the top of a host only (RFC 9309, 2.3).
+        files["robots.txt"] = f"User-agent: *\nAllow: /\nSitemap: {site.address.rstrip('/')}/sitemap.xml\n".encode()
     return files
+
+
+def _feeds(edition: Edition, *, alone: bool) -> dict[str, bytes]:
+    """The feeds of an edition in their folder; those of the main calendar of several also in one of its own."""
+    almanac = edition.almanac
+    years = range(almanac.months[0].year, almanac.months[-1].year + 1)
+    feeds = {
+        "observances.ics": observances_feed(edition),
+        "months.ics": months_feed(edition),
+        "evenings.ics": evenings_feed(edition),
+        **{f"tags/{tag}.ics": tag_feed(edition, tag) for tag in tags(edition)},
+        **{f"years/{year}.ics": year_feed(edition, year) for year in years},
+        **{f"years/{year}.json": year_file(edition, year) for year in years},
+        "next.json": next_feed(edition),
+        "calendar.json": calendar_feed(edition),
+        "notices.atom": atom_feed(edition),
+        "notices.json": json_feed(edition),
+    }
+    if not edition.tree:
+        feeds["basis.json"] = basis_feed(almanac)
+    folders = [edition.feeds]
+    if edition.is_main and not alone:
+        folders.append(f"feeds/{almanac.calendar_id}/")
+    return {edition.tree + folder + name: content for folder in folders for name, content in feeds.items()}
 
 
 def publish(almanacs: Sequence[Almanac], ledger: Ledger, output: Path) -> int:

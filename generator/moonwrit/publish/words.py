@@ -320,17 +320,23 @@ def rule(when: When, language: Language = ENGLISH) -> str:
 _WEEKDAYS = ("monday", "tuesday", "wednesday", "thursday", "friday", "saturday", "sunday")
 
 
+def observance_of(key: str, observances: Mapping[str, Observance]) -> str | None:
+    """The observance that a key of the journal is an occurrence of; None where the content has it no more."""
+    longest = sorted(observances, key=len, reverse=True)
+    return next((name for name in longest if key.startswith(f"{name}-")), None)
+
+
 def published_name(key: str, observances: Mapping[str, Observance], site_language: str, language: Language) -> str:
     """A key of the journal in words: Ramadan 1447; Ashura 1448; White days 1448, 3."""
     kind, _dash, rest = key.partition("-")
     if kind == "month" and rest[:1].isdigit():
         year, month = rest.split("-")
         return title_of(int(year), int(month), language)
-    for name in sorted(observances, key=len, reverse=True):
-        if key.startswith(f"{name}-"):
-            year, *others = key.removeprefix(f"{name}-").split("-")
-            shown = in_language(observances[name].name, language.code, site_language)
-            if others and observances[name].when.month == "every":
-                return f"{shown}, {title_of(int(year), int(others[0]), language)}"
-            return " ".join([shown, year, *others])
-    return key
+    name = observance_of(key, observances)
+    if name is None:
+        return key
+    year, *others = key.removeprefix(f"{name}-").split("-")
+    shown = in_language(observances[name].name, language.code, site_language)
+    if others and observances[name].when.month == "every":
+        return f"{shown}, {title_of(int(year), int(others[0]), language)}"
+    return " ".join([shown, year, *others])
