@@ -139,7 +139,8 @@ class Anywhere:
 
     On each parallel the westernmost sunset in time sees the oldest Moon, so the search runs along the
     curve on which sunset meets the deadline (or along the date's western end), then closes in on the best
-    latitude by halving the step. Civil dates are those of local mean time.
+    latitude by halving the step. Civil dates are those of local mean time. Before the conjunction, where an
+    elongation shrinks westward, it may fall short of the best share by a few hundredths of a failing one.
     """
 
     before: Before | None = None
@@ -191,8 +192,8 @@ class Anywhere:
 class Within:
     """Anywhere inside an outline, or in a stated share of its area, sampled on a grid.
 
-    Any (``needed`` 0): the best point of the grid, closed in upon by halving the step. Otherwise the share of
-    the area (weighted by the cosine of the latitude) on the grid itself.
+    Any (``needed`` 0): the best point of the grid, closed in upon by halving the step; every polygon is looked
+    at. Otherwise the share of the area (weighted by the cosine of the latitude) on the grid itself.
     """
 
     outline: Outline
@@ -206,7 +207,8 @@ class Within:
         return "anywhere inside the outline"
 
     def decide(self, rule: Rule, evenings: Evenings) -> Verdict:
-        longitude, latitude = self.outline.grid(self.step_deg)
+        grid = self.outline.grid if self.needed > 0 else self.outline.grid_of_each
+        longitude, latitude = grid(self.step_deg)
         keep = np.abs(latitude) <= MAX_LATITUDE_DEG
         longitude, latitude = longitude[keep], latitude[keep]
         points = Places(latitude, longitude, np.zeros_like(latitude))

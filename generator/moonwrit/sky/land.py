@@ -16,6 +16,8 @@ import numpy.typing as npt
 
 from moonwrit.sky.ephemeris import Array
 
+_HALVINGS = 8
+
 
 @dataclass(frozen=True, slots=True)
 class Outline:
@@ -46,14 +48,25 @@ class Outline:
         return float(west), float(south), float(east), float(north)
 
     def grid(self, step_deg: float) -> tuple[Array, Array]:
-        """Longitudes and latitudes [point] of a square grid inside, ``step_deg`` apart."""
+        """Longitudes and latitudes [point] of a square grid inside, ``step_deg`` apart; closer where the outline
+        is too small to hold a point of it, down to one of its own points where it is next to nothing."""
         west, south, east, north = self.bounds()
-        longitude, latitude = np.meshgrid(
-            np.arange(np.floor(west / step_deg) + 0.5, np.ceil(east / step_deg)) * step_deg,
-            np.arange(np.floor(south / step_deg) + 0.5, np.ceil(north / step_deg)) * step_deg,
-        )
-        inside = self.contains(longitude, latitude)
-        return longitude[inside], latitude[inside]
+        for _ in range(_HALVINGS):
+            longitude, latitude = np.meshgrid(
+                np.arange(np.floor(west / step_deg) + 0.5, np.ceil(east / step_deg)) * step_deg,
+                np.arange(np.floor(south / step_deg) + 0.5, np.ceil(north / step_deg)) * step_deg,
+            )
+            inside = self.contains(longitude, latitude)
+            if inside.any():
+                return longitude[inside], latitude[inside]
+            step_deg /= 2
+        point = self.polygons[0][0][:1]
+        return point[:, 0], point[:, 1]
+
+    def grid_of_each(self, step_deg: float) -> tuple[Array, Array]:
+        """As ``grid``, with at least one point in every polygon, however small."""
+        parts = [Outline((polygon,)).grid(step_deg) for polygon in self.polygons]
+        return np.concatenate([part[0] for part in parts]), np.concatenate([part[1] for part in parts])
 
 
 def _in_ring(ring: Array, longitude_deg: Array, latitude_deg: Array) -> npt.NDArray[np.bool_]:
