@@ -50,7 +50,11 @@ def _reach(day_share: float) -> float:
 def margins_strip(months: Sequence[Month], language: Language) -> str:
     """The months of a year one below the other: how far each stood from the limit, and on which side of it."""
     _ = language.gettext
-    width, step, middle, half, top = 360, 22, 240, 96, 24
+    names = [language.month(month.month) for month in months]
+    beside = ceil(max(text_width(name) for name in [*names, _("days")]))
+    step, half, top = 22, 96, 24
+    middle = beside + 16 + half
+    width = middle + half + 20
     bottom = top + step * len(months)
 
     def x_of(share: float) -> float:
@@ -62,7 +66,7 @@ def margins_strip(months: Sequence[Month], language: Language) -> str:
         _text(x_of(-1) - 8, 15, _("not met"), "tick"), _text(middle, 15, _("limit"), "tick", "middle"),
         _text(x_of(1) + 8, 15, _("met"), "tick", "end"),
     ]
-    parts.append(_text(124, bottom + 16, _("days"), "tick", "end"))
+    parts.append(_text(beside, bottom + 16, _("days"), "tick", "end"))
     for share in (-1.0, -0.1, -0.01, 0.01, 0.1, 1.0):
         x = x_of(share)
         parts += [
@@ -70,10 +74,10 @@ def margins_strip(months: Sequence[Month], language: Language) -> str:
             _text(x, bottom + 16, language.number(abs(share), 2), "tick share", "middle"),
         ]
     parts.append(_line("axis", middle, top - 4, middle, bottom + 4))
-    for index, month in enumerate(months):
+    for index, (month, name) in enumerate(zip(months, names, strict=True)):
         y = top + step * (index + 0.5)
         kind = month.margin.closeness
-        parts.append(_text(124, y + 5, language.month(month.month), "name", "end"))
+        parts.append(_text(beside, y + 5, name, "name", "end"))
         if kind == "fixed":
             parts.append(f'<rect class="bar fixed" x="{middle - 9}" y="{y - 4:.1f}" width="18" height="8"/>')
         else:
@@ -84,24 +88,15 @@ def margins_strip(months: Sequence[Month], language: Language) -> str:
     for one in STANDINGS:
         if one not in standings:
             continue
-        name = words.standing(one, language)
-        parts += [_standing(one, x + 6, bottom + 38), _text(x + 19, bottom + 43, name, "tick")]
-        x += 19 + text_width(name) + 12
-    told = [
-        _("%(month)s: %(closeness)s, %(met)s, %(standing)s.") % {
-            "month": language.month(month.month),
-            "closeness": words.closeness(month.margin.closeness, language),
-            "met": _("met") if reach(month.margin) > 0 else _("not met"),
-            "standing": words.standing(month.standing, language),
-        }
-        if month.margin.closeness != "fixed" else
-        _("%(month)s: %(closeness)s, %(standing)s.") % {
-            "month": language.month(month.month),
-            "closeness": words.closeness(month.margin.closeness, language),
-            "standing": words.standing(month.standing, language),
-        }
-        for month in months
-    ]
+        word = words.standing(one, language)
+        parts += [_standing(one, x + 6, bottom + 38), _text(x + 19, bottom + 43, word, "tick")]
+        x += 19 + text_width(word) + 12
+    told = []
+    for month, name in zip(months, names, strict=True):
+        said = [words.closeness(month.margin.closeness, language), words.standing(month.standing, language)]
+        if month.margin.closeness != "fixed":
+            said.insert(1, _("met") if reach(month.margin) > 0 else _("not met"))
+        told.append(f"{name}: {language.listing(said)}.")
     return _svg(width, bottom + 52, _("How far each month stood from the limit"), " ".join(told), "strip", parts)
 
 
