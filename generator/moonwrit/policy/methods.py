@@ -202,7 +202,7 @@ def _evidence(
 
 def _notes(step: Step) -> tuple[Note, ...]:
     """What the walk had to do against the sky."""
-    if step.met_28th:
+    if step.met and step.met_28th:
         return (Note(
             "The test was met on the 28th evening already. A month has at least 29 days, so the month before "
             "was given 29.",
