@@ -33,6 +33,9 @@ QuantityName = Literal[
     "conjunction",
 ]
 _FRAMED = ("altitude", "elongation", "arc-of-vision", "relative-azimuth", "width")
+_AT_BEST = ("arc-of-vision", "relative-azimuth", "width")
+"""Measured at best time, unless ``at`` says otherwise; the others at sunset."""
+_BOUNDS = ("at_least", "more_than", "at_most", "less_than")
 
 
 class Threshold(_Model):
@@ -40,7 +43,8 @@ class Threshold(_Model):
 
     Units: degrees; ``width`` arc minutes, ``lag`` minutes, ``age`` hours since the conjunction. ``conjunction``
     is the conjunction itself, to be over before ``before_hour_ut`` of the evening's civil date (24 is its
-    end) or ``before_dawn`` (the Sun that many degrees down).
+    end) or ``before_dawn`` (the Sun that many degrees down). A test that the old Moon meets as well, such as an
+    elongation alone, asks also for the conjunction to be past.
     """
 
     quantity: QuantityName
@@ -57,7 +61,7 @@ class Threshold(_Model):
 
     @model_validator(mode="after")
     def _complete(self) -> Threshold:
-        given = [k for k in ("at_least", "more_than", "at_most", "less_than") if getattr(self, k) is not None]
+        given = [k for k in _BOUNDS if getattr(self, k) is not None]
         deadlines = [k for k in ("before_hour_ut", "before_dawn") if getattr(self, k) is not None]
         if self.quantity == "conjunction":
             if len(deadlines) != 1 or given:
@@ -80,6 +84,26 @@ class Threshold(_Model):
             raise ValueError(f"{self.quantity} has a time of its own; drop at")
         return self
 
+    @property
+    def measured_as(self) -> tuple[str | None, ...]:
+        """What makes two thresholds speak of one number."""
+        at = self.at or ("best-time" if self.quantity in _AT_BEST else "sunset")
+        return self.quantity, self.frame, self.limb or "centre", self.air or "airless", at
+
+    @property
+    def bound(self) -> str:
+        """In words: "at_least 5"."""
+        return next(f"{k} {value:g}" for k in _BOUNDS if (value := getattr(self, k)) is not None)
+
+    def agrees_with(self, other: Threshold) -> bool:
+        """Can a number satisfy both?"""
+        floors = [v for t in (self, other) for v in (t.at_least, t.more_than) if v is not None]
+        roofs = [v for t in (self, other) for v in (t.at_most, t.less_than) if v is not None]
+        if not floors or not roofs or floors[0] < roofs[0]:
+            return True
+        ends_included = all(t.more_than is None and t.less_than is None for t in (self, other))
+        return floors[0] == roofs[0] and ends_included
+
 
 def _test_kind(value: Any) -> str:
     if isinstance(value, dict):
@@ -95,6 +119,17 @@ class AllOf(_Model):
     """Every test in the list must be met, at the same place."""
 
     all: Annotated[list[Test], Field(min_length=1)]
+
+    @model_validator(mode="after")
+    def _possible(self) -> AllOf:
+        thresholds = [test for test in self.all if isinstance(test, Threshold) and test.quantity != "conjunction"]
+        for index, one in enumerate(thresholds):
+            for other in thresholds[:index]:
+                if one.measured_as == other.measured_as and not one.agrees_with(other):
+                    raise ValueError(
+                        f"no {one.quantity} is {other.bound} and {one.bound} at once; drop one of them, or say any"
+                    )
+        return self
 
 
 class AnyOf(_Model):
@@ -112,11 +147,15 @@ Test = Annotated[
 ]
 
 
+EARLIEST_SUNSET_HOUR_UT = 3
+"""At 60 degrees and the longitude of 180 east the earliest sunsets of the year come between 2:52 and 3:00 UT."""
+
+
 class Deadline(_Model):
     """Sunset must come before a UT hour of the evening's civil date (24 is its end), or before the dawn at a
     place (the Sun ``depression`` degrees down, 18 unless said)."""
 
-    hour_ut: Annotated[float, Field(ge=0, le=48)] | None = None
+    hour_ut: Annotated[float, Field(le=48)] | None = None
     dawn_at: Identifier | None = None
     depression: Annotated[float, Field(ge=0.5, le=20)] | None = None
 
@@ -126,6 +165,11 @@ class Deadline(_Model):
             raise ValueError("say one of hour_ut and dawn_at")
         if self.depression is not None and self.dawn_at is None:
             raise ValueError("depression goes with dawn_at; drop it")
+        if self.hour_ut is not None and self.hour_ut < EARLIEST_SUNSET_HOUR_UT:
+            raise ValueError(
+                f"no sunset between 60 S and 60 N comes before {EARLIEST_SUNSET_HOUR_UT}:00 UT of its date; "
+                "give a later hour_ut, at most 48"
+            )
         return self
 
 

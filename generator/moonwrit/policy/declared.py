@@ -17,7 +17,7 @@ from moonwrit.policy.conditions import Condition, Either, Every, Scoped
 from moonwrit.policy.methods import Method
 from moonwrit.policy.names import published_names
 from moonwrit.policy.published import NamedPlace, published
-from moonwrit.policy.scopes import Anywhere, AtPlaces, Before, Scope, Within
+from moonwrit.policy.scopes import MAX_LATITUDE_DEG, Anywhere, AtPlaces, Before, Scope, Within
 from moonwrit.policy.walk import Era
 from moonwrit.sky import Places
 from moonwrit.sky import comparison as compare
@@ -25,6 +25,9 @@ from moonwrit.sky.criteria import criterion
 from moonwrit.sky.land import Outline
 
 T = TypeVar("T")
+
+GRID_DEG = 0.5
+"""How finely the outline of a region is looked at."""
 
 
 def method(name: str, content: Content | None = None, place: NamedPlace | None = None) -> Method:
@@ -120,9 +123,11 @@ class _Reader:
         assert clause.where is not None
         test = clause.test
         rule = self._pointing((*path, "test"), lambda: _rule(test))
-        return Scoped(rule, self._scope(clause.where))
+        if _old_moon_meets(test):
+            rule = compare.All((rule, compare.Comparison(compare.age(), ">", 0.0)))
+        return Scoped(rule, self._scope(clause.where, (*path, "where")))
 
-    def _scope(self, where: declared.Where) -> Scope:
+    def _scope(self, where: declared.Where, path: tuple[str | int, ...]) -> Scope:
         if where.place is not None:
             return self._at([where.place], 1.0)
         if where.any_of is not None:
@@ -132,19 +137,26 @@ class _Reader:
         if where.of is not None:
             return self._at(self._place_ids(where.of), where.share or 1.0)
         if where.of_area is not None:
-            return Within(self._outline(where.of_area), where.share or 1.0, step_deg=0.5)
+            return Within(self._outline(where.of_area, (*path, "of_area")), where.share or 1.0, step_deg=GRID_DEG)
         if where.within is not None:
-            return Within(self._outline(where.within), step_deg=0.5)
+            return Within(self._outline(where.within, (*path, "within")), step_deg=GRID_DEG)
         if where.shares_night_with is not None:
             night = named_place(self.content, where.shares_night_with)
             return Anywhere(Before(dawn_at=Places.of([night.row])))
         return Anywhere(None if where.before is None else self._deadline(where.before))
 
-    def _outline(self, region: str) -> Outline:
-        return Outline(tuple(
+    def _outline(self, region: str, path: tuple[str | int, ...]) -> Outline:
+        outline = Outline(tuple(
             tuple(np.array(ring, dtype=np.float64) for ring in polygon)
             for polygon in self.content.outlines[region]
         ))
+        if not (np.abs(outline.grid_of_each(GRID_DEG)[1]) <= MAX_LATITUDE_DEG).any():
+            raise self.content.error(
+                "policies.yaml", (self.name, *path),
+                f'the outline of "{region}" lies beyond {MAX_LATITUDE_DEG:g} degrees of latitude, where there may be '
+                "no sunset", "name places instead",
+            )
+        return outline
 
     def _deadline(self, before: declared.Deadline) -> Before:
         if before.dawn_at is None:
@@ -203,6 +215,21 @@ def _rule(test: declared.Criterion | declared.AllOf | declared.AnyOf | declared.
     if isinstance(test, declared.AnyOf):
         return compare.Any(tuple(_rule(part) for part in test.any))
     return _threshold(test)
+
+
+def _old_moon_meets(test: declared.Test) -> bool:
+    """Can a test be met as well before the conjunction as after it? Then all months would have 29 days."""
+    if isinstance(test, declared.AllOf):
+        return all(map(_old_moon_meets, test.all))
+    if isinstance(test, declared.AnyOf):
+        return any(map(_old_moon_meets, test.any))
+    if isinstance(test, declared.Criterion) or test.quantity == "conjunction":
+        return False
+    return test.quantity in _UNSIGNED or (test.at_least is None and test.more_than is None)
+
+
+_UNSIGNED = ("elongation", "relative-azimuth", "width", "illuminated-percent")
+"""As large a day before the conjunction as a day after it."""
 
 
 def _threshold(test: declared.Threshold) -> compare.Comparison:

@@ -126,7 +126,7 @@ class Before:
     def tt(self, evenings: Evenings) -> Array:
         """[lunation, evening]"""
         if self.dawn_at is not None:
-            dawn: Array = evenings.at(self.dawn_at).dawn_tt(self.depression_deg)[..., 0]
+            dawn: Array = evenings.at(self.dawn_at).night_end_tt(self.depression_deg)[..., 0]
             return dawn
         assert self.hour_ut is not None
         midnight_ut = evenings.day.astype(np.float64) + 1721424.5

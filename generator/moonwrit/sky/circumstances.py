@@ -248,6 +248,12 @@ class Circumstances:
         )
         return Instant(self.windows, tt, self.places)
 
+    def night_end_tt(self, depression_deg: float = 18.0) -> Array:
+        """The dawn that ends the evening's night; where the Sun does not sink so far, when it is lowest, to which
+        dawn draws near as the summer's nights grow light."""
+        dawn = self.dawn_tt(depression_deg)
+        return np.where(np.isnan(dawn), self.noon_tt + 0.5, dawn)
+
     def dawn_tt(self, depression_deg: float = 18.0) -> Array:
         """Dawn that ends the evening's night: the Sun's centre at that depression, before the noon of the
         next civil date."""

@@ -211,8 +211,9 @@ def conjunction_before_hour(hour: float) -> Quantity:
 
 
 def conjunction_before_dawn(depression_deg: float = 18.0) -> Quantity:
-    """Hours by which the conjunction comes before the dawn that ends the evening's night, there."""
+    """Hours by which the conjunction comes before the dawn that ends the evening's night, there (in light nights,
+    before the Sun is lowest)."""
     return Quantity(
         "conjunction before dawn", f"Sun {depression_deg:g} deg below the horizon", "h", 24.0,
-        lambda c: (c.dawn_tt(depression_deg) - c.conjunction_tt[:, None, None]) * 24,
+        lambda c: (c.night_end_tt(depression_deg) - c.conjunction_tt[:, None, None]) * 24,
     )
