@@ -249,6 +249,29 @@ def test_a_decision_leaves_nothing_open_and_narrows_what_follows() -> None:
         assert window(narrowed)[1] <= window(wide)[1]
 
 
+def test_after_a_decision_the_window_is_what_the_rules_leave_open() -> None:
+    """29 or 30 days after the day decided, but not before the evening after the conjunction, nor, where that leaves a
+    choice, after the second evening that follows it: reckoned here from the sunsets themselves."""
+    asked = method("yallop-b", None, MELBOURNE)
+    months = asked.months(1447, 1448)
+    spans = set()
+    for before, month in pairwise(months):
+        conjunction = month.evidence.conjunction
+        assert conjunction is not None
+        days = [conjunction.date() + timedelta(days=n) for n in (-1, 0, 1)]
+        sunsets = [str(evening_at(day, [MELBOURNE])[0]["sunset_utc"]) for day in days]
+        after = (day for day, at in zip(days, sunsets, strict=True) if datetime.fromisoformat(at) > conjunction)
+        first = next(after) + timedelta(days=1)
+        for start in window(before):
+            earliest = max(start + timedelta(days=29), first)
+            latest = max(earliest, min(start + timedelta(days=30), first + timedelta(days=2)))
+            after_it = asked.months(1447, 1448, {before.ordinal: decided(before, start)})
+            found = next(each for each in after_it if each.ordinal == month.ordinal)
+            assert window(found) == (min(earliest, found.starts), max(latest, found.starts))
+            spans.add(((window(found)[0] - start).days, (window(found)[1] - start).days))
+    assert spans == {(29, 30), (29, 29), (30, 30)}  # open, and closed by the Moon on either side
+
+
 def window(month: Month) -> tuple[date, date]:
     assert month.window is not None
     return month.window
