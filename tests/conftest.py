@@ -20,7 +20,8 @@ import pytest
 ROOT = Path(__file__).resolve().parent.parent
 NODE_MODULES = ROOT / ".judges" / "node_modules"
 
-# What each judge needs: commands on the path, and files below NODE_MODULES (those with a slash).
+# What each judge needs: commands on the path, files below NODE_MODULES (those with a slash), and introspection data of
+# a system library (with "gi:").
 JUDGES = {
     "node": ("node",),
     "java": ("java", "javac"),  # a single-file program is compiled as it starts
@@ -28,10 +29,21 @@ JUDGES = {
     "khal": ("khal",),
     "vdirsyncer": ("vdirsyncer",),
     "vnu": ("java", "vnu-jar/build/dist/vnu.jar"),
+    "libical": ("/usr/bin/python3", "gi:ICalGLib-3.0"),
+    "ajv": ("node", "ajv/package.json", "ajv-formats/package.json"),
+    "node-ical": ("node", "node-ical/package.json"),
+    "jsqr": ("node", "chromium", "playwright-core/package.json", "jsqr/package.json"),
     "ical.js": ("node", "ical.js/package.json"),
     "playwright": ("node", "chromium", "playwright-core/package.json"),
     "axe": ("node", "chromium", "playwright-core/package.json", "axe-core/axe.min.js"),
 }
+
+
+def _present(need: str) -> bool:
+    if need.startswith("gi:"):
+        typelib = need.removeprefix("gi:") + ".typelib"
+        return any(Path("/usr/lib").glob(f"*/girepository-1.0/{typelib}"))
+    return (NODE_MODULES / need).exists() if "/" in need else shutil.which(need) is not None
 
 
 def _require(judge: str) -> None:
@@ -39,7 +51,7 @@ def _require(judge: str) -> None:
     if judge not in JUDGES:
         pytest.fail(f"no judge is called {judge!r}; known: {', '.join(JUDGES)}", pytrace=False)
     needs = JUDGES[judge]
-    if all((NODE_MODULES / need).exists() if "/" in need else shutil.which(need) for need in needs):
+    if all(map(_present, needs)):
         return
     reason = f"judge {judge} is not installed (make judges)"
     if os.environ.get("MOONWRIT_JUDGES") == "required":

@@ -117,6 +117,28 @@ def test_a_decision_written_down_late_explains_its_change(desk: Desk) -> None:
     assert [one["starts"] for one in desk.lines() if one["key"] == "month-1448-09"] == ["2027-02-09", "2027-02-08"]
 
 
+def test_a_decision_that_was_published_explains_no_later_change(desk: Desk) -> None:
+    """A decision as expected, published; then another policy for the months to come: that is a silent change."""
+    desk.publish(JUNE)
+    desk.decide("2026-07-15T21:00:00+10:00", "1448-02", "2026-07-16", "sighted")
+    desk.publish("2026-07-15T21:05:00+10:00")
+    desk.change(POLICY_CHANGE[0], POLICY_CHANGE[1], "    accept: [A, B, C, D, E]")
+    said = desk.publish("2026-07-20T00:00:00Z", exit_code=3)
+    assert "month-1448-05: was 2026-10-13 (expected) -> would be 2026-10-12 (expected)" in said
+
+
+def test_the_decision_on_the_next_month_explains_a_run_that_ends_sooner(desk: Desk) -> None:
+    """Shawwal a day early: Ramadan keeps its first day and loses its last."""
+    desk.decide("2027-02-07T21:00:00+11:00", "1448-09", "2027-02-09", "completed")
+    desk.publish("2027-02-07T22:00:00+11:00")
+    desk.decide("2027-03-09T21:00:00+11:00", "1448-10", "2027-03-10", "sighted")
+    desk.publish("2027-03-09T21:05:00+11:00")
+    ramadan = [one for one in desk.lines() if one["key"] == "ramadan-1448"]
+    assert [(one["starts"], one["ends"]) for one in ramadan] == [
+        ("2027-02-09", "2027-03-10"), ("2027-02-09", "2027-03-09")]
+    assert "on month 1448-10" in str(ramadan[-1]["because"])
+
+
 def test_a_published_decision_cannot_be_altered_in_its_place(desk: Desk) -> None:
     """A settled date moves by a later decision only, never by rewriting the one that was published."""
     desk.decide("2027-02-07T21:00:00+11:00", "1448-09", "2027-02-08", "sighted")

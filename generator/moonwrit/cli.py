@@ -104,7 +104,7 @@ def publish(folder: Path, output: Path, as_of: date | None) -> None:
     with _progress("Computing months and observances"):
         almanacs = assemble(content, as_of or _today(content, now), until)
         seen = [entry for entry in journal.read(folder) if until is None or entry.at <= until]
-        ledger = journal.hold_against(seen, almanacs, content.decisions, content.amendments, until or now)
+        ledger = journal.hold_against(seen, almanacs, content.amendments, until or now)
     with _progress("Writing the site"):
         # A replay leaves nothing in the site for the journal to recover.
         files = put(almanacs, ledger if as_of is None else replace(ledger, added=()), output)

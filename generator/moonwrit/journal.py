@@ -114,14 +114,13 @@ def read(folder: Path) -> tuple[Entry, ...]:
 
 
 def hold_against(
-    entries: Sequence[Entry], almanacs: Iterable[Almanac], decisions: Iterable[Decision],
-    amendments: Iterable[Amendment], now: datetime,
+    entries: Sequence[Entry], almanacs: Iterable[Almanac], amendments: Iterable[Amendment], now: datetime
 ) -> Ledger:
     """What the build changes of what was published.
 
-    A change of a date is explained by a decision on that month or an earlier one, or by an amendment that covers it,
-    made after the date was published; and by the first decision on a month that was only expected so far, for it may
-    be written down late. Raises SilentChangeError, with the list, where a change is not explained.
+    A change of a date is explained by a decision that moves its month or an earlier one in this build, or by an
+    amendment that covers it, made after the date was published. Raises SilentChangeError, with the list, where a
+    change is not explained.
     """
     last: dict[tuple[str, str], Entry] = {}
     for entry in entries:
@@ -132,7 +131,7 @@ def hold_against(
     added: list[Entry] = []
     silent: list[str] = []
     for almanac in almanacs:
-        reasons = _Reasons(tuple(decisions), tuple(amendments), _first_decided(almanac, last))
+        reasons = _Reasons(_moving(almanac, last), tuple(amendments))
         seen = set()
         for fresh, month in _published_by(almanac, stamp):
             seen.add(fresh.key)
@@ -196,13 +195,15 @@ def recover(folder: Path, marker: Path, address: str) -> None:
 
 @dataclass(frozen=True, slots=True)
 class _Reasons:
-    decisions: tuple[Decision, ...]
+    """``moving``: the decisions that move the first day of their own month in this build; those that were published
+    before have had their effect and explain nothing any more."""
+
+    moving: tuple[Decision, ...]
     amendments: tuple[Amendment, ...]
-    first_decided: tuple[Decision, ...]
 
     def for_change(self, key: str, ordinal: int, since: datetime) -> str | None:
         """Why a thing that hangs on the month ``ordinal`` may have changed since it was published."""
-        made = [d for d in self.decisions if d.ordinal <= ordinal and (d.at > since or d in self.first_decided)]
+        made = [decision for decision in self.moving if decision.ordinal <= ordinal]
         if made:
             latest = max(made, key=lambda decision: (decision.ordinal, decision.at))
             return f"decision of {latest.at.date().isoformat()} on month {latest.month} by {latest.by}"
@@ -212,13 +213,14 @@ class _Reasons:
         return None
 
 
-def _first_decided(almanac: Almanac, last: Mapping[tuple[str, str], Entry]) -> tuple[Decision, ...]:
-    """The decisions of this build on months that were only expected when they were last published."""
+def _moving(almanac: Almanac, last: Mapping[tuple[str, str], Entry]) -> tuple[Decision, ...]:
+    """The decisions that move their month: made since it was published, or the first on it, written down late."""
     return tuple(
         month.decision for month in almanac.months
         if month.decision is not None
         and (known := last.get((almanac.calendar_id, month_key(month.year, month.month)))) is not None
-        and known.standing == "expected"
+        and known.starts != month.starts
+        and (known.standing == "expected" or month.decision.at > known.at)
     )
 
 
@@ -229,7 +231,6 @@ def _published_by(almanac: Almanac, stamp: datetime) -> Iterable[tuple[Entry, Mo
         yield Entry(almanac.calendar_id, key, month.starts, month.ends, month.standing, 0, stamp), month
     month_of = {(month.year, month.month): month for month in almanac.months}
     for one in almanac.occurrences:
-        # Its last days hang on where the month ends, and so on the month after it.
         entry = Entry(almanac.calendar_id, one.key, one.starts, one.ends, one.standing, 0, stamp)
         yield entry, month_of[one.year, one.month]
 
@@ -257,7 +258,8 @@ def _compare(
             return
         entry = replace(fresh, standing=standing, seq=known.seq + 1)
     else:
-        because = reasons.for_change(fresh.key, month.ordinal, known.at)
+        # An observance's last days may hang on where the month ends, and so on the month after it.
+        because = reasons.for_change(fresh.key, month.ordinal + (not is_month), known.at)
         if because is None:
             silent.append(_silent_line(known, fresh, month))
             return

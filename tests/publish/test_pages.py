@@ -3,11 +3,8 @@
 from __future__ import annotations
 
 import filecmp
-import os
 import re
 import shutil
-import subprocess
-import sys
 from collections.abc import Callable, Iterator
 from html.parser import HTMLParser
 from pathlib import Path
@@ -15,8 +12,8 @@ from typing import Any
 from urllib.parse import unquote, urldefrag, urljoin, urlsplit
 
 import pytest
+from page_values import ROOT, build
 
-ROOT = Path(__file__).resolve().parent.parent.parent
 HERE = "https://site.example/"
 
 # One page of each kind, chosen for what stands on it: reports, amendments, decisions, a long table.
@@ -26,17 +23,6 @@ KINDS = (
 )
 FRAMED = "embed/en.html"
 """The page that other sites show in a frame: the only one with a script."""
-
-
-def build(content: Path, output: Path, **environment: str) -> Path:
-    """The site of a content folder as of 1 December 2026, built by the command."""
-    done = subprocess.run(
-        [sys.executable, "-m", "moonwrit.cli", "publish", "--as-of", "2026-12-01",
-         "--content", str(content), "--output", str(output)],
-        capture_output=True, encoding="utf-8", env={**os.environ, **environment},
-    )
-    assert (done.returncode, done.stderr) == (0, ""), done.stderr
-    return output
 
 
 @pytest.fixture(scope="session")

@@ -21,6 +21,7 @@ from moonwrit.policy import Month
 from moonwrit.publish import words
 from moonwrit.publish.edition import Edition
 from moonwrit.publish.language import Language
+from moonwrit.publish.timezones import vtimezone
 
 REFRESH = timedelta(hours=12)
 """A lower bound on how often a client should ask (RFC 7986, 5.7); clients keep their own hours."""
@@ -100,8 +101,10 @@ def _occurrences(edition: Edition, wanted: Callable[[Occurrence], bool]) -> Iter
     for one in filter(wanted, edition.almanac.occurrences):
         observance = edition.almanac.observances[one.observance]
         about = [edition.say(observance.about)] if observance.about else []
+        entry = edition.entry(one.key)
         event = _all_day(
-            edition, edition.entry(one.key), words.event_title(edition.say(observance.name), one, edition.language),
+            edition, entry,
+            words.event_title(edition.say(observance.name), one, edition.language, moved=entry.was is not None),
             [*about, *_reasons(edition.month_of[one.year, one.month], edition.language)],
             f"observances/{one.observance}/", one.tags,
         )
@@ -111,14 +114,12 @@ def _occurrences(edition: Edition, wanted: Callable[[Occurrence], bool]) -> Iter
 
 
 def _months(edition: Edition, wanted: Callable[[Month], bool]) -> Iterable[Event]:
-    _ = edition.language.gettext
     for month in filter(wanted, edition.almanac.months):
+        entry = edition.entry(month_key(month.year, month.month))
         title = words.month_title(month, edition.language)
-        if month.standing == "expected":
-            title = _("%(title)s (expected)") % {"title": title}
         yield _all_day(
-            edition, edition.entry(month_key(month.year, month.month)), title, _reasons(month, edition.language),
-            f"{month.year}/{month_slug(month.month)}/", ("month",), one_day=True,
+            edition, entry, words.remarked(title, month.standing, edition.language, moved=entry.was is not None),
+            _reasons(month, edition.language), f"{month.year}/{month_slug(month.month)}/", ("month",), one_day=True,
         )
 
 
@@ -155,8 +156,6 @@ def _all_day(
     edition: Edition, entry: Entry, title: str, paragraphs: Iterable[str], path: str, tags: Iterable[str],
     *, one_day: bool = False,
 ) -> Event:
-    if entry.was is not None:
-        title = edition.language.gettext("%(title)s (moved)") % {"title": title}
     paragraphs = [*was_sentence(entry, edition.language), *paragraphs, *_also(edition, entry.starts)]
     event = _event(edition, entry.key, entry, title, paragraphs, path)
     _span(event, entry.starts, entry.starts if one_day else entry.ends)
@@ -262,11 +261,13 @@ def _feed(edition: Edition, name: str, title: str, events: list[Event], *, zoned
     source.params["VALUE"] = "URI"
     calendar.add("source", source)
     calendar.add("color", "midnightblue")
+    if zoned:
+        first, last = edition.almanac.evenings[0].on.year, edition.almanac.evenings[-1].on.year
+        zones = {place.timezone: place.zone for place in edition.almanac.places.values()}
+        for _, zone in sorted(zones.items()):
+            calendar.add_component(vtimezone(zone, first, last))
     for event in events:
         calendar.add_component(event)
-    if zoned:
-        first, last = edition.almanac.evenings[0].on, edition.almanac.evenings[-1].on
-        calendar.add_missing_timezones(date(first.year - 1, 1, 1), date(last.year + 1, 12, 31))
     return bytes(calendar.to_ical())
 
 

@@ -26,7 +26,7 @@ def calendar_feed(edition: Edition) -> bytes:
             "uid": edition.uid(one.key),
             "updated": utc(entry.at),
             "sequence": entry.seq,
-            "title": words.event_title(name, one, language),
+            "title": words.event_title(name, one, language, moved=entry.was is not None),
             "description": "\n\n".join([
                 *was_sentence(entry, language), words.basis_sentence(month, language),
                 words.margin_sentence(month.margin, language),

@@ -5,7 +5,7 @@ Used by pages, feeds and ``moonwrit why``. Every sentence is looked up in the la
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from datetime import date
 
 from moonwrit.content.models import Observance, When, in_language
@@ -271,16 +271,22 @@ def occurrence_title(name: str, occurrence: Occurrence, language: Language = ENG
     }
 
 
-def event_title(name: str, occurrence: Occurrence, language: Language = ENGLISH) -> str:
-    """The title in a feed, which says by itself when a night begins and that a date is only expected."""
+def event_title(name: str, occurrence: Occurrence, language: Language = ENGLISH, *, moved: bool = False) -> str:
+    """The title in a feed, which says by itself when a night begins, and that a date is only expected or has moved."""
     _ = language.gettext
-    names = {"title": occurrence_title(name, occurrence, language)}
-    expected = occurrence.standing == "expected"
-    if occurrence.night and expected:
-        return _("%(title)s (begins at sunset; expected)") % names
-    if occurrence.night:
-        return _("%(title)s (begins at sunset)") % names
-    return _("%(title)s (expected)") % names if expected else names["title"]
+    remarks = [_("begins at sunset")] if occurrence.night else []
+    return remarked(occurrence_title(name, occurrence, language), occurrence.standing, language, remarks, moved=moved)
+
+
+def remarked(
+    title: str, standing: Standing, language: Language, remarks: Sequence[str] = (), *, moved: bool = False
+) -> str:
+    """Eid al-Fitr (expected; moved)"""
+    _ = language.gettext
+    said = [*remarks, *([_("expected")] if standing == "expected" else []), *([_("moved")] if moved else [])]
+    if not said:
+        return title
+    return _("%(title)s (%(remarks)s)") % {"title": title, "remarks": _("; ").join(said)}
 
 
 def span(starts: date, ends: date, language: Language = ENGLISH) -> str:
