@@ -431,3 +431,50 @@ def test_sitemap_and_canonical_links_agree(site: Path) -> None:
     assert listed == canonical
     assert len(listed) > 100
     assert "Sitemap: https://calendar.three-harbours.example/sitemap.xml" in (site / "robots.txt").read_text()
+
+
+# --- on other sites -------------------------------------------------------------------------------
+
+
+@pytest.mark.judge("jsqr")
+def test_qr_codes_lead_to_the_feeds(site: Path, node: Callable[..., Any], chromium: str) -> None:
+    """Read from the screen by another library, on a dark page: the webcal address of each subscription."""
+    for folder in ("", "ar/"):
+        read = node(HERE / "read_qr.js", chromium, site / folder / "subscribe/index.html")
+        feeds = f"webcal://calendar.three-harbours.example/{folder}feeds/"
+        assert read == [feeds + name for name in ("observances.ics", "months.ics", "evenings.ics")]
+
+
+def test_the_script_for_other_sites_is_small(site: Path) -> None:
+    scripts = sorted((site / "embed").rglob("*.js"))
+    assert len(scripts) == 6
+    for path in scripts:
+        assert path.stat().st_size < 6000, path
+
+
+@pytest.mark.judge("axe")
+def test_another_origin_shows_the_dates(site: Path, node: Callable[..., Any], chromium: str) -> None:
+    """In Chromium, from a second origin and without a word of permission from the first: the list in the host's font
+    and colour, right to left in Arabic, reached by keyboard, without a fault that axe-core knows; where the script is
+    blocked, or nothing is left to show, the link that stands in the element."""
+    found = node(HERE / "embedded.js", chromium, site)
+    for name, seen in found.items():
+        assert seen["faults"] == [], name
+        assert seen["strangers"] == [], name
+        assert seen.get("violations", []) == [], name
+    english = found["/en"]
+    assert english["titles"] == ["Ramadan", AWKWARD, "Day of Arafah"]
+    assert english["when"][0] == "Tue 9 Feb 2027 to Wed 10 Mar 2027 (expected)"
+    assert english["today"] == "21 Jumada al-Thani 1448"
+    assert (english["direction"], english["language"]) == ("ltr", "en")
+    assert english["font"] == "monospace"
+    assert english["colour"] == "rgb(10, 60, 10)"
+    assert english["focus"] == "Ramadan"
+    assert english["links"][0] == "https://calendar.three-harbours.example/observances/ramadan/"
+    assert found["/strict"]["titles"] == english["titles"]
+    assert found["/ar"]["direction"] == found["/frame"]["direction"] == "rtl"
+    assert found["/ar"]["titles"][0] == "رمضان"
+    assert found["/ar"]["links"][0] == "https://calendar.three-harbours.example/ar/observances/ramadan/"
+    for name in ("/blocked", "/late"):
+        assert found[name]["fallback"] == "Fallback"
+        assert found[name]["focus"] == "Fallback"
