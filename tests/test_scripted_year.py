@@ -7,13 +7,8 @@ is held against the feed itself.
 
 from __future__ import annotations
 
-import functools
-import http.server
 import json
-import os
 import shutil
-import subprocess
-import threading
 from collections import Counter
 from collections.abc import Iterator
 from dataclasses import dataclass
@@ -24,14 +19,10 @@ from xml.etree import ElementTree as ET
 import pytest
 from click.testing import CliRunner
 
+from live_subscriber import Subscriber, subscribed
 from moonwrit.cli import main
 
 ROOT = Path(__file__).resolve().parent.parent
-
-
-class _Quiet(http.server.SimpleHTTPRequestHandler):
-    def log_message(self, format: str, *args: object) -> None:
-        pass
 
 
 @dataclass(frozen=True)
@@ -65,60 +56,15 @@ def community(tmp_path: Path) -> Community:
     return Community(content, tmp_path / "output")
 
 
-@dataclass(frozen=True)
-class Subscriber:
-    """vdirsyncer and khal, set up once for one feed."""
-
-    home: Path
-
-    def look(self) -> list[tuple[str, date]]:
-        """Fetch, and give what the calendar then shows: titles and first days."""
-        self._run("vdirsyncer", "-c", str(self.home / "vdirsyncer.conf"), "sync", "--force-delete")
-        listed = self._run(
-            "khal", "-c", str(self.home / "khal.conf"), "list", "--once", "--notstarted", "--day-format", "",
-            "--format", "{start-date}|{title}", "2026-06-01", "400d",
-        )
-        lines = [line.partition("|") for line in listed.splitlines() if line]
-        return [(title.strip(), date.fromisoformat(day)) for day, _, title in lines]
-
-    def _run(self, *command: str) -> str:
-        done = subprocess.run(
-            command, env={**os.environ, "HOME": str(self.home), "XDG_DATA_HOME": str(self.home), "LC_ALL": "C.UTF-8"},
-            capture_output=True, encoding="utf-8", timeout=120,
-        )
-        assert done.returncode == 0, f"{command[0]}: {done.stdout}\n{done.stderr}"
-        return done.stdout
-
-
 @pytest.fixture
 def subscriber(community: Community, tmp_path: Path) -> Iterator[Subscriber]:
-    handler = functools.partial(_Quiet, directory=str(community.output))
-    server = http.server.ThreadingHTTPServer(("127.0.0.1", 0), handler)
-    threading.Thread(target=server.serve_forever, daemon=True).start()
-    home = tmp_path / "home"
-    (home / "phone").mkdir(parents=True)
-    address = f"http://127.0.0.1:{server.server_address[1]}/feeds/observances.ics"
-    (home / "vdirsyncer.conf").write_text(
-        f'[general]\nstatus_path = "{home}/status/"\n'
-        '[pair feed]\na = "site"\nb = "phone"\ncollections = null\nconflict_resolution = "a wins"\n'
-        f'[storage site]\ntype = "http"\nurl = "{address}"\n'
-        f'[storage phone]\ntype = "filesystem"\npath = "{home}/phone/"\nfileext = ".ics"\n',
-        encoding="utf-8",
-    )
-    (home / "khal.conf").write_text(
-        f"[calendars]\n[[phone]]\npath = {home}/phone\nreadonly = True\n"
-        "[locale]\nlocal_timezone = Australia/Melbourne\ndefault_timezone = Australia/Melbourne\n"
-        "timeformat = %H:%M\ndateformat = %Y-%m-%d\nlongdateformat = %Y-%m-%d\n"
-        "datetimeformat = %Y-%m-%d %H:%M\nlongdatetimeformat = %Y-%m-%d %H:%M\n"
-        f"[sqlite]\npath = {home}/khal.db\n",
-        encoding="utf-8",
-    )
     community.publish("2026-06-01T00:00:00Z")
-    reader = Subscriber(home)
-    reader._run("vdirsyncer", "-c", str(home / "vdirsyncer.conf"), "discover")
-    yield reader
-    server.shutdown()
-    server.server_close()
+    with subscribed(community.output, tmp_path / "home", ["observances.ics"]) as reader:
+        yield reader
+
+
+def _look(subscriber: Subscriber) -> list[tuple[str, date]]:
+    return [(title, date.fromisoformat(start)) for title, start in subscriber.look("observances.ics")]
 
 
 def _plain(title: str) -> str:
@@ -138,7 +84,7 @@ def _feed(community: Community, name: str) -> str:
 @pytest.mark.judge("vdirsyncer", "khal")
 def test_subscribers_follow_three_decisions_and_lose_nothing(community: Community, subscriber: Subscriber) -> None:
     """One decision as expected, one that moves a month by a day, one superseded the same night."""
-    expected = subscriber.look()
+    expected = _look(subscriber)
     assert ("Ramadan (expected)", date(2027, 2, 9)) in expected
     assert ("Eid al-Fitr (expected)", date(2027, 3, 11)) in expected
     uids = _uids(community)
@@ -146,7 +92,7 @@ def test_subscribers_follow_three_decisions_and_lose_nothing(community: Communit
     # As expected: nothing moves, and what hangs on that month alone is no longer only expected.
     community.decide("2027-01-08T21:00:00+11:00", "1448-08", "2027-01-10", "completed")
     community.publish("2027-01-08T21:05:00+11:00")
-    first = subscriber.look()
+    first = _look(subscriber)
     assert sorted(day for _, day in first) == sorted(day for _, day in expected)
     mid_shaban = ("Mid-Shaban: night of 15 Shaban (begins at sunset)", date(2027, 1, 23))
     assert mid_shaban in first
@@ -155,7 +101,7 @@ def test_subscribers_follow_three_decisions_and_lose_nothing(community: Communit
     # Sighted a day before it was expected: Ramadan moves, and the feast that ends it with it.
     community.decide("2027-02-07T21:00:00+11:00", "1448-09", "2027-02-08", "sighted")
     community.publish("2027-02-07T21:05:00+11:00")
-    second = subscriber.look()
+    second = _look(subscriber)
     assert ("Ramadan (expected; moved)", date(2027, 2, 8)) in second  # its last day is still open
     assert ("Eid al-Fitr (expected; moved)", date(2027, 3, 10)) in second
     assert mid_shaban in second
@@ -163,10 +109,10 @@ def test_subscribers_follow_three_decisions_and_lose_nothing(community: Communit
     # Completed, and two hours later a late report is accepted: the second word stands.
     community.decide("2027-05-07T20:00:00+10:00", "1448-12", "2027-05-09", "completed")
     community.publish("2027-05-07T20:05:00+10:00")
-    assert [day for title, day in subscriber.look() if title.startswith("Eid al-Adha")] == [date(2027, 5, 18)]
+    assert [day for title, day in _look(subscriber) if title.startswith("Eid al-Adha")] == [date(2027, 5, 18)]
     community.decide("2027-05-07T22:00:00+10:00", "1448-12", "2027-05-08", "sighted")
     community.publish("2027-05-07T22:05:00+10:00")
-    third = subscriber.look()
+    third = _look(subscriber)
     assert ("Eid al-Adha (moved)", date(2027, 5, 17)) in third
 
     # None is doubled and none is lost, and each keeps its UID.

@@ -22,6 +22,7 @@ import microdata
 import pytest
 from page_values import ROOT, build
 
+from live_subscriber import subscribed
 from moonwrit.publish.timezones import vtimezone
 
 # A backslash before a letter n is left out: icalendar and libical read it back, but ics takes it for a line break.
@@ -122,6 +123,24 @@ def test_ics_reads_every_feed_alike(written: Events) -> None:
         assert [event.name for event in found] == [event["title"] for event in events]
         assert [event.begin.to("utc").strftime("%Y%m%dT%H%M%SZ")[: len(one["starts"])]
                 for event, one in zip(found, events, strict=True)] == [event["starts"] for event in events]
+
+
+@pytest.mark.judge("vdirsyncer", "khal")
+def test_vdirsyncer_and_khal_show_every_kind_of_feed_alike(written: Events, site: Path, tmp_path: Path) -> None:
+    """Fetched over HTTP and listed: as many events, the same titles, days and hours."""
+    kinds = ["observances.ics", "months.ics", "evenings.ics", "tags/main.ics", "years/1448.ics"]
+    melbourne = ZoneInfo("Australia/Melbourne")
+
+    def shown(event: dict[str, Any]) -> tuple[str, str]:
+        starts = event["starts"]
+        if len(starts) == 8:
+            return event["title"], str(date.fromisoformat(starts))
+        return event["title"], datetime.fromisoformat(starts).astimezone(melbourne).strftime("%Y-%m-%d %H:%M")
+
+    with subscribed(site, tmp_path / "home", kinds) as subscriber:
+        for kind in kinds:
+            found = subscriber.look(kind, "2025-01-01", 1700)
+            assert sorted(found) == sorted(shown(event) for event in written[str(site / "feeds" / kind)]), kind
 
 
 def test_a_second_writing_says_the_same(calendars: list[Path], written: Events) -> None:
