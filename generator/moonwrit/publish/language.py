@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass, field
 from datetime import date, datetime
-from gettext import NullTranslations
 from typing import Literal
 
 from babel import Locale
@@ -12,17 +12,25 @@ from babel.dates import format_date, format_skeleton, format_time, get_day_names
 from babel.numbers import format_decimal
 
 from moonwrit.calendars import month_name
+from moonwrit.publish.catalogue import translations
 
-_LOCALES = {"en": "en_AU"}
-"""English without a country is written day first, as in most of the world."""
+_DIGITS = {
+    "arab": str.maketrans("0123456789", "٠١٢٣٤٥٦٧٨٩"),
+    "arabext": str.maketrans("0123456789", "۰۱۲۳۴۵۶۷۸۹"),
+}
+_LOCALES = {"en": "en_AU", "ar": "ar_EG"}
+"""English without a country is written day first, as in most of the world; Arabic as in its likely country (CLDR)."""
 
 
 @dataclass(frozen=True)
 class Language:
-    """``code`` is the language tag of the pages. Messages are given in English and looked up in a catalogue."""
+    """``code`` is the language tag of the pages. Messages are given in English and looked up in its catalogue.
+
+    ``names`` are proper names of the content (places, policies), from the site's language to this one.
+    """
 
     code: str = "en"
-    translations: NullTranslations = field(default_factory=NullTranslations, compare=False)
+    names: Mapping[str, str] = field(default_factory=dict, compare=False)
 
     @property
     def locale(self) -> Locale:
@@ -44,10 +52,26 @@ class Language:
         return int(self.locale.first_week_day)
 
     def gettext(self, message: str) -> str:
-        return self.translations.gettext(message)
+        return translations(self.code).gettext(message)
 
     def ngettext(self, one: str, many: str, n: int) -> str:
-        return self.translations.ngettext(one, many, n)
+        return translations(self.code).ngettext(one, many, n)
+
+    def name(self, text: str) -> str:
+        """A proper name in this language, or as it is."""
+        return self.names.get(text, text)
+
+    def digits(self, text: str | int) -> str:
+        """A text or whole number with the digits that readers of the language expect (CLDR's default)."""
+        return str(text).translate(_DIGITS.get(self.locale.default_numbering_system, {}))
+
+    def values(self, given: Mapping[str, object]) -> dict[str, object]:
+        """Values for the places of a message: whole numbers in the language's digits, proper names in its form."""
+        return {
+            key: self.digits(value) if isinstance(value, int) and not isinstance(value, bool)
+            else self.name(value) if isinstance(value, str) else value
+            for key, value in given.items()
+        }
 
     def weekdays(self, width: Literal["wide", "abbreviated"] = "wide") -> list[str]:
         """The seven names, in the order of the week here."""
@@ -56,7 +80,7 @@ class Language:
 
     def full_date(self, day: date) -> str:
         """Friday 20 February 2026"""
-        return str(format_date(day, "full", self.locale))
+        return self.digits(format_date(day, "full", self.locale))
 
     def long_date(self, day: date) -> str:
         """20 February 2026"""
@@ -92,12 +116,13 @@ class Language:
 
     def clock(self, moment: datetime, seconds: bool = False) -> str:
         """20:15, by the clock of the moment's own zone."""
-        return str(format_time(moment, "HH:mm:ss" if seconds else "HH:mm", locale=self.locale))
+        return self.digits(format_time(moment, "HH:mm:ss" if seconds else "HH:mm", locale=self.locale))
 
     def number(self, value: float, decimals: int = 4) -> str:
         """With a true minus sign and at most so many decimals."""
         pattern = "#,##0." + "#" * decimals if decimals else "#,##0"
-        return str(format_decimal(value, pattern, self.locale)).replace("-", "\u2212")
+        text = format_decimal(value, pattern, self.locale, numbering_system="default")
+        return self.digits(text.replace("-", "\u2212"))
 
     def month(self, month: int) -> str:
         """The name of a Hijri month, 1 to 12."""
@@ -109,7 +134,7 @@ class Language:
         return separator.join(items)
 
     def _date(self, skeleton: str, day: date) -> str:
-        return str(format_skeleton(skeleton, day, locale=self.locale))
+        return self.digits(format_skeleton(skeleton, day, locale=self.locale))
 
 
 ENGLISH = Language()

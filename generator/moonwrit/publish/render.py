@@ -2,15 +2,16 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from datetime import datetime
 from functools import cache
 from pathlib import PurePosixPath
 from typing import Any
 
-from jinja2 import Environment, FileSystemLoader, StrictUndefined
-from markupsafe import Markup
+from jinja2 import Environment, FileSystemLoader, StrictUndefined, pass_eval_context
+from jinja2.nodes import EvalContext
+from markupsafe import Markup, escape
 
 from moonwrit.content.models import Site, in_language
 from moonwrit.publish import labels, words
@@ -57,12 +58,18 @@ class Renderer:
             trim_blocks=True,
             lstrip_blocks=True,
             keep_trailing_newline=True,
-            extensions=["jinja2.ext.i18n"],
-        )
-        self.environment.install_gettext_callables(  # type: ignore[attr-defined]
-            language.gettext, language.ngettext, newstyle=True
+            # Whole numbers that are shown are written in the language's digits.
+            finalize=lambda value: (
+                language.digits(value) if isinstance(value, int) and not isinstance(value, bool) else value
+            ),
         )
         self.environment.globals.update(
+            _=pass_eval_context(
+                lambda context, message, **values: _filled(context, language.gettext(message), language.values(values))
+            ),
+            ngettext=pass_eval_context(lambda context, one, many, number, **values: _filled(
+                context, language.ngettext(one, many, number), language.values({"n": number, **values})
+            )),
             site=site, L=language, words=words, labels=labels,
             tree=lambda code: tree(site, code), address=site.address.rstrip("/") + "/",
             say=lambda text: in_language(text, language.code, site.language),
@@ -91,6 +98,11 @@ class Renderer:
             **page.given,
         )
         return text.encode()
+
+
+def _filled(context: EvalContext, message: str, values: Mapping[str, object]) -> str:
+    """A message with its values; in a page both are text, and never taken for markup."""
+    return (escape(message) if context.autoescape else message) % values
 
 
 @cache
