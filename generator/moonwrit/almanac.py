@@ -54,7 +54,8 @@ class Almanac:
     ``evenings`` the 29th evening before each of them; ``occurrences`` are in order of civil date, then of the
     observance's name in the content. ``method`` is the policy made ready, with its title, source and notes.
     ``superseded`` holds, by month ordinal, decisions that later ones have replaced; ``others`` the other
-    policies of the content. ``as_of`` is "today".
+    policies of the content. ``as_of`` is "today". ``names`` are the names of places and policies, and the policies'
+    summaries, in the languages in which the content gives them.
     """
 
     calendar_id: str
@@ -70,6 +71,7 @@ class Almanac:
     superseded: Mapping[int, tuple[Decision, ...]]
     others: tuple[Other, ...]
     as_of: date
+    names: tuple[Mapping[str, str], ...]
 
 
 def assemble(content: Content, as_of: date, known_until: datetime | None = None) -> tuple[Almanac, ...]:
@@ -96,9 +98,14 @@ def assemble(content: Content, as_of: date, known_until: datetime | None = None)
             calendar_id, calendar, content.site, adopted, region,
             {place: content.places[place] for place in region.places},
             content.observances, months, evenings, occurrences(content.observances, months), replaced,
-            _others(content, calendar.policy, adopted, months), as_of,
+            _others(content, calendar.policy, adopted, months), as_of, _names(content),
         ))
     return tuple(out)
+
+
+def _names(content: Content) -> tuple[Mapping[str, str], ...]:
+    summaries = [policy.summary for policy in content.policies.values() if policy.summary is not None]
+    return (*(p.name for p in content.places.values()), *(p.name for p in content.policies.values()), *summaries)
 
 
 def _others(content: Content, policy_id: str, adopted: Method, months: tuple[Month, ...]) -> tuple[Other, ...]:

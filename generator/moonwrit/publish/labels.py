@@ -56,6 +56,36 @@ QUANTITIES: Mapping[str, str] = MappingProxyType({
 })
 """By the name that the sky gives them. A name that is missing here is shown as it is."""
 
+FRAMES: Mapping[str, str] = MappingProxyType({
+    "airless": _("airless"),
+    "at best time": _("at best time"),
+    "at sunset": _("at sunset"),
+    "before 24:00 UT of the date": _("before 24:00 UT of the date"),
+    "before 12:00 UT of the date": _("before 12:00 UT of the date"),
+    "before 21:00 UT of the day before": _("before 21:00 UT of the day before"),
+    "centre": _("centre"),
+    "geocentric": _("geocentric"),
+    "geocentric arcs": _("geocentric arcs"),
+    "lower limb": _("lower limb"),
+    "moonset minus sunset": _("moonset minus sunset"),
+    "since the geocentric conjunction": _("since the geocentric conjunction"),
+    "Sun 18 deg below the horizon": _("Sun 18 degrees below the horizon"),
+    "topocentric": _("topocentric"),
+    "topocentric arcs": _("topocentric arcs"),
+    "upper limb": _("upper limb"),
+    "when the Sun is 3 deg down": _("when the Sun is 3 degrees below the horizon"),
+    "when the Sun is 4.5 deg down": _("when the Sun is 4.5 degrees below the horizon"),
+    "with refraction": _("with refraction"),
+})
+"""The parts of a frame, by the words that the sky has for them. One that is missing here is shown as it is."""
+
+CALENDARS: Mapping[str, str] = MappingProxyType({
+    "solar-hijri": _("Solar Hijri"),
+    "solar-hijri-33": _("Solar Hijri (33-year approximation)"),
+    "rumi": _("Rumi"),
+    "julian": _("Julian"),
+})
+
 SIGNS: Mapping[str, str] = MappingProxyType({
     ">=": _("at least %(limit)s"),
     ">": _("more than %(limit)s"),

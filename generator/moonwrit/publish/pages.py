@@ -12,12 +12,13 @@ from markupsafe import Markup, escape
 
 from moonwrit.almanac import Almanac, Evening
 from moonwrit.calendars import month_slug
-from moonwrit.concordance import TITLES, in_calendar
+from moonwrit.concordance import in_calendar
 from moonwrit.journal import Entry, Ledger, month_key
 from moonwrit.observances import Occurrence
 from moonwrit.policy import Month
 from moonwrit.policy.differ import Beside
-from moonwrit.publish import pictures, words
+from moonwrit.publish import labels, pictures, words
+from moonwrit.publish.asked import asked_in_words
 from moonwrit.publish.edition import Edition, tree
 from moonwrit.publish.icalendar import tags
 from moonwrit.publish.language import Language
@@ -63,7 +64,7 @@ def pages(edition: Edition, editions: Sequence[Edition]) -> Iterator[Page]:
     for evening in almanac.evenings:
         title = _("Evening of %(date)s") % {"date": language.long_date(evening.on)}
         yield frame.page(evening_path(evening), "evening", title, **_evening(edition, evening))
-    yield frame.page("policy/", "policy", _("The policy"))
+    yield frame.page("policy/", "policy", _("The policy"), asked=asked_in_words(almanac.method, language))
     if almanac.others:
         yield frame.page("differences/", "differences", _("Why it is another day elsewhere"), **_differences(almanac))
     yield frame.page("changes/", "changes", _("Changes"), moved=ledger.moved(almanac.calendar_id))
@@ -143,7 +144,7 @@ def _month(almanac: Almanac, ledger: Ledger, index: int) -> dict[str, object]:
         "cells": _cells(almanac, month),
         "superseded": almanac.superseded.get(month.ordinal, ()),
         "noted": _noted(almanac, ledger, month_key(month.year, month.month)),
-        "also": [TITLES[calendar] for calendar in almanac.site.also],
+        "also": [labels.CALENDARS[calendar] for calendar in almanac.site.also],
     }
 
 
@@ -198,7 +199,9 @@ def _evening(edition: Edition, evening: Evening) -> dict[str, object]:
         ],
         "before": almanac.months[index - 1] if index else None,
         "coming": evening.on >= almanac.as_of,
-        "elsewhere": [(other.beside.method.title, other.beside.months[index].starts) for other in almanac.others],
+        "elsewhere": [
+            (language.name(other.beside.method.title), other.beside.months[index].starts) for other in almanac.others
+        ],
     }
 
 

@@ -7,6 +7,7 @@ from pathlib import Path
 from urllib.parse import urlsplit
 
 from moonwrit.almanac import Almanac
+from moonwrit.content.models import in_language
 from moonwrit.journal import Ledger, site_marker
 from moonwrit.publish.basis import basis_feed
 from moonwrit.publish.dates import next_feed, year_file
@@ -29,7 +30,8 @@ def site_files(almanacs: Sequence[Almanac], ledger: Ledger) -> dict[str, bytes]:
     files = {"style.css": stylesheet(), **schema_files()}
     listed: list[Page] = []
     for code in site.all_languages:
-        language = Language(code)
+        names = {in_language(name, site.language): in_language(name, code, site.language) for name in almanacs[0].names}
+        language = Language(code, names)
         renderer = Renderer(site, language)
         editions = [Edition(almanac, ledger, language, index == 0) for index, almanac in enumerate(almanacs)]
         for edition in editions:

@@ -10,7 +10,7 @@ from datetime import date
 
 from moonwrit.content.models import Observance, When, in_language
 from moonwrit.observances import Occurrence
-from moonwrit.policy.months import Closeness, Finding, Margin, Month, Standing
+from moonwrit.policy.months import Closeness, Finding, Margin, Month, Note, Standing
 from moonwrit.publish import labels
 from moonwrit.publish.language import ENGLISH, Language
 
@@ -36,7 +36,7 @@ def month_title(month: Month, language: Language = ENGLISH) -> str:
 
 def title_of(year: int, month: int, language: Language = ENGLISH) -> str:
     _ = language.gettext
-    return _("%(month)s %(year)s") % {"month": language.month(month), "year": year}
+    return _("%(month)s %(year)s") % {"month": language.month(month), "year": language.digits(year)}
 
 
 def begins_sentence(month: Month, language: Language = ENGLISH) -> str:
@@ -93,7 +93,7 @@ def found_sentence(month: Month, language: Language = ENGLISH) -> str:
         return ""
     _ = language.gettext
     names = {
-        "place": finding.place,
+        "place": language.name(finding.place),
         "quantity": quantity(finding.quantity, language),
         "value": measured(finding.value, finding.unit, language) if finding.value is not None else "",
         "asked": asked(finding, language),
@@ -114,7 +114,7 @@ def conjunction_sentence(month: Month, language: Language = ENGLISH) -> str:
     names = {
         "time": language.clock(moment),
         "date": language.long_date(moment.date()),
-        "place": month.evidence.place or "",
+        "place": language.name(month.evidence.place or ""),
         "age": language.number(abs(age), 1) if isinstance(age, float | int) else "",
     }
     if not isinstance(age, float | int) or not month.evidence.place:
@@ -192,7 +192,12 @@ def standing_sentence(month: Month, language: Language = ENGLISH) -> str:
 
 def note_sentences(month: Month, language: Language = ENGLISH) -> list[str]:
     """What was unusual about it."""
-    return [language.gettext(note.text) % note.values for note in month.evidence.notes]
+    return [said(note, language) for note in month.evidence.notes]
+
+
+def said(note: Note, language: Language = ENGLISH) -> str:
+    """A note with its values in the language's form."""
+    return language.gettext(note.text) % language.values(note.values)
 
 
 def authority_sentence(authority: str, language: Language = ENGLISH) -> str:
@@ -215,6 +220,11 @@ def closeness(value: Closeness, language: Language = ENGLISH) -> str:
 
 def quantity(name: str, language: Language = ENGLISH) -> str:
     return language.gettext(labels.QUANTITIES.get(name, name))
+
+
+def frame(text: str, language: Language = ENGLISH) -> str:
+    """How a quantity is measured: topocentric, airless, at sunset."""
+    return language.listing([language.gettext(labels.FRAMES.get(part, part)) for part in text.split(", ")])
 
 
 def measured(value: float, unit: str, language: Language = ENGLISH) -> str:
@@ -253,9 +263,9 @@ def _while(day_share: float, language: Language) -> str:
         return language.gettext("less than a minute")
     if minutes < 90:
         n = round(minutes)
-        return language.ngettext("about %(n)s minute", "about %(n)s minutes", n) % {"n": n}
+        return language.ngettext("about %(n)s minute", "about %(n)s minutes", n) % {"n": language.digits(n)}
     n = round(minutes / 60)
-    return language.ngettext("about %(n)s hour", "about %(n)s hours", n) % {"n": n}
+    return language.ngettext("about %(n)s hour", "about %(n)s hours", n) % {"n": language.digits(n)}
 
 
 # --- observances ---------------------------------------------------------------------------------
@@ -267,7 +277,7 @@ def occurrence_title(name: str, occurrence: Occurrence, language: Language = ENG
         return name
     _ = language.gettext
     return _("%(name)s: night of %(day)s %(month)s") % {
-        "name": name, "day": occurrence.day, "month": language.month(occurrence.month)
+        "name": name, "day": language.digits(occurrence.day), "month": language.month(occurrence.month)
     }
 
 
@@ -302,12 +312,12 @@ def rule(when: When, language: Language = ENGLISH) -> str:
     """The rule of an observance: 10 Muharram; the nights of 21 Ramadan to the last; ..."""
     _ = language.gettext
     month = _("each month") if when.month == "every" else language.month(when.month)
-    names: dict[str, str | int] = {"month": month, "day": when.day or "", "n": when.run}
+    names = {"month": month, "day": language.digits(when.day or ""), "n": language.digits(when.run)}
     if when.last is not None:
         weekday = date(2024, 1, 1 + _WEEKDAYS.index(when.last))  # 1 January 2024 was a Monday
         return _("the last %(weekday)s of %(month)s") % {"weekday": language.weekday(weekday), "month": month}
     if when.last_nights is not None:
-        names["day"] = 31 - when.last_nights
+        names["day"] = language.digits(31 - when.last_nights)
         if when.odd:
             return _("the odd nights from day %(day)s to the end of %(month)s") % names
         return _("the nights from day %(day)s to the end of %(month)s") % names
@@ -318,7 +328,7 @@ def rule(when: When, language: Language = ENGLISH) -> str:
         return _("the night of day %(day)s of %(month)s") % names
     if when.run == "month":
         return _("day %(day)s to the end of %(month)s") % names
-    if when.run > 1:
+    if when.run != 1:
         return _("%(n)s days from day %(day)s of %(month)s") % names
     return _("day %(day)s of %(month)s") % names
 
@@ -345,4 +355,4 @@ def published_name(key: str, observances: Mapping[str, Observance], site_languag
     shown = in_language(observances[name].name, language.code, site_language)
     if others and observances[name].when.month == "every":
         return f"{shown}, {title_of(int(year), int(others[0]), language)}"
-    return " ".join([shown, year, *others])
+    return language.digits(" ".join([shown, year, *others]))
