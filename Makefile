@@ -4,6 +4,7 @@
 #   make test        style, types, layers, tests
 #   make judges      the programs that the tests are held against, where the machine lacks them
 #   make benchmarks  tests/benchmarks/, alone on the machine
+#   make catalogues  the texts of theme and code brought into the message catalogues
 #   make lock        requirements.lock again, after a change of pyproject.toml
 #   make clean       removes whatever make has made
 
@@ -11,7 +12,7 @@ PYTHON ?= python3
 BIN := .venv/bin
 READY := .venv/.ready
 
-.PHONY: site test judges benchmarks lock clean
+.PHONY: site test judges benchmarks catalogues lock clean
 
 site: $(READY)
 	$(BIN)/moonwrit publish
@@ -28,6 +29,9 @@ judges:
 
 benchmarks: $(READY)
 	$(BIN)/python tests/benchmarks/run.py
+
+catalogues: $(READY)
+	$(BIN)/python themes/catalogues.py
 
 # Versions already locked are kept where they still fit; delete the lock first to take the newest of all.
 lock: | $(BIN)/python

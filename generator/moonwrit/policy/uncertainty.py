@@ -35,5 +35,5 @@ def uncertainty_note(margin: Margin, starts: date) -> tuple[Note, ...]:
         return ()
     return (Note(
         "The margin is smaller than the uncertainty of the Earth's rotation in that year (about %(seconds)s s).",
-        {"seconds": f"{error:.1f}"},
+        {"seconds": round(error, 1)},
     ),)

@@ -49,10 +49,10 @@ QUANTITIES: Mapping[str, str] = MappingProxyType({
     "elongation": _("elongation of the Moon from the Sun"),
     "illuminated part": _("illuminated part of the disc"),
     "lag": _("lag of moonset after sunset"),
-    "Odeh's V": _("V value of Odeh"),
+    "Odeh's V": _("Odeh value V"),
     "relative azimuth": _("relative azimuth"),
     "width": _("width of the crescent"),
-    "Yallop's q": _("q value of Yallop"),
+    "Yallop's q": _("Yallop value q"),
 })
 """By the name that the sky gives them. A name that is missing here is shown as it is."""
 
@@ -161,6 +161,9 @@ AIDS: Mapping[str, str] = MappingProxyType({
     "telescope": _("telescope"),
     "camera": _("camera"),
 })
+
+DECIMALS: Mapping[str, int] = MappingProxyType({"": 3, "%": 2, "arcmin": 2, "deg": 2, "h": 1, "min": 1})
+"""Of a circumstance in a table: as many as conventions and the state of the air leave sure, and one more."""
 
 UNIT_OF_KEY: Mapping[str, str] = MappingProxyType({
     "deg": "deg", "arcmin": "arcmin", "min": "min", "h": "h", "percent": "%",

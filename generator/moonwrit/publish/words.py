@@ -175,7 +175,9 @@ def standing_sentence(month: Month, language: Language = ENGLISH) -> str:
     _ = language.gettext
     match month.standing:
         case "settled":
-            return _("Settled: this is the community's date.")
+            if month.decision is None:
+                return _("Settled: the policy itself gives the date, and no decision is needed.")
+            return _("Settled: the community has decided.")
         case "amended":
             return _("Amended: a date was settled before, and has been changed to this one.")
         case _:
@@ -232,10 +234,18 @@ def measured(value: float, unit: str, language: Language = ENGLISH) -> str:
     return language.gettext(labels.UNITS_IN_WORDS[unit]) % {"number": language.number(value)}
 
 
-def with_sign(value: float, unit: str, language: Language = ENGLISH, *, plus: bool = False) -> str:
+def with_sign(
+    value: float, unit: str, language: Language = ENGLISH, *, plus: bool = False, decimals: int = 4
+) -> str:
     """A number with its unit as a sign: 0.5°; with ``plus``, +0.5°."""
-    number = ("+" if plus and value > 0 else "") + language.number(value)
+    number = ("+" if plus and value > 0 else "") + language.number(value, decimals)
     return language.gettext(labels.UNITS_AS_SIGNS[unit]) % {"number": number}
+
+
+def circumstance(key: str, value: float, language: Language = ENGLISH) -> str:
+    """A value of the evening, by its key, to the decimals that mean something."""
+    unit = labels.UNIT_OF_KEY.get(key.rpartition("_")[2], "")
+    return with_sign(value, unit, language, decimals=labels.DECIMALS[unit])
 
 
 def asked(finding: Finding, language: Language = ENGLISH) -> str:
