@@ -15,6 +15,7 @@ from babel.messages.pofile import read_po, write_po
 
 from moonwrit.policy.names import CRITERIA, published_names
 from moonwrit.policy.published import NamedPlace, published
+from moonwrit.publish.catalogue import untranslated
 from moonwrit.sky.criteria import criterion
 
 THEME = Path(__file__).resolve().parent / "moonwrit"
@@ -77,8 +78,7 @@ def main(*new: str) -> None:
             catalogue = read_po(stream, locale=file.stem)
         catalogue.update(texts, no_fuzzy_matching=True)
         file.write_bytes(as_bytes(catalogue))
-        lacking = sum(1 for message in catalogue if message.id and not any(message.string))
-        print(f"{file.name}: {len(catalogue)} texts, {lacking} to translate")
+        print(f"{file.name}: {len(texts)} texts, {len(untranslated(file.stem))} to translate")
 
 
 if __name__ == "__main__":
