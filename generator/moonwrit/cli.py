@@ -122,6 +122,11 @@ def check(folder: Path) -> None:
         f"{folder}: all is well ({len(content.places)} places, {len(content.policies)} policies, "
         f"{len(content.observances)} observances)"
     )
+    from moonwrit.publish.catalogue import untranslated
+
+    for code in content.site.all_languages:
+        if missing := untranslated(code):
+            click.echo(f'{code}: {len(missing)} texts are not translated and stand in English, such as "{missing[0]}"')
 
 
 @main.command()
