@@ -73,7 +73,7 @@ class Language:
             for key, value in given.items()
         }
 
-    def weekdays(self, width: Literal["wide", "abbreviated"] = "wide") -> list[str]:
+    def weekdays(self, width: Literal["wide", "abbreviated", "narrow"] = "wide") -> list[str]:
         """The seven names, in the order of the week here."""
         names = get_day_names(width, "stand-alone", self.locale)
         return [str(names[(self.first_weekday + i) % 7]) for i in range(7)]

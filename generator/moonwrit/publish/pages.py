@@ -19,6 +19,7 @@ from moonwrit.policy import Month
 from moonwrit.policy.differ import Beside
 from moonwrit.publish import labels, pictures, words
 from moonwrit.publish.asked import asked_in_words
+from moonwrit.publish.civil import civil_months, civil_years
 from moonwrit.publish.edition import Edition, tree
 from moonwrit.publish.icalendar import tags
 from moonwrit.publish.language import Language
@@ -48,7 +49,13 @@ def pages(edition: Edition, editions: Sequence[Edition]) -> Iterator[Page]:
     yield frame.page("", "home", edition.name, **_home(almanac))
     months = almanac.months
     for year in range(months[0].year, months[-1].year + 1):
-        yield frame.page(f"{year}/", "year", _("Year %(year)s") % {"year": year}, **_year(almanac, year, language))
+        title = _("Year %(year)s") % {"year": language.digits(year)}
+        yield frame.page(f"{year}/", "year", title, **_year(almanac, year, language))
+    for year in civil_years(almanac):
+        yield frame.page(
+            f"civil/{year}/", "civil", _("Civil year %(year)s") % {"year": language.digits(year)},
+            year=year, civil_months=civil_months(almanac, year, language.first_weekday),
+        )
     for index, month in enumerate(months):
         yield frame.page(
             month_path(month), "month", words.month_title(month, language),
@@ -64,6 +71,7 @@ def pages(edition: Edition, editions: Sequence[Edition]) -> Iterator[Page]:
     for evening in almanac.evenings:
         title = _("Evening of %(date)s") % {"date": language.long_date(evening.on)}
         yield frame.page(evening_path(evening), "evening", title, **_evening(edition, evening))
+    yield frame.page("places/", "places", _("Places"), next_evening=_next_evening(almanac))
     yield frame.page("policy/", "policy", _("The policy"), asked=asked_in_words(almanac.method, language))
     if almanac.others:
         yield frame.page("differences/", "differences", _("Why it is another day elsewhere"), **_differences(almanac))
@@ -90,6 +98,7 @@ class _Frame:
             "languages": [
                 (code, tree(edition.site, code), Language(code)) for code in edition.site.all_languages
             ],
+            "civil_years": civil_years(almanac),
             "years": range(almanac.months[0].year, almanac.months[-1].year + 1),
             "month_path": month_path,
             "evening_path": evening_path,
@@ -119,8 +128,12 @@ def _home(almanac: Almanac) -> dict[str, object]:
         "lunar_day": (today - current.starts).days + 1 if current else None,
         "coming": [one for one in coming if "main" in one.tags][:6] or coming[:6],
         "next_month": next((month for month in almanac.months if month.starts > today), None),
-        "next_evening": next((evening for evening in almanac.evenings if evening.on >= today), None),
+        "next_evening": _next_evening(almanac),
     }
+
+
+def _next_evening(almanac: Almanac) -> Evening | None:
+    return next((evening for evening in almanac.evenings if evening.on >= almanac.as_of), None)
 
 
 def _year(almanac: Almanac, year: int, language: Language) -> dict[str, object]:

@@ -63,6 +63,7 @@ class Renderer:
                 language.digits(value) if isinstance(value, int) and not isinstance(value, bool) else value
             ),
         )
+        self.environment.filters["zip"] = zip
         self.environment.globals.update(
             _=pass_eval_context(
                 lambda context, message, **values: _filled(context, language.gettext(message), language.values(values))

@@ -310,12 +310,11 @@ def remarked(
 
 
 def span(starts: date, ends: date, language: Language = ENGLISH) -> str:
-    """Fri 20 Mar 2026, or Fri 20 Mar 2026 to Sun 22 Mar 2026"""
+    """Fri 20 Mar 2026, or Fri 20 Mar to Sun 22 Mar 2026"""
     if starts == ends:
         return language.week_date(starts)
-    return language.gettext("%(first)s to %(last)s") % {
-        "first": language.week_date(starts), "last": language.week_date(ends)
-    }
+    first = language.short_week_date(starts) if starts.year == ends.year else language.week_date(starts)
+    return language.gettext("%(first)s to %(last)s") % {"first": first, "last": language.week_date(ends)}
 
 
 def rule(when: When, language: Language = ENGLISH) -> str:
