@@ -9,7 +9,7 @@ import sys
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from dataclasses import replace
-from datetime import UTC, date, datetime
+from datetime import date
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -20,7 +20,6 @@ from moonwrit.concordance import TITLES, in_calendar
 from moonwrit.errors import MoonwritError, RequestError, did_you_mean
 
 if TYPE_CHECKING:
-    from zoneinfo import ZoneInfo
 
     from moonwrit.content import Content
     from moonwrit.content.models import OtherCalendar
@@ -86,31 +85,43 @@ def main() -> None:
 
 
 @main.command()
-@_shared("content", "as_of")
+@click.option("--content", "folders", type=click.Path(path_type=Path), multiple=True, default=[Path("content")],
+              show_default="content", help="Folder of content files; of several, each is built into its own name.")
+@_shared("as_of")
 @click.option("--output", type=click.Path(path_type=Path), default=Path("output"), show_default=True,
-              help="Folder of the built site.")
-def publish(folder: Path, output: Path, as_of: date | None) -> None:
+              help="Folder of the built site, or of the sites.")
+@click.option("--workers", type=click.IntRange(1, 256), default=os.cpu_count() or 1, metavar="N",
+              help="How many content folders to build side by side.")
+@click.option("--scheduler", metavar="ADDRESS", help="A Dask cluster on which to build several content folders.")
+@click.pass_context
+def publish(
+    ctx: click.Context, folders: tuple[Path, ...], output: Path, as_of: date | None, workers: int,
+    scheduler: str | None,
+) -> None:
     """Build the site and its feeds."""
-    from moonwrit import journal
-    from moonwrit.almanac import assemble
-    from moonwrit.publish.site import publish as put
-    from moonwrit.publish.writing import MARKER
+    from moonwrit.building import publish as build
+    from moonwrit.building import publish_many
 
-    content = _content(folder)
-    now = _now()
-    until = None if as_of is None else _end_of(as_of, content)
-    if as_of is None:
-        journal.recover(folder, output / MARKER, content.site.address)
-    with _progress("Computing months and observances"):
-        almanacs = assemble(content, as_of or _today(content, now), until)
-        seen = [entry for entry in journal.read(folder) if until is None or entry.at <= until]
-        ledger = journal.hold_against(seen, almanacs, content.amendments, until or now)
-    with _progress("Writing the site"):
-        # A replay leaves nothing in the site for the journal to recover.
-        files = put(almanacs, ledger if as_of is None else replace(ledger, added=()), output)
-    if as_of is None:
-        journal.append(folder, ledger.added)
-    click.echo(f"{files} files in {output}")
+    if len(folders) == 1:
+        click.echo(f"{build(folders[0], output, as_of, _progress)} files in {output}")
+        return
+    worst = 0
+    for outcome in publish_many(folders, output, as_of, workers, scheduler):
+        failed = outcome.exit_code != 0
+        click.echo(f"{outcome.folder.name}: {outcome.said}", err=failed)
+        worst = max(worst, outcome.exit_code)
+    ctx.exit(worst)
+
+
+@main.command()
+@_shared("content", "as_of")
+@click.option("--port", type=click.IntRange(0, 65535), default=8000, show_default=True, help="Of this machine only.")
+def preview(folder: Path, as_of: date | None, port: int) -> None:
+    """Serve the site on this machine and build it again on every change; nothing is published."""
+    from moonwrit.preview import serve
+
+    _content(folder)
+    serve(folder, port, as_of, lambda text: click.echo(text, err=True))
 
 
 @main.command()
@@ -341,7 +352,7 @@ def decision(folder: Path, **given: Any) -> None:
         raise RequestError(f"{made.month} is none of the months published, {years.first} to {years.last} AH",
                            "correct it, or change the years in site.yaml")
     documents = {**content.documents, "record/decisions.yaml": document}
-    assemble(replace(content, decisions=(*content.decisions, made), documents=documents), _today(content, _now()))
+    assemble(replace(content, decisions=(*content.decisions, made), documents=documents), _today(content))
     append(file, entry)
     click.echo(f"recorded: {made.month} begins on {made.starts:%A %Y-%m-%d}; publish to tell the public")
 
@@ -378,7 +389,9 @@ def _asked_for(given: str | None, what: str) -> str:
 
 
 def _stamp(content: Content) -> str:
-    return _now().astimezone(_zone(content)).replace(microsecond=0).isoformat()
+    from moonwrit.building import now, zone
+
+    return now().astimezone(zone(content)).replace(microsecond=0).isoformat()
 
 
 def _entry(given: dict[str, Any]) -> dict[str, Any]:
@@ -390,15 +403,20 @@ def _entry(given: dict[str, Any]) -> dict[str, Any]:
 
 
 def _content(folder: Path) -> Content:
-    from moonwrit.content import load
-    from moonwrit.policy.names import CRITERIA, published_names
+    from moonwrit.building import content_of
 
-    return load(folder, published_names(), CRITERIA)
+    return content_of(folder)
+
+
+def _today(content: Content) -> date:
+    from moonwrit.building import now, today
+
+    return today(content, now())
 
 
 def _next_evening(content: Content, as_of: date | None) -> date:
     """The first 29th evening from today on, by the community's own policy and record."""
-    method, today = _method(content, None, ()), as_of or _today(content, _now())
+    method, today = _method(content, None, ()), as_of or _today(content)
     years = content.site.years
     for month in method.months(years.first, years.last, _on_record(content, method, as_of)):
         if month.evidence.evening >= today:
@@ -448,7 +466,9 @@ def _on_record(content: Content | None, method: Method, as_of: date | None) -> d
 
     if content is None or method.name not in {calendar.policy for calendar in content.site.calendars.values()}:
         return {}
-    return in_force(content.decisions, None if as_of is None else _end_of(as_of, content))
+    from moonwrit.building import end_of
+
+    return in_force(content.decisions, None if as_of is None else end_of(as_of, content))
 
 
 def _asked(
@@ -503,30 +523,6 @@ def _years(content: Content | None, first: int | None, last: int | None) -> tupl
     if end_year < begin_year:
         raise RequestError(f"--to {end_year} comes before --from {begin_year}", "swap them")
     return begin_year, end_year
-
-
-def _now() -> datetime:
-    """The present moment; SOURCE_DATE_EPOCH instead of the clock where it is set."""
-    epoch = os.environ.get("SOURCE_DATE_EPOCH")
-    try:
-        return datetime.fromtimestamp(int(epoch), UTC) if epoch else datetime.now(UTC)
-    except (ValueError, OverflowError, OSError):
-        raise RequestError(f'SOURCE_DATE_EPOCH is "{epoch}"', "give whole seconds since 1970") from None
-
-
-def _zone(content: Content) -> ZoneInfo:
-    """The time zone of the community: that of its region's first place."""
-    region = content.regions[next(iter(content.site.calendars.values())).region]
-    return content.places[region.places[0]].zone
-
-
-def _today(content: Content, now: datetime) -> date:
-    return now.astimezone(_zone(content)).date()
-
-
-def _end_of(day: date, content: Content) -> datetime:
-    """The last second of a civil date in the community."""
-    return datetime(day.year, day.month, day.day, 23, 59, 59, tzinfo=_zone(content))
 
 
 def _print_json(value: object) -> None:
