@@ -19,7 +19,8 @@ HERE = "https://site.example/"
 # One page of each kind, chosen for what stands on it: reports, amendments, decisions, a long table.
 KINDS = (
     "index.html", "1448/", "1447/jumada-al-ula/", "observances/", "observances/ramadan/", "evenings/2025-10-22/",
-    "policy/", "differences/", "changes/", "subscribe/", "reading/", "404.html", "embed/", "embed/en.html", "civil/2027/", "places/",
+    "policy/", "differences/", "changes/", "subscribe/", "reading/", "404.html", "embed/", "embed/en.html",
+    "civil/2027/", "places/",
 )
 FRAMED = "embed/en.html"
 """The page that other sites show in a frame: the only one with a script."""
