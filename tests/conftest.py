@@ -12,6 +12,7 @@ import os
 import shutil
 import subprocess
 from collections.abc import Callable
+from ctypes.util import find_library
 from pathlib import Path
 from typing import Any
 
@@ -20,8 +21,8 @@ import pytest
 ROOT = Path(__file__).resolve().parent.parent
 NODE_MODULES = ROOT / ".judges" / "node_modules"
 
-# What each judge needs: commands on the path, files below NODE_MODULES (those with a slash), and introspection data of
-# a system library (with "gi:").
+# What each judge needs: commands on the path, files below NODE_MODULES (those with a slash), system libraries (with
+# "lib:"), and the introspection data of one (with "gi:").
 JUDGES = {
     "node": ("node",),
     "java": ("java", "javac"),  # a single-file program is compiled as it starts
@@ -29,6 +30,7 @@ JUDGES = {
     "khal": ("khal",),
     "vdirsyncer": ("vdirsyncer",),
     "vnu": ("java", "vnu-jar/build/dist/vnu.jar"),
+    "pango": ("lib:pango-1.0", "lib:pangoft2-1.0"),
     "libical": ("/usr/bin/python3", "gi:ICalGLib-3.0"),
     "ajv": ("node", "ajv/package.json", "ajv-formats/package.json"),
     "node-ical": ("node", "node-ical/package.json"),
@@ -43,6 +45,8 @@ def _present(need: str) -> bool:
     if need.startswith("gi:"):
         typelib = need.removeprefix("gi:") + ".typelib"
         return any(Path("/usr/lib").glob(f"*/girepository-1.0/{typelib}"))
+    if need.startswith("lib:"):
+        return find_library(need.removeprefix("lib:")) is not None
     return (NODE_MODULES / need).exists() if "/" in need else shutil.which(need) is not None
 
 

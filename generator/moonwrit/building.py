@@ -21,6 +21,7 @@ from moonwrit.policy.names import CRITERIA, published_names
 if TYPE_CHECKING:
     from moonwrit.almanac import Almanac
     from moonwrit.journal import Ledger
+    from moonwrit.publish.sheets import Paper
 
 Progress = Callable[[str], AbstractContextManager[None]]
 
@@ -69,10 +70,14 @@ def held(content: Content, folder: Path, as_of: date | None) -> tuple[tuple[Alma
     return almanacs, journal.hold_against(seen, almanacs, content.amendments, until or moment)
 
 
-def publish(folder: Path, output: Path, as_of: date | None, progress: Progress = lambda _: nullcontext()) -> int:
+def publish(
+    folder: Path, output: Path, as_of: date | None, paper: Paper | None = None,
+    progress: Progress = lambda _: nullcontext(),
+) -> int:
     """Build the site of a content folder, put it in place, and write down what was published; the number of files.
 
-    A replay (``as_of``) leaves the journal alone. Raises MoonwritError, and then nothing has changed.
+    ``paper``: with PDF sheets of that size. A replay (``as_of``) leaves the journal alone. Raises MoonwritError, and
+    then nothing has changed.
     """
     from moonwrit import journal
     from moonwrit.publish.site import publish as put
@@ -85,7 +90,7 @@ def publish(folder: Path, output: Path, as_of: date | None, progress: Progress =
         almanacs, ledger = held(content, folder, as_of)
     with progress("Writing the site"):
         # A replay leaves nothing in the site for the journal to recover.
-        files = put(almanacs, ledger if as_of is None else replace(ledger, added=()), output)
+        files = put(almanacs, ledger if as_of is None else replace(ledger, added=()), output, paper)
     if as_of is None:
         journal.append(folder, ledger.added)
     return files
@@ -101,7 +106,8 @@ class Outcome:
 
 
 def publish_many(
-    folders: Sequence[Path], output: Path, as_of: date | None, workers: int, scheduler: str | None = None
+    folders: Sequence[Path], output: Path, as_of: date | None, paper: Paper | None, workers: int,
+    scheduler: str | None = None,
 ) -> Iterable[Outcome]:
     """Build each folder into ``output/<its name>``, side by side; one that fails does not stop the others.
 
@@ -111,7 +117,8 @@ def publish_many(
     names = [folder.resolve().name for folder in folders]
     if twice := {name for name in names if names.count(name) > 1}:
         raise RequestError(f'two content folders are called "{min(twice)}"', "rename one: each is built into its name")
-    job = partial(_outcome, output=output.resolve(), as_of=as_of, epoch=os.environ.get("SOURCE_DATE_EPOCH"))
+    epoch = os.environ.get("SOURCE_DATE_EPOCH")
+    job = partial(_outcome, output=output.resolve(), as_of=as_of, paper=paper, epoch=epoch)
     places = [folder.resolve() for folder in folders]
     if scheduler is None:
         with ProcessPoolExecutor(workers, mp_context=get_context("spawn")) as pool:
@@ -125,11 +132,11 @@ def publish_many(
         yield from client.gather(client.map(job, places, pure=False))
 
 
-def _outcome(folder: Path, output: Path, as_of: date | None, epoch: str | None) -> Outcome:
+def _outcome(folder: Path, output: Path, as_of: date | None, paper: Paper | None, epoch: str | None) -> Outcome:
     if epoch is not None:
         os.environ["SOURCE_DATE_EPOCH"] = epoch
     try:
-        files = publish(folder, output / folder.name, as_of)
+        files = publish(folder, output / folder.name, as_of, paper)
     except MoonwritError as fault:
         return Outcome(folder, str(fault), fault.exit_code)
     return Outcome(folder, f"{files} files in {output / folder.name}", 0)

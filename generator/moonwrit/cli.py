@@ -25,6 +25,7 @@ if TYPE_CHECKING:
     from moonwrit.content.models import OtherCalendar
     from moonwrit.content.record import Decision
     from moonwrit.policy import Method, Month, NamedPlace
+    from moonwrit.publish.sheets import Paper
 
 
 class _Commands(click.Group):
@@ -92,21 +93,23 @@ def main() -> None:
               help="Folder of the built site, or of the sites.")
 @click.option("--workers", type=click.IntRange(1, 256), default=os.cpu_count() or 1, metavar="N",
               help="How many content folders to build side by side.")
+@click.option("--pdf", "paper", type=click.Choice(["a4", "letter"]),
+              help="Sheets to print too: years, months and evenings as PDF.")
 @click.option("--scheduler", metavar="ADDRESS", help="A Dask cluster on which to build several content folders.")
 @click.pass_context
 def publish(
     ctx: click.Context, folders: tuple[Path, ...], output: Path, as_of: date | None, workers: int,
-    scheduler: str | None,
+    paper: Paper | None, scheduler: str | None,
 ) -> None:
     """Build the site and its feeds."""
     from moonwrit.building import publish as build
     from moonwrit.building import publish_many
 
     if len(folders) == 1:
-        click.echo(f"{build(folders[0], output, as_of, _progress)} files in {output}")
+        click.echo(f"{build(folders[0], output, as_of, paper, _progress)} files in {output}")
         return
     worst = 0
-    for outcome in publish_many(folders, output, as_of, workers, scheduler):
+    for outcome in publish_many(folders, output, as_of, paper, workers, scheduler):
         failed = outcome.exit_code != 0
         click.echo(f"{outcome.folder.name}: {outcome.said}", err=failed)
         worst = max(worst, outcome.exit_code)

@@ -30,11 +30,17 @@ class Page:
     template: str
     title: str
     given: dict[str, Any] = field(default_factory=dict)
+    has_sheet: bool = False
 
     @property
     def folder(self) -> str:
         """The path as it is linked to: a folder's own page is its folder."""
         return self.path.removesuffix("index.html")
+
+    @property
+    def sheet(self) -> str:
+        """The path of its PDF sheet."""
+        return self.folder + "sheet.pdf"
 
     @property
     def root(self) -> str:
@@ -108,7 +114,13 @@ def _filled(context: EvalContext, message: str, values: Mapping[str, object]) ->
 
 @cache
 def stylesheet() -> bytes:
-    return (themes_folder() / THEME / "style.css").read_bytes()
+    """``style.css`` of the site: that of pages, and that of what is drawn."""
+    return (themes_folder() / THEME / "style.css").read_bytes() + pictures_sheet()
+
+
+@cache
+def pictures_sheet() -> bytes:
+    return (themes_folder() / THEME / "pictures.css").read_bytes()
 
 
 def svg(text: str) -> Markup:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 from pathlib import Path
 from urllib.parse import urlsplit
 
@@ -21,11 +22,12 @@ from moonwrit.publish.notices import atom_feed, json_feed
 from moonwrit.publish.pages import pages
 from moonwrit.publish.render import Page, Renderer, stylesheet
 from moonwrit.publish.schemas import schema_files
+from moonwrit.publish.sheets import SHEETS, Paper, sheet
 from moonwrit.publish.writing import put_in_place
 
 
-def site_files(almanacs: Sequence[Almanac], ledger: Ledger) -> dict[str, bytes]:
-    """The whole site, path -> content. The first almanac is the main calendar."""
+def site_files(almanacs: Sequence[Almanac], ledger: Ledger, paper: Paper | None = None) -> dict[str, bytes]:
+    """The whole site, path -> content. The first almanac is the main calendar. ``paper``: with PDF sheets."""
     site = almanacs[0].site
     files = {"style.css": stylesheet(), **schema_files()}
     listed: list[Page] = []
@@ -35,8 +37,11 @@ def site_files(almanacs: Sequence[Almanac], ledger: Ledger) -> dict[str, bytes]:
         renderer = Renderer(site, language)
         editions = [Edition(almanac, ledger, language, index == 0) for index, almanac in enumerate(almanacs)]
         for edition in editions:
-            for page in pages(edition, editions):
+            for made in pages(edition, editions):
+                page = replace(made, has_sheet=paper is not None and made.template in SHEETS)
                 files[edition.tree + page.path] = renderer.render(page)
+                if paper is not None and page.has_sheet:
+                    files[edition.tree + page.sheet] = sheet(edition.tree + page.path, files, paper)
                 if edition.tree == "" and page.template != "missing":
                     listed.append(page)
             files.update(_feeds(edition, alone=len(editions) == 1))
@@ -73,9 +78,9 @@ def _feeds(edition: Edition, *, alone: bool) -> dict[str, bytes]:
     return {edition.tree + folder + name: content for folder in folders for name, content in feeds.items()}
 
 
-def publish(almanacs: Sequence[Almanac], ledger: Ledger, output: Path) -> int:
+def publish(almanacs: Sequence[Almanac], ledger: Ledger, output: Path, paper: Paper | None = None) -> int:
     """Build the site and put it in place; returns the number of its files."""
-    files = site_files(almanacs, ledger)
+    files = site_files(almanacs, ledger, paper)
     put_in_place(files, output, site_marker(ledger, almanacs[0].site.address))
     return len(files)
 
