@@ -6,7 +6,6 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from datetime import datetime
 from functools import cache
-from pathlib import PurePosixPath
 from typing import Any
 
 from jinja2 import Environment, FileSystemLoader, StrictUndefined, pass_eval_context
@@ -45,7 +44,7 @@ class Page:
     @property
     def root(self) -> str:
         """From the page to the top of its language's tree."""
-        return "../" * (len(PurePosixPath(self.path).parts) - 1)
+        return "../" * self.path.count("/")
 
 
 class Renderer:
@@ -116,6 +115,11 @@ def _filled(context: EvalContext, message: str, values: Mapping[str, object]) ->
 def stylesheet() -> bytes:
     """``style.css`` of the site: that of pages, and that of what is drawn."""
     return (themes_folder() / THEME / "style.css").read_bytes() + pictures_sheet()
+
+
+@cache
+def icon() -> bytes:
+    return (themes_folder() / THEME / "icon.svg").read_bytes()
 
 
 @cache

@@ -20,7 +20,7 @@ from moonwrit.publish.language import Language
 from moonwrit.publish.messages import messages
 from moonwrit.publish.notices import atom_feed, json_feed
 from moonwrit.publish.pages import pages
-from moonwrit.publish.render import Page, Renderer, stylesheet
+from moonwrit.publish.render import Page, Renderer, icon, stylesheet
 from moonwrit.publish.schemas import schema_files
 from moonwrit.publish.sheets import SHEETS, Paper, sheet
 from moonwrit.publish.writing import put_in_place
@@ -29,7 +29,7 @@ from moonwrit.publish.writing import put_in_place
 def site_files(almanacs: Sequence[Almanac], ledger: Ledger, paper: Paper | None = None) -> dict[str, bytes]:
     """The whole site, path -> content. The first almanac is the main calendar. ``paper``: with PDF sheets."""
     site = almanacs[0].site
-    files = {"style.css": stylesheet(), **schema_files()}
+    files = {"style.css": stylesheet(), "icon.svg": icon(), **schema_files()}
     listed: list[Page] = []
     for code in site.all_languages:
         names = {in_language(name, site.language): in_language(name, code, site.language) for name in almanacs[0].names}
