@@ -85,6 +85,11 @@ class Edition:
         return {(month.year, month.month): month for month in self.almanac.months}
 
     @cached_property
+    def written(self) -> dict[str, bytes]:
+        """Events of the feeds by key, as they were first written."""
+        return {}
+
+    @cached_property
     def first_rolling_year(self) -> int:
         """Feeds to subscribe to begin with the Hijri year before the present one; older years have their own files."""
         past = [month.year for month in self.almanac.months if month.starts <= self.almanac.as_of]

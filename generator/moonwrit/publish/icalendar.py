@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Mapping
 from datetime import date, datetime, timedelta
+from functools import partial
 
 from icalendar import Alarm, Calendar, Event, vDDDTypes, vDuration, vText, vUri
 
@@ -75,7 +76,7 @@ def evenings_feed(edition: Edition) -> bytes:
         for place in almanac.places:
             event = _timed(edition, entry, evening, place)
             if event is not None:
-                events.append(event)
+                events.append(event.to_ical())
     title = edition.language.gettext("%(calendar)s: evenings for observers") % {"calendar": edition.name}
     return _feed(edition, "evenings.ics", title, events, zoned=True)
 
@@ -97,33 +98,48 @@ def was_sentence(entry: Entry, language: Language) -> list[str]:
 # --- events ---------------------------------------------------------------------------------------
 
 
-def _occurrences(edition: Edition, wanted: Callable[[Occurrence], bool]) -> Iterable[Event]:
+def _occurrences(edition: Edition, wanted: Callable[[Occurrence], bool]) -> Iterable[bytes]:
     for one in filter(wanted, edition.almanac.occurrences):
-        observance = edition.almanac.observances[one.observance]
-        about = [edition.say(observance.about)] if observance.about else []
-        entry = edition.entry(one.key)
-        event = _all_day(
-            edition, entry,
-            words.event_title(edition.say(observance.name), one, edition.language, moved=entry.was is not None),
-            [*about, *_reasons(edition.month_of[one.year, one.month], edition.language)],
-            f"observances/{one.observance}/", one.tags,
-        )
-        if edition.site.remind_hours_before is not None and "main" in one.tags:
-            event.add_component(_reminder(edition.site.remind_hours_before, str(event["summary"])))
-        yield event
+        yield _once(edition, one.key, partial(_occurrence, edition, one))
 
 
-def _months(edition: Edition, wanted: Callable[[Month], bool]) -> Iterable[Event]:
+def _occurrence(edition: Edition, one: Occurrence) -> Event:
+    observance = edition.almanac.observances[one.observance]
+    about = [edition.say(observance.about)] if observance.about else []
+    entry = edition.entry(one.key)
+    event = _all_day(
+        edition, entry,
+        words.event_title(edition.say(observance.name), one, edition.language, moved=entry.was is not None),
+        [*about, *_reasons(edition.month_of[one.year, one.month], edition.language)],
+        f"observances/{one.observance}/", one.tags,
+    )
+    if edition.site.remind_hours_before is not None and "main" in one.tags:
+        event.add_component(_reminder(edition.site.remind_hours_before, str(event["summary"])))
+    return event
+
+
+def _months(edition: Edition, wanted: Callable[[Month], bool]) -> Iterable[bytes]:
     for month in filter(wanted, edition.almanac.months):
-        entry = edition.entry(month_key(month.year, month.month))
-        title = words.month_title(month, edition.language)
-        yield _all_day(
-            edition, entry, words.remarked(title, month.standing, edition.language, moved=entry.was is not None),
-            _reasons(month, edition.language), f"{month.year}/{month_slug(month.month)}/", ("month",), one_day=True,
-        )
+        yield _once(edition, month_key(month.year, month.month), partial(_month, edition, month))
 
 
-def _withdrawn(edition: Edition, tag: str | None) -> Iterable[Event]:
+def _month(edition: Edition, month: Month) -> Event:
+    entry = edition.entry(month_key(month.year, month.month))
+    title = words.month_title(month, edition.language)
+    return _all_day(
+        edition, entry, words.remarked(title, month.standing, edition.language, moved=entry.was is not None),
+        _reasons(month, edition.language), f"{month.year}/{month_slug(month.month)}/", ("month",), one_day=True,
+    )
+
+
+def _once(edition: Edition, key: str, make: Callable[[], Event]) -> bytes:
+    """The lines of an event, which stands in several feeds, written once."""
+    if key not in edition.written:
+        edition.written[key] = make().to_ical()
+    return edition.written[key]
+
+
+def _withdrawn(edition: Edition, tag: str | None) -> Iterable[bytes]:
     """Withdrawn lately and still to be announced as cancelled; of one tag, those whose observance still carries it."""
     almanac = edition.almanac
     for (calendar, _), entry in sorted(edition.ledger.current.items()):
@@ -133,7 +149,7 @@ def _withdrawn(edition: Edition, tag: str | None) -> Iterable[Event]:
             continue
         observance = words.observance_of(entry.key, almanac.observances)
         if tag is None or (observance is not None and tag in almanac.observances[observance].tags):
-            yield _cancelled(edition, entry)
+            yield _cancelled(edition, entry).to_ical()
 
 
 def _reasons(month: Month, language: Language) -> list[str]:
@@ -228,6 +244,9 @@ def _span(event: Event, starts: date, ends: date) -> None:
     event.add("dtend", ends + timedelta(days=1))
 
 
+_END = b"END:VCALENDAR\r\n"
+
+
 def _reminder(hours: int, title: str) -> Alarm:
     """Shown so many hours before the day's midnight (RFC 5545, 3.6.6)."""
     alarm = Alarm()
@@ -237,7 +256,7 @@ def _reminder(hours: int, title: str) -> Alarm:
     return alarm
 
 
-def _feed(edition: Edition, name: str, title: str, events: list[Event], *, zoned: bool = False) -> bytes:
+def _feed(edition: Edition, name: str, title: str, events: list[bytes], *, zoned: bool = False) -> bytes:
     language = edition.language
     authority = edition.say(edition.site.authority)
     calendar = Calendar()
@@ -266,9 +285,8 @@ def _feed(edition: Edition, name: str, title: str, events: list[Event], *, zoned
         zones = {place.timezone: place.zone for place in edition.almanac.places.values()}
         for _, zone in sorted(zones.items()):
             calendar.add_component(vtimezone(zone, first, last))
-    for event in events:
-        calendar.add_component(event)
-    return bytes(calendar.to_ical())
+    head = bytes(calendar.to_ical()).removesuffix(_END)
+    return b"".join([head, *events, _END])
 
 
 __all__ = ["evenings_feed", "months_feed", "observances_feed", "tag_feed", "tags", "was_sentence", "year_feed"]

@@ -5,10 +5,11 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from datetime import date, datetime
+from functools import cache, lru_cache
 from typing import Literal
 
 from babel import Locale
-from babel.dates import format_date, format_skeleton, format_time, get_day_names
+from babel.dates import format_date, format_skeleton, get_day_names
 from babel.numbers import format_decimal
 
 from moonwrit.calendars import month_name
@@ -34,7 +35,7 @@ class Language:
 
     @property
     def locale(self) -> Locale:
-        return Locale.parse(_LOCALES.get(self.code, self.code.replace("-", "_")))
+        return _locale(self.code)
 
     @property
     def own_name(self) -> str:
@@ -63,7 +64,7 @@ class Language:
 
     def digits(self, text: str | int) -> str:
         """A text or whole number with the digits that readers of the language expect (CLDR's default)."""
-        return str(text).translate(_DIGITS.get(self.locale.default_numbering_system, {}))
+        return str(text).translate(_digits(self.code))
 
     def values(self, given: Mapping[str, object]) -> dict[str, object]:
         """Values for the places of a message: whole numbers in the language's digits, proper names in its form."""
@@ -80,7 +81,7 @@ class Language:
 
     def full_date(self, day: date) -> str:
         """Friday 20 February 2026"""
-        return self.digits(format_date(day, "full", self.locale))
+        return _full_date(self.code, day)
 
     def long_date(self, day: date) -> str:
         """20 February 2026"""
@@ -116,13 +117,11 @@ class Language:
 
     def clock(self, moment: datetime, seconds: bool = False) -> str:
         """20:15, by the clock of the moment's own zone."""
-        return self.digits(format_time(moment, "HH:mm:ss" if seconds else "HH:mm", locale=self.locale))
+        return self.digits(moment.strftime("%H:%M:%S" if seconds else "%H:%M"))
 
     def number(self, value: float, decimals: int = 4) -> str:
         """With a true minus sign and at most so many decimals."""
-        pattern = "#,##0." + "#" * decimals if decimals else "#,##0"
-        text = format_decimal(value, pattern, self.locale, numbering_system="default")
-        return self.digits(text.replace("-", "\u2212"))
+        return _number(self.code, value + 0.0, decimals)
 
     def month(self, month: int) -> str:
         """The name of a Hijri month, 1 to 12."""
@@ -134,7 +133,37 @@ class Language:
         return separator.join(items)
 
     def _date(self, skeleton: str, day: date) -> str:
-        return self.digits(format_skeleton(skeleton, day, locale=self.locale))
+        return _date(self.code, skeleton, day)
+
+
+# Texts made from values alone, each made once: the formatting of dates and numbers is slow, and a site repeats them.
+
+
+@cache
+def _locale(code: str) -> Locale:
+    return Locale.parse(_LOCALES.get(code, code.replace("-", "_")))
+
+
+@cache
+def _digits(code: str) -> dict[int, int]:
+    return _DIGITS.get(_locale(code).default_numbering_system, {})
+
+
+@lru_cache(maxsize=1 << 15)
+def _date(code: str, skeleton: str, day: date) -> str:
+    return format_skeleton(skeleton, day, locale=_locale(code)).translate(_digits(code))
+
+
+@lru_cache(maxsize=1 << 13)
+def _full_date(code: str, day: date) -> str:
+    return format_date(day, "full", _locale(code)).translate(_digits(code))
+
+
+@lru_cache(maxsize=1 << 15)
+def _number(code: str, value: float, decimals: int) -> str:
+    pattern = "#,##0." + "#" * decimals if decimals else "#,##0"
+    text = format_decimal(value, pattern, _locale(code), numbering_system="default")
+    return text.replace("-", "\u2212").translate(_digits(code))
 
 
 ENGLISH = Language()

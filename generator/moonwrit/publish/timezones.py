@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from datetime import UTC, datetime, timedelta
+from functools import cache
 from zoneinfo import ZoneInfo
 
 from icalendar import Timezone, TimezoneDaylight, TimezoneStandard
@@ -15,6 +16,7 @@ from icalendar import Timezone, TimezoneDaylight, TimezoneStandard
 _HOUR = timedelta(hours=1)
 
 
+@cache
 def vtimezone(zone: ZoneInfo, first_year: int, last_year: int) -> Timezone:
     """The zone's offsets in some civil years, both included."""
     first, last = (datetime(year, 1, 1, tzinfo=UTC) for year in (first_year, last_year + 1))
