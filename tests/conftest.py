@@ -37,6 +37,7 @@ JUDGES = {
     "jsqr": ("node", "chromium", "playwright-core/package.json", "jsqr/package.json"),
     "ical.js": ("node", "ical.js/package.json"),
     "playwright": ("node", "chromium", "playwright-core/package.json"),
+    "lighthouse": ("node", "chromium", "lighthouse/package.json"),
     "axe": ("node", "chromium", "playwright-core/package.json", "axe-core/axe.min.js"),
 }
 
@@ -133,3 +134,9 @@ def chromium() -> str:
     path = shutil.which("chromium")
     assert path, "mark the test with judge('chromium')"
     return path
+
+
+@pytest.fixture(scope="session")
+def node_modules() -> Path:
+    """Where the npm judges are."""
+    return NODE_MODULES
