@@ -17,10 +17,11 @@ import pytest
 from moonwrit.almanac import Almanac, assemble
 from moonwrit.content import load
 from moonwrit.policy import Margin
+from moonwrit.policy.differ import LongRun
 from moonwrit.policy.evening import Row, evening_at
 from moonwrit.policy.published import NamedPlace
 from moonwrit.publish.language import ENGLISH, Language
-from moonwrit.publish.pictures import LETTER, horizon, margins_strip, reach, seasons, text_width
+from moonwrit.publish.pictures import LETTER, agreement, horizon, margins_strip, reach, seasons, text_width
 from moonwrit.publish.render import stylesheet
 from moonwrit.resources import starter_folder
 from moonwrit.sky import Places, ephemeris
@@ -365,3 +366,15 @@ def test_first_days_stand_in_their_season(almanac: Almanac) -> None:
         assert far < radius
         assert (right / far, -down / far) == pytest.approx((sin(angle), cos(angle)), abs=0.005)
     assert len(marks) + len(every(svg, "ring")) == 33
+
+
+def test_a_stroke_stands_for_each_month_on_another_day() -> None:
+    """Expected: as many strokes upwards as months that begin later and downwards
+    as months that begin earlier, a unit for a day, up to two."""
+    days = (0, 1, -1, 2, 0, -2, -3, 0) + (0,) * 16
+    drawn = agreement(LongRun(1447, 1448, days), "Another", Language("en"))
+    paths = re.findall(r'<path class="stroke \w+" d="([^"]*)"', drawn)
+    later, earlier = (re.findall(r"v(-?\d+)", path) for path in paths)
+    assert later == ["-12", "-24"]
+    assert earlier == ["12", "24", "24"]
+    assert "Of 24 months 19 begin on the same day, 2 later and 3 earlier." in drawn

@@ -35,22 +35,30 @@ class Beside:
 
 @dataclass(frozen=True, slots=True)
 class LongRun:
-    """How many of the months of two methods begin on the same day, decisions left aside."""
+    """The months of two methods over whole Hijri years, decisions left aside: ``days`` by which theirs begin later."""
 
     first_year: int
     last_year: int
-    months: int
-    same: int
+    days: tuple[int, ...]
+
+    @property
+    def months(self) -> int:
+        return len(self.days)
+
+    @property
+    def same(self) -> int:
+        """How many begin on the same day."""
+        return self.days.count(0)
 
 
 def long_run(ours: Method, theirs: Method, first_year: int, last_year: int) -> LongRun | None:
     """The agreement of two methods over whole Hijri years; None where one of them cannot answer for all."""
     try:
         pairs = zip(ours.starts(first_year, last_year), theirs.starts(first_year, last_year), strict=True)
-        same = [our == their for our, their in pairs]
+        days = tuple((their - our).days for our, their in pairs)
     except RequestError:
         return None
-    return LongRun(first_year, last_year, len(same), sum(same))
+    return LongRun(first_year, last_year, days)
 
 
 def beside(method: Method, ours: Sequence[Month], our_method: Method) -> Beside:

@@ -74,7 +74,8 @@ def pages(edition: Edition, editions: Sequence[Edition]) -> Iterator[Page]:
     yield frame.page("places/", "places", _("Places"), next_evening=_next_evening(almanac))
     yield frame.page("policy/", "policy", _("The policy"), asked=asked_in_words(almanac.method, language))
     if almanac.others:
-        yield frame.page("differences/", "differences", _("Why it is another day elsewhere"), **_differences(almanac))
+        title = _("Why it is another day elsewhere")
+        yield frame.page("differences/", "differences", title, **_differences(almanac, language))
     yield frame.page("changes/", "changes", _("Changes"), moved=ledger.moved(almanac.calendar_id))
     yield frame.page("subscribe/", "subscribe", _("Subscribe"), **_subscribe(edition))
     yield frame.page("embed/", "embed", _("Put this calendar on your site"), **_embed(edition))
@@ -176,7 +177,7 @@ def _cells(almanac: Almanac, month: Month) -> list[Cell]:
     ]
 
 
-def _differences(almanac: Almanac) -> dict[str, object]:
+def _differences(almanac: Almanac, language: Language) -> dict[str, object]:
     shown = [other.beside for other in almanac.others]
     rows = []
     for index, month in enumerate(almanac.months):
@@ -185,6 +186,11 @@ def _differences(almanac: Almanac) -> dict[str, object]:
     feasts = [one for one in almanac.occurrences if "main" in one.tags and not one.night]
     return {
         "others": almanac.others,
+        "agreements": [
+            (name, svg(pictures.agreement(other.long_run, name, language)))
+            for other in almanac.others if other.long_run is not None
+            for name in [language.name(other.beside.method.title)]
+        ],
         "rows": rows,
         "feasts": [
             (one, [(other, _shift(other, one)) for other in shown]) for one in feasts

@@ -16,6 +16,7 @@ from zoneinfo import ZoneInfo
 from moonwrit.almanac import Almanac
 from moonwrit.policy import Margin, Month, Standing
 from moonwrit.policy.conditions import EDGE_SHARE
+from moonwrit.policy.differ import LongRun
 from moonwrit.policy.evening import Row
 from moonwrit.publish import words
 from moonwrit.publish.labels import STANDINGS
@@ -390,6 +391,41 @@ def seasons(almanac: Almanac, month: int, language: Language) -> str:
 
 
 # --- SVG ----------------------------------------------------------------------------------------------
+
+
+def agreement(long_run: LongRun, theirs: str, language: Language) -> str:
+    """A stroke for every month that another policy begins on another day: upwards later, downwards earlier, as long as
+    the days are many; nothing where both agree. A column is a month, and years go on to the right."""
+    _ = language.gettext
+    left = ceil(max(text_width(_("later")), text_width(_("earlier")))) + 8
+    right, unit, middle = 24, 12, 32
+    width = left + len(long_run.days) * 1.5 + right
+    later = "".join(_stroke(left, index, days, unit, middle) for index, days in enumerate(long_run.days) if days > 0)
+    earlier = "".join(_stroke(left, index, days, unit, middle) for index, days in enumerate(long_run.days) if days < 0)
+    parts = [_line("axis", left, middle, width - right, middle)]
+    for year in range(long_run.first_year, long_run.last_year + 1):
+        if year % 10 == 0:
+            x = left + (year - long_run.first_year) * 18
+            parts.append(_line("grid", x, middle - 28, x, middle + 28))
+            parts.append(_text(x, middle + 44, language.digits(year), "tick", "middle"))
+    parts += [
+        _text(left - 8, middle - 8, _("later"), "tick", "end"),
+        _text(left - 8, middle + 20, _("earlier"), "tick", "end"),
+        f'<path class="stroke later" d="{later}"/>', f'<path class="stroke earlier" d="{earlier}"/>',
+    ]
+    numbers = {
+        "policy": theirs, "first": language.digits(long_run.first_year), "last": language.digits(long_run.last_year),
+        "same": language.digits(long_run.same), "all": language.digits(long_run.months),
+        "later": language.digits(sum(days > 0 for days in long_run.days)),
+        "earlier": language.digits(sum(days < 0 for days in long_run.days)),
+    }
+    title = _("Where %(policy)s begins months on another day, %(first)s to %(last)s AH") % numbers
+    told = _("Of %(all)s months %(same)s begin on the same day, %(later)s later and %(earlier)s earlier.") % numbers
+    return _svg(round(width), middle + 50, title, told, "agreement", parts)
+
+
+def _stroke(left: float, index: int, days: int, unit: float, middle: float) -> str:
+    return f"M{left + index * 1.5 + 0.75:g} {middle}v{-unit * max(-2, min(2, days)):g}"
 
 
 def _line(kind: str, x1: float, y1: float, x2: float, y2: float) -> str:
