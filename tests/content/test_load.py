@@ -13,7 +13,7 @@ import jsonschema
 import pytest
 
 from moonwrit.content import Content, load, schemas, yaml
-from moonwrit.content.load import RECORD, SHAPES
+from moonwrit.content.load import OPTIONAL, RECORD, SHAPES
 from moonwrit.errors import ContentError
 
 EXAMPLE = Path(__file__).resolve().parents[2] / "content"
@@ -518,7 +518,7 @@ def test_the_example_is_whole() -> None:
 
 
 def test_the_schemas_are_schemas_and_the_example_keeps_them() -> None:
-    assert [*schemas()] == [*SHAPES, *RECORD]
+    assert [*schemas()] == [*SHAPES, *RECORD, *OPTIONAL]
     for file in FILES:
         schema = schemas()[file]
         assert schema["$schema"] == "https://json-schema.org/draft/2020-12/schema"

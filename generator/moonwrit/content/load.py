@@ -13,8 +13,10 @@ from pydantic import BaseModel, TypeAdapter
 
 from moonwrit.content import yaml
 from moonwrit.content.faults import checked, first_of, schema_of
+from moonwrit.content.look import Look, read_logo, too_faint
 from moonwrit.content.models import Identifier, Observance, Place, Region, Site
 from moonwrit.content.outlines import Polygons, read_outline
+from moonwrit.content.own import Own, dated, read_texts, theme_of
 from moonwrit.content.policies import Policy
 from moonwrit.content.record import Amendment, Decision, Report
 from moonwrit.content.tables import Table, read_table
@@ -42,6 +44,11 @@ RECORD: Mapping[str, TypeAdapter[Any]] = MappingProxyType(
     }
 )
 """The files of the record, which a new community does not have yet."""
+
+OPTIONAL: Mapping[str, TypeAdapter[Any]] = MappingProxyType({"look.yaml": TypeAdapter(Look)})
+"""Content files that a community may do without."""
+
+_ALL = {**SHAPES, **RECORD, **OPTIONAL}
 
 # Keys that name something defined elsewhere, wherever they stand: what a single name means, and what each
 # name in a list means. A new key of this kind needs a line here and nothing more.
@@ -86,6 +93,7 @@ class Content:
     amendments: tuple[Amendment, ...]
     outlines: Mapping[str, Polygons] = field(repr=False)
     tables: Mapping[str, Table] = field(repr=False)
+    own: Own = field(repr=False)
     documents: Mapping[str, Document] = field(repr=False, compare=False)
 
     def line_of(self, file: str, *path: str | int) -> int:
@@ -111,7 +119,7 @@ def load(
     documents: dict[str, Document] = {}
     values: dict[str, Any] = {}
     faults: list[ContentError] = []
-    for file, shape in {**SHAPES, **RECORD}.items():
+    for file, shape in _ALL.items():
         try:
             documents[file] = _read(folder, file)
         except ContentError as fault:
@@ -125,9 +133,10 @@ def load(
     faults += _missing_names(documents, values, published, criteria)
     if "site.yaml" in values:
         faults += _missing_words(documents, values)
+    own = _own(folder, documents, values, faults)
     if faults:
-        order = {folder / file: place for place, file in enumerate([*SHAPES, *RECORD])}
-        # Faults inside outlines and tables come last.
+        order = {folder / file: place for place, file in enumerate(_ALL)}
+        # Faults inside other files come last.
         raise first_of(sorted(faults, key=lambda fault: (order.get(Path(fault.file), len(order)), fault.line)))
     return Content(
         folder=folder,
@@ -141,25 +150,53 @@ def load(
         amendments=tuple(values["record/amendments.yaml"]),
         outlines=MappingProxyType(outlines),
         tables=MappingProxyType(tables),
+        own=own,
         documents=MappingProxyType(documents),
     )
 
 
 def schemas() -> dict[str, dict[str, Any]]:
     """The JSON Schema (2020-12) of each content file, for editors; by file name."""
-    return {file: {"title": file, **schema_of(shape)} for file, shape in {**SHAPES, **RECORD}.items()}
+    return {file: {"title": file, **schema_of(shape)} for file, shape in _ALL.items()}
 
 
 def _read(folder: Path, file: str) -> Document:
     path = folder / file
     if path.exists():
-        return yaml.read(path, empty=[] if file in RECORD else None)
-    if file in RECORD:
-        return Document(path, [], {(): 0})
+        return yaml.read(path, empty=_nothing(file))
+    if (empty := _nothing(file)) is not None:
+        return Document(path, empty, {(): 0})
     others = {other.name for other in folder.glob("*.y*ml")} - set(SHAPES)
     near = difflib.get_close_matches(file, sorted(others), n=1)
     mend = f'rename "{near[0]}" to {file}' if near else "add it, with {} where it has nothing to say"
     raise ContentError(path, 0, "the file is missing", mend)
+
+
+def _nothing(file: str) -> Any:
+    """The value of a file that is not there or empty; None where it has to be written."""
+    return [] if file in RECORD else {} if file in OPTIONAL else None
+
+
+def _own(
+    folder: Path, documents: Mapping[str, Document], values: Mapping[str, Any], faults: list[ContentError]
+) -> Own:
+    """The look, pages, notices and templates of the community; what is wrong with them goes to ``faults``."""
+    look, logo = values.get("look.yaml", Look()), None
+    if "look.yaml" in values:
+        faults += too_faint(documents["look.yaml"], look.colours)
+    if look.logo is not None:
+        try:
+            logo = read_logo(folder / look.logo.file)
+        except ContentError as fault:
+            faults.append(fault)
+    theme = theme_of(folder, faults)
+    if not {"site.yaml", "observances.yaml"} <= set(values):
+        return Own(look, logo, theme=theme)
+    pages, notices = (
+        read_texts(folder / kind, values["site.yaml"], values["observances.yaml"], faults)
+        for kind in ("pages", "notices")
+    )
+    return Own(look, logo, pages, dated(notices, folder / "notices", faults), theme)
 
 
 def _missing_names(
