@@ -5,7 +5,7 @@ Everything here is frozen. ``publish`` reads it and never edits it.
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from datetime import UTC, date, datetime, timedelta
 
@@ -16,7 +16,7 @@ from moonwrit.errors import RequestError
 from moonwrit.observances import Occurrence, occurrences
 from moonwrit.policy import Method, Month, method, named_place
 from moonwrit.policy.differ import Beside, LongRun, beside, long_run
-from moonwrit.policy.evening import Row, evening_at
+from moonwrit.policy.evening import Row, evenings_at
 from moonwrit.record import Weighed, in_force, superseded, weighed
 from moonwrit.record.decisions import objection
 
@@ -92,7 +92,7 @@ def assemble(content: Content, as_of: date, known_until: datetime | None = None)
             raise content.error("site.yaml", ("years",), fault.what, fault.mend) from None
         months = tuple(_amended(month, replaced.get(month.ordinal, ())) for month in months)
         region = content.regions[calendar.region]
-        evenings = tuple(_evening(month, region, content, known_until) for month in months)
+        evenings = _evenings(months, region, content, known_until)
         _refuse_impossible(content, calendar.policy, months, evenings)
         out.append(Almanac(
             calendar_id, calendar, content.site, adopted, region,
@@ -131,15 +131,21 @@ def _amended(month: Month, before: tuple[Decision, ...]) -> Month:
     return month
 
 
-def _evening(month: Month, region: Region, content: Content, known_until: datetime | None) -> Evening:
-    on = month.evidence.evening
-    rows = evening_at(on, [named_place(content, place_id) for place_id in region.places])
+def _evenings(
+    months: Sequence[Month], region: Region, content: Content, known_until: datetime | None
+) -> tuple[Evening, ...]:
     names = {place_id: in_language(place.name, content.site.language) for place_id, place in content.places.items()}
-    reports = [
-        report for report in content.reports
-        if report.evening == on and (known_until is None or report.recorded <= known_until)
-    ]
-    return Evening(on, month, dict(zip(region.places, rows, strict=True)), weighed(reports, content.places, names))
+    places = [named_place(content, place_id) for place_id in region.places]
+    out = []
+    for month, rows in zip(months, evenings_at([month.evidence.evening for month in months], places), strict=True):
+        on = month.evidence.evening
+        reports = [
+            report for report in content.reports
+            if report.evening == on and (known_until is None or report.recorded <= known_until)
+        ]
+        at = dict(zip(region.places, rows, strict=True))
+        out.append(Evening(on, month, at, weighed(reports, content.places, names)))
+    return tuple(out)
 
 
 def _refuse_impossible(

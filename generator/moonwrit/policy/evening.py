@@ -27,27 +27,38 @@ def evening_at(on: date, places: Sequence[NamedPlace]) -> list[Row]:
     The conjunction is the last one before the end of the next civil date. Raises RequestError for a date outside
     the ephemeris.
     """
+    return evenings_at([on], places)[0]
+
+
+def evenings_at(dates: Sequence[date], places: Sequence[NamedPlace]) -> list[list[Row]]:
+    """``evening_at`` of many dates, computed at once."""
+    if not dates:
+        return []
     sky = ephemeris()
-    day = on.toordinal()
-    noon_ut = day + 1721424.5 + 0.5
-    windows = sky.windows(np.array([noon_ut + 0.5]), _HALF_DAYS)
-    k = np.floor((noon_ut + 1.5 - 2451550.1) / SYNODIC_DAYS) + np.array([-1.0, 0.0, 1.0])
+    days = np.array([on.toordinal() for on in dates])
+    noon_ut = days + 1721424.5 + 0.5
+    windows = sky.windows(noon_ut + 0.5, _HALF_DAYS)
+    k = np.floor((noon_ut[:, None] + 1.5 - 2451550.1) / SYNODIC_DAYS) + np.array([-1.0, 0.0, 1.0])
     near = near_conjunction_tt(k.astype(np.int64))
-    latest = near[near <= noon_ut + 1.5][-1:]
+    latest = np.where(near <= noon_ut[:, None] + 1.5, near, -np.inf).max(axis=1)
     conjunction = conjunction_in(sky.windows(latest, 1.0))
-    c = Evenings(sky, windows, conjunction, np.array([[day]])).at(Places.of([p.row for p in places]))
+    c = Evenings(sky, windows, conjunction, days[:, None]).at(Places.of([p.row for p in places]))
+    at = described(c)
     return [
-        {
-            "date": on.isoformat(),
-            "place": place.name,
-            "latitude_deg": place.latitude_deg,
-            "longitude_deg": place.longitude_deg,
-            "elevation_m": place.elevation_m,
-            "timezone": place.zone.key if place.zone else None,
-            "conjunction_utc": iso(instant(sky, float(conjunction[0]))),
-            **described(c)((0, 0, index)),
-        }
-        for index, place in enumerate(places)
+        [
+            {
+                "date": on.isoformat(),
+                "place": place.name,
+                "latitude_deg": place.latitude_deg,
+                "longitude_deg": place.longitude_deg,
+                "elevation_m": place.elevation_m,
+                "timezone": place.zone.key if place.zone else None,
+                "conjunction_utc": iso(instant(sky, float(conjunction[row]))),
+                **at((row, 0, index)),
+            }
+            for index, place in enumerate(places)
+        ]
+        for row, on in enumerate(dates)
     ]
 
 

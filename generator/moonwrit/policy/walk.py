@@ -67,11 +67,14 @@ class Questions:
     def condition(self, ordinal: int) -> Condition:
         return [era.condition for era in self.eras if era.first <= ordinal][-1]
 
-    def met(self, row: int, day: int) -> bool:
-        column = day - int(self.days[row, 0])
-        if 0 <= column < _EVENINGS:
-            return bool(self.answers[row, column])
-        return bool(self.asked(np.array([row]), np.array([[day]]), lambda condition: condition)[0, 0])
+    def met(self, rows: Integers, days: Integers) -> Flags:
+        """The answers for the months of ``rows`` on ``days`` [row]."""
+        column = days - self.days[rows, 0]
+        known = (column >= 0) & (column < _EVENINGS)
+        found = self.answers[rows, np.where(known, column, 0)]
+        if not known.all():
+            found[~known] = self.asked(rows[~known], days[~known][:, None], lambda condition: condition)[:, 0]
+        return found
 
     def evenings(self, rows: Integers, days: Integers) -> Evenings:
         """Evenings ``days`` [row, evening] of the lunations ``rows``; a row whose dates lie outside the
@@ -115,18 +118,20 @@ def walk(
         )
     begin = max(earliest, first - LEAD_IN_MONTHS)
     questions = Questions(eras, begin, last + 1)
-    start = decided.get(begin, _first_start(questions))
-    steps = [Step(begin, start, start - 1, True, False, True)]
+    starts, evenings, met = [decided.get(begin, _first_start(questions))], [], []
     for row in range(1, last + 2 - begin):
-        evening = start + 28
-        is_met = questions.met(row, evening)
+        evenings.append(starts[-1] + 28)
+        met.append(bool(questions.met(np.array([row]), np.array(evenings[-1:]))[0]))
         # The record is asked first: what it says stands, and what follows is reckoned from it.
-        start = decided.get(begin + row, start + (29 if is_met else 30))
-        steps.append(Step(
-            begin + row, start, evening, is_met,
-            questions.met(row, evening - 1), is_met or questions.met(row, evening + 1),
-        ))
-    return questions, steps
+        starts.append(decided.get(begin + row, starts[-1] + (29 if met[-1] else 30)))
+    rows, days, is_met = np.arange(1, last + 2 - begin), np.array(evenings), np.array(met)
+    met_28th, met_30th = questions.met(rows, days - 1), is_met.copy()
+    met_30th[~is_met] = questions.met(rows[~is_met], days[~is_met] + 1)
+    first_step = Step(begin, starts[0], starts[0] - 1, True, False, True)
+    return questions, [first_step, *(
+        Step(begin + row, *step)
+        for row, step in enumerate(zip(starts[1:], evenings, met, met_28th.tolist(), met_30th.tolist(), strict=True), 1)
+    )]
 
 
 def _first_start(questions: Questions) -> int:
