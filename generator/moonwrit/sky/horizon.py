@@ -196,6 +196,7 @@ def crossing(
     places: Places,
     horizon: Horizon = STANDARD,
     altitude_deg: float | None = None,
+    near_tt: Array | None = None,
 ) -> tuple[Array, npt.NDArray[np.int8]]:
     """When the body sets after (``set``) or rises before (``rise``) an upper culmination.
 
@@ -203,11 +204,12 @@ def crossing(
     airless altitude of the centre (twilight). Returns TT (NaN where it does not happen) and the
     Crossing of each. Up to 60.5 degrees of latitude by Newton's method in hour angle; beyond, the
     altitude is sampled through the turn and the first crossing bracketed (a peep above the horizon or a
-    dip below it shorter than about four minutes counts as none).
+    dip below it shorter than about four minutes counts as none). ``near_tt``, of the same shape, spares Newton's
+    method its first steps: answers that are known to within a minute.
     """
     steep = np.abs(places.latitude_deg) > _STEEP_DEG
     if not steep.any():
-        return _newton(windows, body, turn, culmination_tt, places, horizon, altitude_deg)
+        return _newton(windows, body, turn, culmination_tt, places, horizon, altitude_deg, near_tt)
     tt = np.full(culmination_tt.shape, np.nan)
     state = np.zeros(culmination_tt.shape, dtype=np.int8)
     for solve, pick in ((_newton, ~steep), (_bracket, steep)):
@@ -227,15 +229,15 @@ def _target(
 
 def _newton(
     windows: Windows, body: Body, turn: Turn, culmination_tt: Array, places: Places,
-    horizon: Horizon, altitude_deg: float | None,
+    horizon: Horizon, altitude_deg: float | None, near_tt: Array | None = None,
 ) -> tuple[Array, npt.NDArray[np.int8]]:
     phi = np.radians(places.latitude_deg)
     sin_phi, cos_phi = np.sin(phi), np.cos(phi)
     rate = 2 * np.pi / _DAYS_PER_TURN[body]
     side = 1 if turn == "set" else -1
-    tt = culmination_tt
+    tt = culmination_tt if near_tt is None else near_tt
     cosine = np.zeros_like(tt)
-    for step in range(4 if body == "sun" else 6):
+    for step in range(2 if near_tt is not None else 4 if body == "sun" else 6):
         seen = direction(windows, body, tt, places)
         target = _target(body, seen, places, horizon, altitude_deg)
         cosine = (np.sin(target) - sin_phi * np.sin(seen.declination_rad)) / (
@@ -243,7 +245,7 @@ def _newton(
         )
         wanted = side * np.arccos(np.clip(cosine, -1, 1))
         gap = wanted - seen.hour_angle_rad
-        if step:
+        if step or near_tt is not None:
             # Near the answer the gap is small; the first step may be most of half a turn.
             gap = np.remainder(gap + np.pi, 2 * np.pi) - np.pi
         tt = tt + gap / rate
@@ -305,6 +307,12 @@ def noon_tt(sky: Ephemeris, windows: Windows, day: Integers, places: Places) -> 
             axis=-1,
         )
     return culmination(windows, "sun", sky.tt(near_ut), places)
+
+
+def reckoned_longitude_deg(zone: ZoneInfo | None, longitude_deg: float, day: int) -> float:
+    """The longitude at which a place stands in the order of the date's evenings: beyond 180 or -180 where its clocks
+    keep the date of the other side of the date line."""
+    return longitude_deg - 360 * float(_day_shift(zone, longitude_deg, np.array(day)))
 
 
 def _day_shift(zone: ZoneInfo | None, longitude_deg: float, day: Integers) -> Integers:
