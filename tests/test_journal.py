@@ -274,6 +274,7 @@ _KILLED = r"""
 import json, os, shutil, signal, sys
 from pathlib import Path
 import moonwrit.almanac, moonwrit.cli
+from moonwrit import building
 import moonwrit.publish.site  # loaded before the count begins
 
 content, output, start = (Path(word) for word in sys.argv[1:])
@@ -321,7 +322,8 @@ def state():
     return [site, beside, sorted((content / "record/journal.jsonl").read_text().splitlines())]
 
 begin()
-once(moonwrit.cli._content(content), moonwrit.cli._today(moonwrit.cli._content(content), moonwrit.cli._now()))
+community = building.content_of(content)
+once(community, building.today(community, building.now()))
 reading, writing = os.pipe()
 assert publish(log=writing) == 0
 os.close(writing)

@@ -10,13 +10,17 @@ from __future__ import annotations
 
 import json
 import os
+import re
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import asdict, dataclass, replace
 from datetime import UTC, date, datetime
 from pathlib import Path
-from typing import Literal
+from typing import Literal, get_args
+
+from pydantic import TypeAdapter
 
 from moonwrit.almanac import Almanac
+from moonwrit.content.models import Text
 from moonwrit.content.record import Amendment, Decision
 from moonwrit.errors import ContentError, MoonwritError
 from moonwrit.policy import Month
@@ -102,7 +106,7 @@ def read(folder: Path) -> tuple[Entry, ...]:
             continue
         try:
             entries.append(_parsed(line))
-        except (ValueError, KeyError, TypeError):
+        except (ValueError, KeyError, TypeError, AttributeError, RecursionError):
             if number == len(lines):
                 continue
             raise ContentError(
@@ -183,7 +187,7 @@ def recover(folder: Path, marker: Path, address: str) -> None:
     try:
         head, of, *lines = marker.read_text(encoding="utf-8").split("\n")
         added = [_parsed(line) for line in lines if line]
-    except (OSError, ValueError, KeyError, TypeError):
+    except (OSError, ValueError, KeyError, TypeError, AttributeError, RecursionError):
         return
     if head == _MARKER and of == address and added:
         known = set(read(folder))
@@ -314,6 +318,12 @@ def _year_of(key: str) -> int | None:
 # --- lines ----------------------------------------------------------------------------------------
 
 
+_PLAIN = ("calendar", "key", "standing", "seq", "because")
+_STANDINGS = get_args(Known)
+_NAME = re.compile(r"[a-z0-9]+(-[a-z0-9]+)*")
+_TEXT: TypeAdapter[str] = TypeAdapter(Text)
+
+
 def _line(entry: Entry) -> str:
     values = {name: value for name, value in asdict(entry).items() if value is not None}
     for name, value in values.items():
@@ -325,15 +335,22 @@ def _line(entry: Entry) -> str:
 
 
 def _parsed(line: str) -> Entry:
+    """Raises ValueError, KeyError, TypeError or RecursionError where the line is no entry.
+
+    It is not trusted: whoever may write into the folder would otherwise write into every feed.
+    """
     values = json.loads(line)
-    standing = values["standing"]
-    if standing not in ("expected", "settled", "amended", "withdrawn"):
-        raise ValueError(standing)
+    calendar, key, standing, seq, because = (values.get(name) for name in _PLAIN)
+    at = datetime.fromisoformat(values["at"])
+    names = [name for name in (calendar, key) if isinstance(name, str) and _NAME.fullmatch(name)]
+    is_whole = type(seq) is int and 0 <= seq < 2**31
+    is_moment = at.tzinfo is not None and 1 < at.year < 9999
+    if len(names) < 2 or not is_whole or standing not in _STANDINGS or not is_moment:
+        raise ValueError(line)
     return Entry(
-        str(values["calendar"]), str(values["key"]),
-        date.fromisoformat(values["starts"]), date.fromisoformat(values["ends"]), standing,
-        int(values["seq"]), datetime.fromisoformat(values["at"]),
-        date.fromisoformat(values["was"]) if "was" in values else None, values.get("because"),
+        calendar, key, date.fromisoformat(values["starts"]), date.fromisoformat(values["ends"]), standing, seq, at,
+        date.fromisoformat(values["was"]) if "was" in values else None,
+        None if because is None else _TEXT.validate_python(because),
     )
 
 

@@ -28,12 +28,19 @@ from pydantic import (
 _IDENTIFIER = r"^[a-z0-9]+(-[a-z0-9]+)*$"
 _LANGUAGE = r"^[a-z]{2,3}(-[A-Za-z0-9]{2,8})*$"
 _ISO = re.compile(r"[0-9]{4}-[0-9]{2}-[0-9]{2}")
-_CONTROL = re.compile(r"[\x00-\x08\x0b-\x1f\x7f\x85\u2028\u2029]")
+_CONTROL = re.compile(r"[\x00-\x08\x0b-\x1f\x7f-\x9f\u2028\u2029\ufdd0-\ufdef\ufffe\uffff]")
+# Embeddings, overrides and isolates: they would turn around what the site writes after the text, its standing for
+# instance. The marks U+200E, U+200F and U+061C, which turn nothing but themselves, remain.
+_TURNING = re.compile(r"[\u202a-\u202e\u2066-\u2069]")
+_LONGEST_NAME = 80
+"""Names become those of files, which no system lets be longer than about 250 bytes."""
 
 
 def _plain_text(value: str) -> str:
     if _CONTROL.search(value):
         raise ValueError("text holds a control character; remove it")
+    if turning := _TURNING.search(value):
+        raise ValueError(f"text holds U+{ord(turning.group()):04X}, which turns the text after it; remove it")
     if not value.strip():
         raise ValueError("text is empty; write something or drop the key")
     return value.strip()
@@ -69,6 +76,8 @@ def _language_codes(value: dict[str, str]) -> dict[str, str]:
 def _identifier(value: str) -> str:
     if not re.fullmatch(_IDENTIFIER, value):
         raise ValueError(f'"{value}" cannot be a name here; use small letters, digits and single hyphens')
+    if len(value) > _LONGEST_NAME:
+        raise ValueError(f'"{value[:20]}..." is too long a name; use at most {_LONGEST_NAME} letters')
     return value
 
 
@@ -294,7 +303,7 @@ class Site(_Model):
     address: Annotated[
         str,
         Field(
-            pattern=r"^https?://[^\s/?#]+(/[^\s?#]*)?$",
+            pattern=r"^https?://[A-Za-z0-9][A-Za-z0-9._-]*(:[0-9]{1,5})?(/[^\s?#\x00-\x1f\x7f-\x9f\\\"'<>^`{|}]*)?$",
             description="the address under which the site will stand, for instance https://example.org/calendar/",
         ),
     ]

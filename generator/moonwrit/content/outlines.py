@@ -12,6 +12,10 @@ from moonwrit.errors import ContentError
 
 MAX_BYTES = 8 * 1024 * 1024
 MAX_POINTS = 20_000
+MAX_POINTS_IN_ALL = 30_000
+MAX_SIDES_ABOVE = 1000
+"""No more sides of a ring than these may share a longitude: those of a coast are some dozens, and every two of them are
+held against each other."""
 
 _Position = tuple[float, float]
 Polygons = tuple[tuple[tuple[_Position, ...], ...], ...]
@@ -41,6 +45,8 @@ def read_outline(file: Path) -> Polygons:
         tuple(_ring(file, f"ring {r + 1} of polygon {p + 1}", ring) for r, ring in enumerate(polygon))
         for p, polygon in enumerate(_polygons(file, root))
     )
+    if sum(len(ring) for polygon in polygons for ring in polygon) > MAX_POINTS_IN_ALL:
+        raise ContentError(file, 0, f"the outline has more than {MAX_POINTS_IN_ALL} points", "simplify it")
     if not polygons:
         raise ContentError(file, 0, "there is no polygon in it", "export the outline as a Polygon")
     return polygons
@@ -80,7 +86,11 @@ def _ring(file: Path, name: str, ring: Any) -> tuple[_Position, ...]:
     if any(abs(one[0] - other[0]) > 180 for one, other in pairwise(points)):
         mend = "cut the polygon in two at 180 degrees (RFC 7946, 3.1.9)"
         raise ContentError(file, 0, f"{name} crosses the antimeridian", mend)
-    if (where := _crossing(points)) is not None:
+    try:
+        where = _crossing(points)
+    except OverflowError:
+        raise ContentError(file, 0, f"{name} goes to and fro too often to be checked", "simplify it") from None
+    if where is not None:
         what = f"{name} crosses itself near {where[0]:g}, {where[1]:g}"
         raise ContentError(file, 0, what, "draw it so that its sides meet only at its points")
     return points
@@ -89,7 +99,8 @@ def _ring(file: Path, name: str, ring: Any) -> tuple[_Position, ...]:
 def _crossing(points: tuple[_Position, ...]) -> _Position | None:
     """Where two sides of a ring cross or touch that are not neighbours; None where none do.
 
-    Sides are swept from west to east, so that only those that overlap in longitude are compared.
+    Sides are swept from west to east, so that only those that overlap in longitude are compared. Raises OverflowError
+    where these are too many.
     """
     sides = sorted(
         (min(one[0], other[0]), max(one[0], other[0]), number, one, other)
@@ -100,6 +111,8 @@ def _crossing(points: tuple[_Position, ...]) -> _Position | None:
     near: list[tuple[float, int, _Position, _Position]] = []
     for west, east, number, one, other in sides:
         near = [side for side in near if side[0] >= west]
+        if len(near) > MAX_SIDES_ABOVE:
+            raise OverflowError(len(near))
         for _, earlier, start, end in near:
             if abs(number - earlier) <= 1 or {number, earlier} == {0, last}:
                 continue

@@ -21,6 +21,8 @@ from moonwrit.errors import ContentError
 
 MAX_BYTES = 2 * 1024 * 1024
 MAX_DEPTH = 40
+MAX_VALUES = 150_000
+"""More than fit into 2 MB of real content. A file of nothing but brackets would hold a million: a minute, and 1 GB."""
 
 _CONSTANTS = {"": None, "~": None, "null": None, "true": True, "false": False}
 # Longer runs of digits, and those with a leading zero, are codes rather than quantities.
@@ -131,6 +133,7 @@ class _Loader(yaml.SafeLoader):
         super().__init__(text)
         self.file = file
         self.depth = 0
+        self.count = 0
 
     def compose_node(self, parent: yaml.Node | None, index: int) -> yaml.Node | None:
         event = self.peek_event()  # type: ignore[no-untyped-call]
@@ -145,6 +148,9 @@ class _Loader(yaml.SafeLoader):
             tag = event.tag.replace("tag:yaml.org,2002:", "!!")
             mend = "remove it, or put text that begins with ! in quotes"
             raise ContentError(self.file, line, f"the tag {tag} is not used", mend)
+        self.count += 1
+        if self.count > MAX_VALUES:
+            raise ContentError(self.file, line, f"there are more than {MAX_VALUES} values in it", "split or shorten it")
         nests = isinstance(event, yaml.CollectionStartEvent)
         self.depth += nests
         if self.depth > MAX_DEPTH:
@@ -208,4 +214,4 @@ def _plain_error(error: yaml.MarkedYAMLError, file: Path) -> ContentError:
     return ContentError(file, mark.line + 1 if mark else 0, f"this is not YAML ({problem})", mend)
 
 
-__all__ = ["MAX_BYTES", "MAX_DEPTH", "Document", "KeyPath", "parse", "read"]
+__all__ = ["MAX_BYTES", "MAX_DEPTH", "MAX_VALUES", "Document", "KeyPath", "parse", "read"]
