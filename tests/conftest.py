@@ -18,6 +18,9 @@ from typing import Any
 
 import pytest
 
+# Whoever runs the tests keeps nothing of them; tests of the cache name a folder of their own.
+os.environ["MOONWRIT_CACHE"] = "off"
+
 ROOT = Path(__file__).resolve().parent.parent
 NODE_MODULES = ROOT / ".judges" / "node_modules"
 

@@ -2,14 +2,20 @@
 
 from __future__ import annotations
 
+import sys
 from dataclasses import dataclass
 from functools import cache
+from hashlib import sha256
+from pathlib import Path
 
+import jplephem
 import numpy as np
 import numpy.typing as npt
+import skyfield
 
+from moonwrit.cache import kept
 from moonwrit.errors import RequestError
-from moonwrit.sky.ephemeris import Array, Ephemeris, Windows, ephemeris, series, vector
+from moonwrit.sky.ephemeris import NODES, Array, Ephemeris, Windows, ephemeris, series, vector
 
 Integers = npt.NDArray[np.int64]
 
@@ -20,6 +26,7 @@ BEFORE_DAYS = 2.2
 AFTER_DAYS = 4.4
 """A lunation's window reaches this far to either side of its conjunction: far enough for the evenings
 of four civil dates (the day before the conjunction's UTC date to two days after) anywhere on Earth."""
+_HALF_DAYS = (AFTER_DAYS + BEFORE_DAYS) / 2
 
 _FIRST_OF_2000 = 17037
 """Month ordinal (months since Muharram of the year 1) of Meeus's lunation k = 0, the new moon of
@@ -111,11 +118,33 @@ def lunations(first: int, last: int) -> Lunations:
 @cache
 def _lunations(sky: Ephemeris, first: int, last: int) -> Lunations:
     ordinal = np.arange(first, last + 1, dtype=np.int64)
-    near = near_conjunction_tt(ordinal - _FIRST_OF_2000)
-    windows = sky.windows(near + (AFTER_DAYS - BEFORE_DAYS) / 2, (AFTER_DAYS + BEFORE_DAYS) / 2)
-    tt = conjunction_in(windows)
-    ut = sky.ut(tt)
+
+    def computed() -> bytes:
+        near = near_conjunction_tt(ordinal - _FIRST_OF_2000)
+        windows = sky.windows(near + (AFTER_DAYS - BEFORE_DAYS) / 2, _HALF_DAYS)
+        tt = conjunction_in(windows)
+        parts = [windows.centre_tt, tt, sky.ut(tt), windows.sun_km, windows.moon_km, windows.gast_rad,
+                 windows.obliquity_rad]
+        return np.concatenate([part.reshape(-1, len(ordinal)) for part in parts]).tobytes()
+
+    # Kept on disk: the nutation series of a century costs more than all that is done with it afterwards.
+    file = sky.file.stat()
+    key = (sky.file.name, file.st_size, file.st_mtime_ns, _code(), first, last)
+    rows = np.frombuffer(kept("lunations", key, computed)).reshape(-1, len(ordinal))
+    centre, tt, ut, *_ = rows
+    sun, moon, gast, obliquity = np.split(rows[3:], np.cumsum([3 * NODES, 3 * NODES, NODES]))
+    in_space = (NODES, 3, len(ordinal))
+    windows = Windows(centre, _HALF_DAYS, sun.reshape(in_space), moon.reshape(in_space), gast, obliquity)
     return Lunations(sky, ordinal, tt, ut, ut_day(ut), windows)
+
+
+@cache
+def _code() -> str:
+    """What the numbers depend on beside the ephemeris: this package, and what it computes with."""
+    digest = sha256(f"{np.__version__} {skyfield.__version__} {jplephem.__version__} {sys.byteorder}".encode())
+    for file in sorted(Path(__file__).parent.glob("*.py")):
+        digest.update(file.read_bytes())
+    return digest.hexdigest()
 
 
 def ut_day(ut: Array) -> Integers:
