@@ -90,7 +90,7 @@ def publish(
         almanacs, ledger = held(content, folder, as_of)
     with progress("Writing the site"):
         # A replay leaves nothing in the site for the journal to recover.
-        files = put(almanacs, ledger if as_of is None else replace(ledger, added=()), output, paper)
+        files = put(almanacs, ledger if as_of is None else replace(ledger, added=()), output, paper, content.own)
     if as_of is None:
         journal.append(folder, ledger.added)
     return files

@@ -68,7 +68,7 @@ def build(folder: Path, output: Path, as_of: date | None) -> list[str]:
         said.append(f"publish would stop: {fault}")
         almanacs = assemble(content, as_of or today(content, now()))
         ledger = hold_against((), almanacs, (), now())
-    put(almanacs, replace(ledger, added=()), output)
+    put(almanacs, replace(ledger, added=()), output, own=content.own)
     return said
 
 

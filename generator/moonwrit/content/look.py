@@ -21,6 +21,8 @@ ENOUGH = 4.5
 """Contrast of text with what is behind it: WCAG 2.2, success criterion 1.4.3, level AA."""
 MAX_BYTES = 256 * 1024
 MAX_PIXELS = 4096
+HEIGHT, WIDTH = 40, 192
+"""The room for a logo in the masthead, in CSS pixels."""
 
 Colour = Annotated[
     str, Field(pattern=r"^#([0-9A-Fa-f]{3}|[0-9A-Fa-f]{6})$", description="a colour in quotes, such as '#14506e'")
@@ -65,6 +67,10 @@ class Look(_Model):
     logo: LogoFile | None = None
     footer: Words | None = None
 
+    @property
+    def has_colours(self) -> bool:
+        return bool(self.colours.given() or self.colours.dark.given())
+
 
 @dataclass(frozen=True, slots=True)
 class Logo:
@@ -74,6 +80,15 @@ class Logo:
     data: bytes
     width: float
     height: float
+
+    @property
+    def shown_height(self) -> int:
+        """Pixels in the masthead: one size of every logo, less where it is long."""
+        return max(1, min(HEIGHT, round(WIDTH * self.height / self.width)))
+
+    @property
+    def shown_width(self) -> int:
+        return max(1, min(WIDTH, round(HEIGHT * self.width / self.height)))
 
 
 # The theme's own, as in style.css; a test holds the two together.

@@ -37,9 +37,11 @@ _FORMS = {
     "month-start": "{month-start 9 1448}", "standing": "{standing eid-al-fitr 1448} or {standing 9 1448}",
 }
 _FOUND = re.compile(r"\\(?P<plain>[\\{}])|\{(?P<words>[^{}\n]*)\}|(?P<lone>\{)")
-_REFUSED = re.compile(r"[\x00-\x08\x0b-\x1f\x7f-\x9f\u2028\u2029\ue000-\uf8ff\ufeff\ufffe\uffff]")
+_REFUSED = re.compile(r"[\x00-\x08\x0b-\x1f\x7f-\x9f\u2028-\u202e\u2066-\u2069\ue000-\uf8ff\ufeff\ufffe\uffff]")
 # Marks that stand for what is put in, while Markdown is read; the text itself cannot hold them.
 _MARK = re.compile("\ue000(\\d+)\ue001")
+# A line that ends within a paragraph.
+_WRAPPED = re.compile(r"\n(?!</?(?:p|h[2-6]|[uo]l|li|blockquote|pre|table|thead|tbody|tr|td|th|hr)\b)")
 _SCHEMES = frozenset({"http", "https", "mailto", "webcal"})
 _TAGS = frozenset({
     "a", "blockquote", "br", "code", "em", "h2", "h3", "h4", "h5", "h6", "hr", "li", "ol", "p", "pre", "strong",
@@ -82,7 +84,8 @@ class Written:
         """The body as plain text, a paragraph a line."""
         import nh3
 
-        bare = html.unescape(nh3.clean(_filled(self.body, value), tags=set()))
+        unwrapped = _WRAPPED.sub(" ", _filled(self.body, value))
+        bare = html.unescape(nh3.clean(unwrapped, tags=set()))
         return "\n".join(line for line in (line.strip() for line in bare.splitlines()) if line)
 
 

@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from datetime import datetime
 from functools import cached_property
 from urllib.parse import urlsplit
 
 from moonwrit.almanac import Almanac
 from moonwrit.content.models import Site, in_language
+from moonwrit.content.own import Own
 from moonwrit.journal import Entry, Ledger
 from moonwrit.policy import Month
 from moonwrit.publish.language import Language
@@ -27,6 +28,7 @@ class Edition:
     ledger: Ledger
     language: Language
     is_main: bool = True
+    own: Own = field(default_factory=Own)
 
     @property
     def site(self) -> Site:

@@ -16,6 +16,7 @@ from moonwrit.publish import words
 from moonwrit.publish.basis import json_bytes, utc
 from moonwrit.publish.edition import Edition
 from moonwrit.publish.language import Language
+from moonwrit.publish.own import own_notices
 
 _ATOM = "http://www.w3.org/2005/Atom"
 KEPT = 60
@@ -24,18 +25,22 @@ KEPT = 60
 
 @dataclass(frozen=True, slots=True)
 class Notice:
-    """One decision, or one published date moved or withdrawn. ``name`` is lasting and unique in the calendar."""
+    """One decision, one published date moved or withdrawn, or one of the community's own notices.
+
+    ``name`` is lasting and unique in the calendar; ``html`` is the text of a notice, with whole addresses.
+    """
 
     name: str
     title: str
     text: str
     path: str
     at: datetime
+    html: str = ""
 
 
 def notices(edition: Edition) -> list[Notice]:
     """Newest first, at most ``KEPT``."""
-    found = [*_decisions(edition), *_changes(edition)]
+    found = [*_decisions(edition), *_changes(edition), *_own(edition)]
     return sorted(found, key=lambda notice: (notice.at, notice.name), reverse=True)[:KEPT]
 
 
@@ -58,7 +63,7 @@ def atom_feed(edition: Edition) -> bytes:
         _add(entry, "updated", str(utc(notice.at)))
         _add(entry, "published", str(utc(notice.at)))
         ET.SubElement(entry, "link", {"rel": "alternate", "href": edition.page(notice.path), "type": "text/html"})
-        _add(entry, "content", notice.text).set("type", "text")
+        _add(entry, "content", notice.html or notice.text).set("type", "html" if notice.html else "text")
     ET.indent(root, " ")
     text = ET.tostring(root, encoding="unicode")
     return f'<?xml version="1.0" encoding="utf-8"?>\n{text}\n'.encode()
@@ -79,6 +84,7 @@ def json_feed(edition: Edition) -> bytes:
                 "url": edition.page(notice.path),
                 "title": notice.title,
                 "content_text": notice.text,
+                **({"content_html": notice.html} if notice.html else {}),
                 "date_published": utc(notice.at),
             }
             for notice in notices(edition)
@@ -135,6 +141,12 @@ def _changes(edition: Edition) -> Iterable[Notice]:
             title = _("%(what)s has moved to %(is)s")
             text = _("It was published as %(was)s and is now %(is)s. Reason: %(reason)s.")
         yield Notice(f"change-{entry.key}-{entry.seq}", title % names, text % names, "changes/", entry.at)
+
+
+def _own(edition: Edition) -> Iterable[Notice]:
+    for one in own_notices(edition):
+        html = one.html(edition.page(one.path))
+        yield Notice(one.path.strip("/").replace("/", "-"), one.title, one.text, one.path, one.at, html)
 
 
 def _updated(edition: Edition) -> datetime:

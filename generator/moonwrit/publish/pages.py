@@ -23,6 +23,7 @@ from moonwrit.publish.civil import civil_months, civil_years
 from moonwrit.publish.edition import Edition, tree
 from moonwrit.publish.icalendar import tags
 from moonwrit.publish.language import Language
+from moonwrit.publish.own import Shown, own_notices, own_pages, recent
 from moonwrit.publish.render import Page, svg
 from moonwrit.publish.schemas import schemas
 
@@ -46,7 +47,8 @@ def pages(edition: Edition, editions: Sequence[Edition]) -> Iterator[Page]:
     almanac, ledger, language = edition.almanac, edition.ledger, edition.language
     _ = language.gettext
     frame = _Frame(edition, editions)
-    yield frame.page("", "home", edition.name, **_home(almanac))
+    notices = own_notices(edition)
+    yield frame.page("", "home", edition.name, **_home(almanac), notices=recent(notices, almanac.as_of))
     months = almanac.months
     for year in range(months[0].year, months[-1].year + 1):
         title = _("Year %(year)s") % {"year": language.digits(year)}
@@ -80,6 +82,10 @@ def pages(edition: Edition, editions: Sequence[Edition]) -> Iterator[Page]:
     yield frame.page("subscribe/", "subscribe", _("Subscribe"), **_subscribe(edition))
     yield frame.page("embed/", "embed", _("Put this calendar on your site"), **_embed(edition))
     yield frame.page("reading/", "reading", _("How to read these pages"))
+    for one in (*own_pages(edition), *notices):
+        yield frame.page(one.path, "own", one.title, one=one, body=_clean(one))
+    if notices:
+        yield frame.page("notices/", "notices", _("Notices"), notices=notices)
     if edition.is_main:
         yield Page("404.html", "missing", _("No such page"), frame.common)
 
@@ -101,6 +107,8 @@ class _Frame:
             ],
             "civil_years": civil_years(almanac),
             "years": range(almanac.months[0].year, almanac.months[-1].year + 1),
+            "own_pages": own_pages(editions[0]),
+            "has_notices": bool(own_notices(editions[0])),
             "month_path": month_path,
             "evening_path": evening_path,
             "month_of": edition.month_of.__getitem__,
@@ -109,6 +117,11 @@ class _Frame:
 
     def page(self, folder: str, template: str, title: str, **given: object) -> Page:
         return Page(f"{self.base}{folder}index.html", template, title, {**self.common, **given})
+
+
+def _clean(one: Shown) -> Markup:
+    """The text as HTML that was made safe where it was read."""
+    return Markup(one.html())
 
 
 def month_path(month: Month) -> str:

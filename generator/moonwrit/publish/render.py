@@ -2,17 +2,31 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
+from contextlib import contextmanager
 from dataclasses import dataclass, field
 from datetime import datetime
-from functools import cache
+from pathlib import Path
+from traceback import extract_tb
 from typing import Any
 
-from jinja2 import Environment, FileSystemLoader, StrictUndefined, pass_eval_context
+from jinja2 import (
+    BaseLoader,
+    ChoiceLoader,
+    Environment,
+    FileSystemLoader,
+    PrefixLoader,
+    StrictUndefined,
+    TemplateNotFound,
+    TemplateSyntaxError,
+    pass_eval_context,
+)
 from jinja2.nodes import EvalContext
 from markupsafe import Markup, escape
 
 from moonwrit.content.models import Site, in_language
+from moonwrit.content.own import Own
+from moonwrit.errors import ContentError
 from moonwrit.publish import labels, words
 from moonwrit.publish.edition import tree
 from moonwrit.publish.language import Language
@@ -54,10 +68,12 @@ class Renderer:
     ``top`` to a path from the top of the site.
     """
 
-    def __init__(self, site: Site, language: Language) -> None:
+    def __init__(self, site: Site, language: Language, own: Own | None = None) -> None:
+        own = own or Own()
         self.up = "../" if tree(site, language.code) else ""
+        self.theme = own.theme
         self.environment = Environment(
-            loader=FileSystemLoader(themes_folder() / THEME),
+            loader=_loader(own.theme),
             autoescape=lambda name: name is None or name.endswith((".html", ".xml")),
             undefined=StrictUndefined,
             trim_blocks=True,
@@ -85,25 +101,67 @@ class Renderer:
             clock=lambda iso, zone: language.clock(datetime.fromisoformat(iso).astimezone(zone)),
             outcomes=labels.OUTCOMES,
             aids=labels.AIDS,
+            own=own, logo_alt=_logo_alt(own, site, language),
         )
 
     def text(self, template: str, given: dict[str, Any]) -> bytes:
         """A plain text, not escaped."""
-        return self.environment.get_template(template).render(**given).encode()
+        return self._made(template, given)
 
     def sitemap(self, pages: Sequence[Page]) -> bytes:
         """``sitemap.xml`` (sitemaps.org 0.9), each page with its other languages."""
-        return self.environment.get_template("sitemap.xml").render(pages=pages).encode()
+        return self._made("sitemap.xml", {"pages": pages})
 
     def render(self, page: Page) -> bytes:
-        template = self.environment.get_template(f"pages/{page.template}.html")
-        text = template.render(
-            page=page,
-            url=lambda path: (page.root + path) or "./",
-            top=lambda path: (page.root + self.up + path) or "./",
+        return self._made(f"pages/{page.template}.html", {
             **page.given,
-        )
-        return text.encode()
+            "page": page,
+            "url": lambda path: (page.root + path) or "./",
+            "top": lambda path: (page.root + self.up + path) or "./",
+        })
+
+    def check(self) -> None:
+        """Read every template of the community's own. Raises ContentError."""
+        for file in sorted(self.theme.rglob("*") if self.theme else ()):
+            if file.is_file() and file.suffix in (".html", ".txt", ".xml", ".js") and not file.name.startswith("."):
+                with self._faults():
+                    self.environment.get_template(file.relative_to(self.theme or file).as_posix())
+
+    def _made(self, template: str, given: Mapping[str, Any]) -> bytes:
+        with self._faults():
+            return self.environment.get_template(template).render(**given).encode()
+
+    @contextmanager
+    def _faults(self) -> Iterator[None]:
+        """What fails in a template of the community's own is theirs to mend, and one message with its line."""
+        try:
+            yield
+        except Exception as fault:
+            where = [(frame.filename, frame.lineno or 0) for frame in extract_tb(fault.__traceback__)]
+            if isinstance(fault, TemplateSyntaxError):
+                where.append((fault.filename or "", fault.lineno))
+            own = [(file, line) for file, line in where if self.theme and Path(file).is_relative_to(self.theme)]
+            if not own:
+                raise
+            said = " ".join(str(fault).split())[:200]
+            if isinstance(fault, TemplateNotFound):
+                said = f'there is no template "{fault.name}"'
+            mend = "mend it, or remove the file to have the theme's own"
+            raise ContentError(*own[-1], f"the template fails ({said or type(fault).__name__})", mend) from fault
+
+
+def _logo_alt(own: Own, site: Site, language: Language) -> str:
+    """Nothing where it would only repeat the community's name, which stands beside the logo."""
+    if own.look.logo is None:
+        return ""
+    alt, name = (in_language(one, language.code, site.language) for one in (own.look.logo.alt, site.community))
+    return "" if alt == name else alt
+
+
+def _loader(own: Path | None) -> BaseLoader:
+    """The community's own templates first. ``moonwrit/pages/home.html`` always names that of the theme."""
+    theme = FileSystemLoader(themes_folder() / THEME)
+    return theme if own is None else ChoiceLoader([FileSystemLoader(own), theme, PrefixLoader({THEME: theme})])
 
 
 def _filled(context: EvalContext, message: str, values: Mapping[str, object]) -> str:
@@ -111,20 +169,23 @@ def _filled(context: EvalContext, message: str, values: Mapping[str, object]) ->
     return (escape(message) if context.autoescape else message) % values
 
 
-@cache
-def stylesheet() -> bytes:
+def stylesheet(own: Path | None = None) -> bytes:
     """``style.css`` of the site: that of pages, and that of what is drawn."""
-    return (themes_folder() / THEME / "style.css").read_bytes() + pictures_sheet()
+    return _asset("style.css", own) + pictures_sheet(own)
 
 
-@cache
-def icon() -> bytes:
-    return (themes_folder() / THEME / "icon.svg").read_bytes()
+def icon(own: Path | None = None) -> bytes:
+    return _asset("icon.svg", own)
 
 
-@cache
-def pictures_sheet() -> bytes:
-    return (themes_folder() / THEME / "pictures.css").read_bytes()
+def pictures_sheet(own: Path | None = None) -> bytes:
+    return _asset("pictures.css", own)
+
+
+def _asset(name: str, own: Path | None) -> bytes:
+    """A file of the theme as it is, or the community's own of that name."""
+    theirs = own / name if own is not None else None
+    return (theirs if theirs and theirs.is_file() else themes_folder() / THEME / name).read_bytes()
 
 
 def svg(text: str) -> Markup:

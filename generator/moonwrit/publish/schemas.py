@@ -211,8 +211,9 @@ def _calendar() -> dict[str, Any]:
 
 def _notices() -> dict[str, Any]:
     item = _object({
-        "id": _ADDRESS, "url": _ADDRESS, "title": _TEXT, "content_text": _TEXT, "date_published": _UTC,
-    }, "One decision, or one published date moved or withdrawn.")
+        "id": _ADDRESS, "url": _ADDRESS, "title": _TEXT, "content_text": _TEXT, "content_html": _TEXT,
+        "date_published": _UTC,
+    }, "One decision, one published date moved or withdrawn, or one notice, which is HTML too.", ("content_html",))
     return _object({
         "version": {"const": "https://jsonfeed.org/version/1.1"},
         "title": _TEXT,

@@ -9,6 +9,7 @@ from urllib.parse import urlsplit
 
 from moonwrit.almanac import Almanac
 from moonwrit.content.models import in_language
+from moonwrit.content.own import Own
 from moonwrit.journal import Ledger, site_marker
 from moonwrit.publish.basis import basis_feed
 from moonwrit.publish.dates import next_feed, year_file
@@ -19,6 +20,7 @@ from moonwrit.publish.jscalendar import calendar_feed
 from moonwrit.publish.language import Language
 from moonwrit.publish.messages import messages
 from moonwrit.publish.notices import atom_feed, json_feed
+from moonwrit.publish.own import look_sheet
 from moonwrit.publish.pages import pages
 from moonwrit.publish.render import Page, Renderer, icon, stylesheet
 from moonwrit.publish.schemas import schema_files
@@ -26,16 +28,25 @@ from moonwrit.publish.sheets import SHEETS, Paper, sheet
 from moonwrit.publish.writing import put_in_place
 
 
-def site_files(almanacs: Sequence[Almanac], ledger: Ledger, paper: Paper | None = None) -> dict[str, bytes]:
-    """The whole site, path -> content. The first almanac is the main calendar. ``paper``: with PDF sheets."""
-    site = almanacs[0].site
-    files = {"style.css": stylesheet(), "icon.svg": icon(), **schema_files()}
+def site_files(
+    almanacs: Sequence[Almanac], ledger: Ledger, paper: Paper | None = None, own: Own | None = None
+) -> dict[str, bytes]:
+    """The whole site, path -> content. The first almanac is the main calendar. ``paper``: with PDF sheets.
+
+    ``own``: the community's look, pages, notices and templates. Raises ContentError where one of the last fails.
+    """
+    site, own = almanacs[0].site, own or Own()
+    files = {"style.css": stylesheet(own.theme), "icon.svg": icon(own.theme), **schema_files()}
+    if colours := look_sheet(own.look):
+        files["look.css"] = colours
+    if own.logo:
+        files[own.logo.path] = own.logo.data
     listed: list[Page] = []
     for code in site.all_languages:
         names = {in_language(name, site.language): in_language(name, code, site.language) for name in almanacs[0].names}
         language = Language(code, names)
-        renderer = Renderer(site, language)
-        editions = [Edition(almanac, ledger, language, index == 0) for index, almanac in enumerate(almanacs)]
+        renderer = Renderer(site, language, own)
+        editions = [Edition(almanac, ledger, language, index == 0, own) for index, almanac in enumerate(almanacs)]
         for edition in editions:
             for made in pages(edition, editions):
                 page = replace(made, has_sheet=paper is not None and made.template in SHEETS)
@@ -47,7 +58,7 @@ def site_files(almanacs: Sequence[Almanac], ledger: Ledger, paper: Paper | None 
             files.update(_feeds(edition, alone=len(editions) == 1))
             files.update(embed_files(edition, renderer))
         files.update(messages(editions[0], renderer))
-    files["sitemap.xml"] = Renderer(site, Language(site.language)).sitemap(listed)
+    files["sitemap.xml"] = Renderer(site, Language(site.language), own).sitemap(listed)
     if urlsplit(site.address).path in ("", "/"):
         # Robots ask for it at the top of a host only (RFC 9309, 2.3).
         files["robots.txt"] = f"User-agent: *\nAllow: /\nSitemap: {site.address.rstrip('/')}/sitemap.xml\n".encode()
@@ -78,9 +89,11 @@ def _feeds(edition: Edition, *, alone: bool) -> dict[str, bytes]:
     return {edition.tree + folder + name: content for folder in folders for name, content in feeds.items()}
 
 
-def publish(almanacs: Sequence[Almanac], ledger: Ledger, output: Path, paper: Paper | None = None) -> int:
+def publish(
+    almanacs: Sequence[Almanac], ledger: Ledger, output: Path, paper: Paper | None = None, own: Own | None = None
+) -> int:
     """Build the site and put it in place; returns the number of its files."""
-    files = site_files(almanacs, ledger, paper)
+    files = site_files(almanacs, ledger, paper, own)
     put_in_place(files, output, site_marker(ledger, almanacs[0].site.address))
     return len(files)
 
