@@ -7,15 +7,10 @@ from datetime import date
 from functools import cache
 from typing import TYPE_CHECKING
 
-from moonwrit.calendars import (
-    THIRTY_THREE_YEAR,
-    SolarHijri,
-    julian_from_date,
-    rumi_from_date,
-)
 from moonwrit.errors import RequestError
 
 if TYPE_CHECKING:
+    from moonwrit.calendars import SolarHijri
     from moonwrit.content.models import OtherCalendar
 
 TITLES: Mapping[OtherCalendar, str] = {
@@ -29,6 +24,7 @@ TITLES: Mapping[OtherCalendar, str] = {
 
 @cache
 def _astronomical() -> SolarHijri:
+    from moonwrit.calendars import SolarHijri
     from moonwrit.sky.equinox import march_equinox
 
     return SolarHijri.from_equinoxes(march_equinox)
@@ -39,6 +35,9 @@ def in_calendar(day: date, calendar: OtherCalendar) -> str | None:
 
     The solar Hijri calendar is the astronomical one (noon of 52.5 E) inside the ephemeris.
     """
+    # Here, for the command's help needs the titles alone.
+    from moonwrit.calendars import THIRTY_THREE_YEAR, julian_from_date, rumi_from_date
+
     try:
         match calendar:
             case "solar-hijri":

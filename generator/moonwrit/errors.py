@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import difflib
 from collections.abc import Iterable
 from pathlib import Path
 
@@ -49,6 +48,8 @@ class UsageError(MoonwritError):
 
 def did_you_mean(word: str, known: Iterable[str]) -> str:
     """A hint naming the nearest known spelling, or else all that is known."""
+    import difflib
+
     names = sorted(known)
     near = difflib.get_close_matches(word, names, n=1, cutoff=0.6)
     if near:
