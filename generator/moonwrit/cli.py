@@ -132,6 +132,11 @@ def preview(folder: Path, as_of: date | None, port: int) -> None:
 def check(folder: Path) -> None:
     """Check the content files; says nothing but a word where all is well."""
     content = _content(folder)
+    if content.own.theme is not None:
+        from moonwrit.publish.language import Language
+        from moonwrit.publish.render import Renderer
+
+        Renderer(content.site, Language(content.site.language), content.own).check()
     click.echo(
         f"{folder}: all is well ({len(content.places)} places, {len(content.policies)} policies, "
         f"{len(content.observances)} observances)"
@@ -364,15 +369,12 @@ def decision(folder: Path, **given: Any) -> None:
 @click.argument("folder", metavar="DIR", type=click.Path(path_type=Path))
 def begin(folder: Path) -> None:
     """Write a new, commented content folder to start from."""
-    import shutil
-
-    from moonwrit.resources import starter_folder
+    from moonwrit.beginning import begin as write
 
     if folder.exists() and any(folder.iterdir() if folder.is_dir() else [folder]):
         raise RequestError(f"{folder} is there already and not empty", "name a new folder")
     try:
-        # The demonstration's record and journal are its own: a new community begins without.
-        shutil.copytree(starter_folder(), folder, dirs_exist_ok=True, ignore=shutil.ignore_patterns("record"))
+        write(folder)
     except OSError as fault:
         raise RequestError(f"{folder} cannot be written ({fault.strerror})", "name another folder") from None
     click.echo(f"{folder} is yours to change: begin with {folder / 'site.yaml'}")
