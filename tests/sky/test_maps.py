@@ -14,7 +14,7 @@ from moonwrit.sky import Circumstances, Evenings, Places, lunations
 from moonwrit.sky.criteria import criterion, cubic
 from moonwrit.sky.ephemeris import Array
 from moonwrit.sky.horizon import reckoned_longitude_deg
-from moonwrit.sky.maps import Grid, over
+from moonwrit.sky.maps import Grid, over, spanned
 
 FIRST, LAST = 17347, 17372
 EARTH = Grid.over(-180, -60, 180, 60, 0.5)
@@ -43,7 +43,7 @@ def evening(row: int, after: int = 1) -> Evenings:
 def test_a_map_is_the_circumstances_of_its_points(row: int, after: int) -> None:
     """At 500 random points of a half-degree map: q within 1e-5, moonset within 0.1 s, sunset within 0.01 s."""
     asked = evening(row, after)
-    fields = over(EARTH, asked, q, moonset_tt, sunset_tt)
+    fields = over(EARTH, spanned(asked), q, moonset_tt, sunset_tt)
     pick = np.random.default_rng(row).choice(EARTH.shape[0] * EARTH.shape[1], 500, replace=False)
     c = asked.at(EARTH.places().pick(pick))
     for field, of, within in zip(fields, (q, moonset_tt, sunset_tt), (1e-5, 0.1 / 86400, 0.01 / 86400), strict=True):
@@ -61,7 +61,7 @@ def test_a_map_agrees_with_skyfield_alone(name: str) -> None:
     grid = Grid.over(longitude - 20, max(-60, latitude - 20), longitude + 20, min(60, latitude + 20), 0.5)
     at = int(np.abs(grid.latitude_deg - latitude).argmin()), int(np.abs(grid.longitude_deg - longitude).argmin())
     site = Site(float(grid.latitude_deg[at[0]]), float(grid.longitude_deg[at[1]]))
-    q_here, moonset, sunset = (float(field[at]) for field in over(grid, asked, q, moonset_tt, sunset_tt))
+    q_here, moonset, sunset = (float(field[at]) for field in over(grid, spanned(asked), q, moonset_tt, sunset_tt))
     noon = float(asked.day[0, 0]) + 1721424.5 + 0.5 - site.longitude / 360
     theirs, _ = site.first_crossing_tt("sun", noon, 1.0)
     assert theirs is not None
