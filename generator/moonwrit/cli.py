@@ -289,6 +289,53 @@ def differ(
             click.echo(f"  {each.ours.year}-{each.ours.month:02d}: {each.days:+d} d. {each.reason}")
 
 
+@main.command()
+@_shared("content")
+@click.option("--policy", "policies", multiple=True, metavar="P",
+              help="A policy of the content, or a published one; may be repeated. Default: all of the content.")
+@_shared("place")
+@click.option("--grid", metavar="DEGREES", type=click.FloatRange(0.05, 60),
+              help="Instead of places, a grid of this step between 60 S and 60 N.")
+@_shared("years")
+@click.option("--ephemeris", default="", metavar="FILE",
+              help="A JPL kernel in place of DE421 (1899-2053), or long-range: DE440 (1550-2650), an extra.")
+@click.option("--output", type=click.Path(path_type=Path), default=Path("survey"), show_default=True,
+              help="Folder of the units and results; what is finished there is not done again.")
+@click.option("--workers", type=click.IntRange(1, 256), default=os.cpu_count() or 1, metavar="N",
+              help="How many processes of this machine.")
+@click.option("--scheduler", metavar="ADDRESS", help="A Dask cluster to work on instead.")
+def survey(
+    folder: Path, policies: tuple[str, ...], places: tuple[str, ...], grid: float | None, first: int | None,
+    last: int | None, ephemeris: str, output: Path, workers: int, scheduler: str | None,
+) -> None:
+    """A long-run study: how often policies agree, how long months run, how close the calls are.
+
+    Places without --place or --grid are those of the content's region. A survey that was interrupted is carried on.
+    """
+    if _is_folder(folder) or not (places or grid):
+        content: Content | None = _content(folder)
+    else:
+        content = [_content_if_there(folder, policy) for policy in policies or (None,)][-1]
+    years = _years(content, first, last)
+    from moonwrit.survey.page import page
+    from moonwrit.survey.plan import plan
+    from moonwrit.survey.results import gather
+    from moonwrit.survey.running import run, write
+
+    with _progress("Looking at what is asked"):
+        asked = plan(policies, [_place(content, text) for text in places], grid, *years, ephemeris,
+                     None if content is None else folder.resolve())
+    with _counted("Units") as each:
+        done = run(asked, output, workers, scheduler, each)
+    with _progress("Gathering results"):
+        results = gather(asked, output)
+        write(output / "survey.html", page(results))
+    click.echo(f"{done} units computed, {asked.unit_count - done} were there; results in {output / 'survey.html'}")
+    if results.seams:
+        click.echo(f"{results.seams} joints of two runs of years do not meet (unsettled_seams): do not count on month "
+                   "lengths there", err=True)
+
+
 @main.group()
 def record() -> None:
     """Add a report or a decision to the record; what is missing is asked for on a terminal."""
@@ -546,6 +593,21 @@ def _table(title: str, head: tuple[str, ...], rows: list[tuple[str, ...]]) -> No
         table.add_row(*row)
     width = None if sys.stdout.isatty() else 140
     Console(width=width, highlight=False, markup=False).print(table)
+
+
+@contextmanager
+def _counted(what: str) -> Iterator[Callable[[int, int], None]]:
+    """A bar on standard error, where that is a terminal, that is told how many are done of how many."""
+    if not sys.stderr.isatty():
+        yield lambda done, of: None
+        return
+    from rich.console import Console
+    from rich.progress import BarColumn, MofNCompleteColumn, Progress, TextColumn, TimeRemainingColumn
+
+    columns = TextColumn("{task.description}"), BarColumn(), MofNCompleteColumn(), TimeRemainingColumn()
+    with Progress(*columns, console=Console(stderr=True)) as bar:
+        task = bar.add_task(what, total=None)
+        yield lambda done, of: bar.update(task, completed=done, total=of)
 
 
 @contextmanager
