@@ -11,6 +11,7 @@ from datetime import UTC, date, datetime, timedelta
 
 from moonwrit.content import Content
 from moonwrit.content.models import Calendar, Observance, Place, Region, Site, in_language
+from moonwrit.content.outlines import Polygons
 from moonwrit.content.record import Decision
 from moonwrit.errors import RequestError
 from moonwrit.observances import Occurrence, occurrences
@@ -55,7 +56,7 @@ class Almanac:
     observance's name in the content. ``method`` is the policy made ready, with its title, source and notes.
     ``superseded`` holds, by month ordinal, decisions that later ones have replaced; ``others`` the other
     policies of the content. ``as_of`` is "today". ``names`` are the names of places and policies, and the policies'
-    summaries, in the languages in which the content gives them.
+    summaries, in the languages in which the content gives them. ``outline`` is that of the region, where it has one.
     """
 
     calendar_id: str
@@ -72,6 +73,7 @@ class Almanac:
     others: tuple[Other, ...]
     as_of: date
     names: tuple[Mapping[str, str], ...]
+    outline: Polygons = ()
 
 
 def assemble(content: Content, as_of: date, known_until: datetime | None = None) -> tuple[Almanac, ...]:
@@ -99,6 +101,7 @@ def assemble(content: Content, as_of: date, known_until: datetime | None = None)
             {place: content.places[place] for place in region.places},
             content.observances, months, evenings, occurrences(content.observances, months), replaced,
             _others(content, calendar.policy, adopted, months), as_of, _names(content),
+            content.outlines.get(calendar.region, ()),
         ))
     return tuple(out)
 

@@ -13,6 +13,7 @@ from moonwrit.policy.published import NamedPlace
 from moonwrit.policy.scopes import MAX_LATITUDE_DEG, Anywhere, AtPlaces, Flags, Within
 from moonwrit.policy.walk import Questions
 from moonwrit.sky import Array, Circumstances, Evenings, Places
+from moonwrit.sky.comparison import met
 from moonwrit.sky.maps import Grid, over, spanned
 
 _FAR = 5.0
@@ -39,7 +40,8 @@ class Asked:
     def met(self, places: list[NamedPlace]) -> Flags:
         """Whether the test is met at each place [place], by its own clock and elevation."""
         share = self._share(self.evenings.at(Places.of([place.row for place in places])))
-        return np.nan_to_num(share[0, 0], nan=-1.0) >= 0
+        found: Flags = met(share)[0, 0]
+        return found
 
     def named_places(self) -> list[NamedPlace]:
         """The places that the condition names, each once."""
@@ -70,7 +72,7 @@ class Asked:
         scope = scoped.scope
         if isinstance(scope, AtPlaces) and gates:
             there = scope.decide(scoped.rule, self.evenings).share[..., None]
-            return np.broadcast_to(np.nan_to_num(there, nan=-_FAR), c.day.shape + (len(c.places),))
+            return np.broadcast_to(np.nan_to_num(there, nan=-_FAR), (*c.day.shape, len(c.places)))
         share = scoped.rule.share(c)
         latitude, longitude = c.places.latitude_deg, c.places.longitude_deg
         if isinstance(scope, Anywhere):

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
-from datetime import datetime
+from datetime import date, datetime
 from functools import cached_property
 from urllib.parse import urlsplit
 
@@ -14,6 +14,7 @@ from moonwrit.content.own import Own
 from moonwrit.journal import Entry, Ledger
 from moonwrit.policy import Month
 from moonwrit.publish.language import Language
+from moonwrit.publish.maps import Chart
 
 
 @dataclass(frozen=True)
@@ -21,7 +22,7 @@ class Edition:
     """``is_main``: the main calendar, whose pages stand at the top of a language's tree.
 
     A language has a tree of its own: the top of the site for the default one, ``<code>/`` for any other. Paths are
-    relative to it; ``page`` and ``feed`` give whole addresses.
+    relative to it; ``page`` and ``feed`` give whole addresses. ``charts`` are the maps of the evenings that have some.
     """
 
     almanac: Almanac
@@ -29,6 +30,7 @@ class Edition:
     language: Language
     is_main: bool = True
     own: Own = field(default_factory=Own)
+    charts: Mapping[date, Chart] = field(default_factory=dict)
 
     @property
     def site(self) -> Site:

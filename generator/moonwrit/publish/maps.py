@@ -8,14 +8,17 @@ Sun does not set. The maps begin and end where the date does, so that no line ha
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from datetime import date
 from functools import cache, cached_property
 from html import escape
+from itertools import pairwise
 from math import ceil, cos, floor, radians
+from typing import cast
 
 import contourpy
 import numpy as np
+import numpy.typing as npt
 
 from moonwrit.almanac import Almanac
 from moonwrit.content.models import in_language
@@ -95,9 +98,13 @@ class Chart:
 
     @cached_property
     def world(self) -> _Surface:
-        east = max(180.0, *(10.0 * ceil(spot.longitude_deg / 10) + 10 for spot in self.spots if spot.longitude_deg > 180), 0)
-        west = min(-180.0, *(10.0 * floor(spot.longitude_deg / 10) - 10 for spot in self.spots if spot.longitude_deg < -180), 0)
-        west = east - 360 if east > 180 else west
+        # Where places keep the date of the other side of the date line, the map is moved to hold them.
+        longitudes = [spot.longitude_deg for spot in self.spots]
+        west, east = min(longitudes), max(longitudes)
+        if east > 180:
+            west = 10.0 * ceil(east / 10) + 10 - 360
+        else:
+            west = 10.0 * floor(west / 10) - 10 if west < -180 else -180.0
         furthest = max(abs(spot.latitude_deg) for spot in self.spots)
         end = min(_MOST_LATITUDE_DEG, max(MAX_LATITUDE_DEG, 4.0 * ceil(furthest / 4) + 4))
         box = Box(west, -end, west + 360, end, round(WIDTH * end / 180))
@@ -148,9 +155,12 @@ def charts(almanac: Almanac) -> dict[date, Chart]:
                    place.zone)
         for place in almanac.places.values()
     ]
+    outlined = None
+    if almanac.outline:
+        outlined = outline({"type": "MultiPolygon", "coordinates": list(almanac.outline)})
     months = list(almanac.months)
     return {
-        month.evidence.evening: Chart(month.evidence.evening, asked, places)
+        month.evidence.evening: Chart(month.evidence.evening, asked, places, outlined)
         for month, asked in zip(months, asked_everywhere(almanac.method, months), strict=False)
     }
 
@@ -168,7 +178,7 @@ class _Surface:
         self.lag_days = np.clip(np.nan_to_num(lag, nan=-1440.0, posinf=1440.0, neginf=-1440.0) / 52, -1, 1)
 
     @property
-    def met(self) -> np.ndarray[tuple[int, ...], np.dtype[np.bool_]]:
+    def met(self) -> npt.NDArray[np.bool_]:
         return np.nan_to_num(self.share, nan=-1.0) >= 0
 
     @cached_property
@@ -177,10 +187,10 @@ class _Surface:
         share = np.nan_to_num(self.share, nan=-1.0)
         # The Moon sets first, and the test is not even nearly met.
         first = np.minimum(-self.lag_days, -CLOSE_SHARE - share)
-        lines = self._contours(share).lines(0.0)
+        lines = cast("list[Array]", self._contours(share).lines(0.0))
         return {
             "met": self._filled(share, 0.0, _AHEAD),
-            "near": self._filled(share, -CLOSE_SHARE, CLOSE_SHARE),
+            "close": self._filled(share, -CLOSE_SHARE, CLOSE_SHARE),
             "first": self._filled(first, 0.0, _AHEAD),
             "limit": "".join(_open(self.box.at(line)) for line in lines),
         }
@@ -192,11 +202,12 @@ class _Surface:
         )
 
     def _filled(self, values: Array, low: float, high: float) -> str:
-        polygons, offsets = self._contours(values).filled(low, high)
+        found = self._contours(values).filled(low, high)
+        polygons, offsets = cast("tuple[list[Array], list[npt.NDArray[np.uint32]]]", found)
         return "".join(
             _closed(self.box.at(points[first:end]))
             for points, starts in zip(polygons, offsets, strict=True)
-            for first, end in zip(starts[:-1], starts[1:], strict=True)
+            for first, end in pairwise(starts.tolist())
         )
 
 
@@ -238,7 +249,7 @@ def _outlines(shape: Outline, box: Box) -> str:
     for turn in (-360.0, 0.0, 360.0):
         for polygon in shape.polygons:
             for ring in polygon:
-                moved = ring + [turn, 0.0]
+                moved = ring + np.array([turn, 0.0])
                 low, high = moved.min(axis=0), moved.max(axis=0)
                 if low[0] > box.east or high[0] < box.west or low[1] > box.north or high[1] < box.south:
                     continue
@@ -292,13 +303,22 @@ def _clipped(ring: Array, box: Box) -> Array:
 # --- pictures -----------------------------------------------------------------------------------------
 
 
-def world_map(chart: Chart, language: Language) -> str:
-    """The Earth between two parallels, from the date line to the date line."""
+def world_map(chart: Chart, language: Language, region: str) -> str:
+    """The Earth between two parallels, from the date line to the date line. ``region`` is the region's name."""
     _ = language.gettext
     title = _("Where on Earth the policy's test is met on the evening of %(date)s") % {
         "date": language.long_date(chart.on)
     }
-    return _drawn(chart, chart.world, title, "world", language, 30)
+    spots = chart.spots
+    near = spots[:chart.of_region]
+    x_of, y_of = chart.world.box.view
+    if len(near) > 1 and all(
+        abs(spot.longitude_deg - near[0].longitude_deg) * x_of < 4 * LETTER
+        and abs(spot.latitude_deg - near[0].latitude_deg) * y_of < 4 * LETTER for spot in near
+    ):
+        # Places that lie together go by the region's name.
+        spots = (replace(near[0], name=region), *(replace(spot, name="") for spot in near[1:]), *spots[len(near):])
+    return _drawn(chart, chart.world, title, "world", language, 30, _named(spots, chart.world.box, language, ()))
 
 
 def region_map(chart: Chart, language: Language) -> str:
@@ -307,7 +327,10 @@ def region_map(chart: Chart, language: Language) -> str:
     title = _("Where around the region the policy's test is met on the evening of %(date)s") % {
         "date": language.long_date(chart.on)
     }
-    return _drawn(chart, chart.region, title, "region", language, 5)
+    box = chart.region.box
+    step = next(step for step in (1, 2, 5, 10, 20) if (box.north - box.south) / step < 7 or step == 20)
+    ticks = _ticks(box, step, language)
+    return _drawn(chart, chart.region, title, "region", language, step, _named(chart.spots, box, language, ticks))
 
 
 def told(chart: Chart, language: Language) -> list[str]:
@@ -315,18 +338,18 @@ def told(chart: Chart, language: Language) -> list[str]:
     _ = language.gettext
     box = chart.world.box
     between = {"south": parallel(box.south, language), "north": parallel(box.north, language)}
+    share = {"share": language.number(chart.share_met * 100, 0), **between}
     if chart.first_met is None:
         out = [_("The test is met nowhere between %(south)s and %(north)s.") % between]
     else:
         latitude, longitude = chart.first_met
-        out = [
-            _("The test is met over %(share)s%% of the Earth between %(south)s and %(north)s.") % {
-                "share": language.number(chart.share_met * 100, 0), **between
-            },
-            _("Going west with the evening, it is first met near %(latitude)s, %(longitude)s.") % {
+        out = [_("The test is met over %(share)s%% of the Earth between %(south)s and %(north)s.") % share]
+        if longitude == box.east:
+            out.append(_("It is met from the date line on, where the evening begins."))
+        else:
+            out.append(_("Going west with the evening, it is first met near %(latitude)s, %(longitude)s.") % {
                 "latitude": parallel(latitude, language), "longitude": meridian(longitude, language),
-            },
-        ]
+            })
     for met, sentence in ((True, _("It is met at: %(places)s.")), (False, _("It is not met at: %(places)s."))):
         if names := [language.name(spot.name) for spot in chart.spots if spot.met == met]:
             out.append(sentence % {"places": language.listing(names)})
@@ -351,15 +374,13 @@ def meridian(longitude_deg: float, language: Language) -> str:
 def key(language: Language) -> list[tuple[str, str]]:
     """Swatches and what they mean; they use the patterns of the map of the Earth on the same page."""
     _ = language.gettext
-    surfaces = (
-        (("met",), _("met")), (("met", "near"), _("met, close to the limit")),
-        (("near",), _("not met, close to the limit")), ((), _("not met")),
-        (("first",), _("not met, and the Moon sets before the Sun or the Sun does not set")),
-    )
+    whole, half = "M0 0h32v18h-32z", "M0 0h16v18h-16z"
     swatches = [
-        ("".join(_surface(kind, "M0 0h32v18h-32z", "world") for kind in kinds), name) for kinds, name in surfaces
-    ]
-    swatches += [
+        (_surface("met", whole, "world"), _("met")),
+        (_surface("met", half, "world") + _surface("close", whole, "world") + '<path class="limit" d="M16 0v18"/>',
+         _("close to the limit, on either side of it")),
+        ("", _("not met")),
+        (_surface("first", whole, "world"), _("not met: the Moon sets before the Sun, or the Sun does not set")),
         (_spot(16, 9, True), _("a place where it is met")), (_spot(16, 9, False), _("a place where it is not met")),
     ]
     return [
@@ -369,7 +390,7 @@ def key(language: Language) -> list[tuple[str, str]]:
 
 
 def _surface(kind: str, path: str, of: str) -> str:
-    fill = {"near": f' fill="url(#{of}-dots)"', "first": f' fill="url(#{of}-hatch)"'}.get(kind, "")
+    fill = {"close": f' fill="url(#{of}-dots)"', "first": f' fill="url(#{of}-hatch)"'}.get(kind, "")
     return f'<path class="{kind}"{fill} fill-rule="evenodd" d="{path}"/>' if path else ""
 
 
@@ -386,12 +407,14 @@ def _patterns(of: str) -> str:
     )
 
 
-def _drawn(chart: Chart, surface: _Surface, title: str, kind: str, language: Language, step: int) -> str:
+def _drawn(
+    chart: Chart, surface: _Surface, title: str, kind: str, language: Language, step: int, over: Sequence[str]
+) -> str:
     box = surface.box
     layers = surface.layers
     parts = [
         _patterns(kind),
-        *(_surface(name, layers[name], kind) for name in ("first", "met", "near")),
+        *(_surface(name, layers[name], kind) for name in ("first", "met", "close")),
         _graticule(box, step),
         f'<path class="land" d="{_coast(box)}"/>',
     ]
@@ -399,7 +422,7 @@ def _drawn(chart: Chart, surface: _Surface, title: str, kind: str, language: Lan
         parts.append(f'<path class="limit" d="{layers["limit"]}"/>')
     if chart.outlined is not None:
         parts.append(f'<path class="outlined" d="{_outlines(chart.outlined, box)}"/>')
-    parts += _named(chart.spots, box, language)
+    parts += over
     parts.append(f'<path class="frame" d="M0 0h{WIDTH}v{box.height}h-{WIDTH}z"/>')
     text = " ".join(told(chart, language))
     return (
@@ -409,43 +432,87 @@ def _drawn(chart: Chart, surface: _Surface, title: str, kind: str, language: Lan
 
 
 def _graticule(box: Box, step: int) -> str:
-    x_of, y_of = box.view
-    lines = [
-        f"M{(longitude - box.west) * x_of:.1f} 0v{box.height}"
-        for longitude in range(ceil((box.west + 1e-6) / step) * step, ceil(box.east), step)
-    ]
-    lines += [
-        f"M0 {(box.north - latitude) * y_of:.1f}h{WIDTH}"
-        for latitude in range(ceil((box.south + 1e-6) / step) * step, ceil(box.north), step)
-    ]
+    lines = [f"M{x:.1f} 0v{box.height}" for x, _ in _meridians(box, step)]
+    lines += [f"M0 {y:.1f}h{WIDTH}" for y, _ in _parallels(box, step)]
     return f'<path class="grid" d="{"".join(lines)}"/>'
 
 
-def _named(spots: Iterable[Spot], box: Box, language: Language) -> list[str]:
+def _meridians(box: Box, step: int) -> list[tuple[float, int]]:
+    """Where they are drawn, and their longitudes."""
+    degrees = range(ceil((box.west + 1e-6) / step) * step, ceil(box.east), step)
+    return [((longitude - box.west) * float(box.view[0]), longitude) for longitude in degrees]
+
+
+def _parallels(box: Box, step: int) -> list[tuple[float, int]]:
+    degrees = range(ceil((box.south + 1e-6) / step) * step, ceil(box.north), step)
+    return [((box.north - latitude) * float(box.view[1]), latitude) for latitude in degrees]
+
+
+@dataclass(frozen=True, slots=True)
+class _Label:
+    """A text and the box that it fills at most: left, top, right, bottom."""
+
+    text: str
+    kind: str
+    anchor: str
+    x: float
+    y: float
+
+    @property
+    def box(self) -> tuple[float, float, float, float]:
+        wide = 0.6 * LETTER * len(self.text)
+        left = {"start": self.x, "middle": self.x - wide / 2, "end": self.x - wide}[self.anchor]
+        return left, self.y - 0.8 * LETTER, left + wide, self.y + 0.2 * LETTER
+
+    def within(self, box: Box) -> bool:
+        left, top, right, bottom = self.box
+        return left >= 2 and top >= 2 and right <= WIDTH - 2 and bottom <= box.height - 2
+
+    def __str__(self) -> str:
+        return (
+            f'<text class="{self.kind}" x="{self.x:.1f}" y="{self.y:.1f}" text-anchor="{self.anchor}" '
+            f'paint-order="stroke">{escape(self.text)}</text>'
+        )
+
+
+def _ticks(box: Box, step: int, language: Language) -> list[_Label]:
+    """The degrees of the parallels at the left and of the meridians below."""
+    labels = [_Label(parallel(latitude, language), "tick", "start", 6, y - 5) for y, latitude in _parallels(box, step)]
+    labels += [
+        _Label(meridian(longitude, language), "tick", "start", x + 5, box.height - 8)
+        for x, longitude in _meridians(box, step)
+    ]
+    kept: list[_Label] = []
+    for label in labels:
+        if label.within(box) and not any(_overlap(label.box, other.box) for other in kept):
+            kept.append(label)
+    return kept
+
+
+def _named(spots: Iterable[Spot], box: Box, language: Language, ticks: Sequence[_Label]) -> list[str]:
     """Places with their names, where there is room for these: beside, above or below, clear of all others."""
     at = [
         (spot, *box.at(np.array([spot.longitude_deg, spot.latitude_deg])).tolist())
         for spot in spots if box.holds(spot.longitude_deg, spot.latitude_deg)
     ]
     taken = [(x - 8, y - 8, x + 8, y + 8) for _, x, y in at]
-    out = [_spot(x, y, spot.met) for spot, x, y in at]
+    placed: list[_Label] = []
     for spot, x, y in at:
-        name = language.name(spot.name)
-        wide = 0.6 * LETTER * len(name)
-        for anchor, to_x, to_y in (
-            ("start", x + 11, y + 8), ("end", x - 11, y + 8), ("middle", x, y - 12), ("middle", x, y + 28),
-        ):
-            left = {"start": to_x, "middle": to_x - wide / 2, "end": to_x - wide}[anchor]
-            here = (left, to_y - 0.8 * LETTER, left + wide, to_y + 0.2 * LETTER)
-            inside = here[0] >= 2 and here[1] >= 2 and here[2] <= WIDTH - 2 and here[3] <= box.height - 2
-            if inside and not any(_overlap(here, other) for other in taken):
-                taken.append(here)
-                out.append(
-                    f'<text class="name" x="{to_x:.1f}" y="{to_y:.1f}" text-anchor="{anchor}" paint-order="stroke">'
-                    f"{escape(name)}</text>"
-                )
-                break
-    return out
+        tried = (
+            _Label(language.name(spot.name), "name", anchor, x + right, y + down)
+            for anchor, right, down in (
+                ("start", 12, 8), ("end", -12, 8), ("middle", 0, -16), ("middle", 0, 32), ("end", 10, -16),
+                ("start", -10, -16), ("end", 10, 32), ("start", -10, 32), ("middle", 0, -40), ("middle", 0, 58),
+            )
+        )
+        label = next(
+            (one for one in tried if one.within(box) and not any(_overlap(one.box, other) for other in taken)), None
+        )
+        if label is not None and spot.name:
+            taken.append(label.box)
+            placed.append(label)
+    free = [tick for tick in ticks if not any(_overlap(tick.box, other) for other in taken)]
+    return [*map(str, free), *(_spot(x, y, spot.met) for spot, x, y in at), *map(str, placed)]
 
 
 def _overlap(a: tuple[float, ...], b: tuple[float, ...]) -> bool:

@@ -17,7 +17,7 @@ from moonwrit.journal import Entry, Ledger, month_key
 from moonwrit.observances import Occurrence
 from moonwrit.policy import Month
 from moonwrit.policy.differ import Beside
-from moonwrit.publish import labels, pictures, words
+from moonwrit.publish import labels, maps, pictures, words
 from moonwrit.publish.asked import asked_in_words
 from moonwrit.publish.civil import civil_months, civil_years
 from moonwrit.publish.edition import Edition, tree
@@ -229,11 +229,24 @@ def _evening(edition: Edition, evening: Evening) -> dict[str, object]:
             (names[place], svg(drawn)) for place, value in almanac.places.items()
             if (drawn := pictures.horizon(evening.at[place], value.zone, names[place], language))
         ],
+        "maps": _maps(edition, evening),
         "before": almanac.months[index - 1] if index else None,
         "coming": evening.on >= almanac.as_of,
         "elsewhere": [
             (language.name(other.beside.method.title), other.beside.months[index].starts) for other in almanac.others
         ],
+    }
+
+
+def _maps(edition: Edition, evening: Evening) -> dict[str, object] | None:
+    chart, language = edition.charts.get(evening.on), edition.language
+    if chart is None:
+        return None
+    return {
+        "world": svg(maps.world_map(chart, language, edition.say(edition.almanac.region.name))),
+        "region": svg(maps.region_map(chart, language)),
+        "key": [(svg(swatch), name) for swatch, name in maps.key(language)],
+        "told": maps.told(chart, language),
     }
 
 

@@ -18,6 +18,7 @@ from moonwrit.publish.embed import embed_files
 from moonwrit.publish.icalendar import evenings_feed, months_feed, observances_feed, tag_feed, tags, year_feed
 from moonwrit.publish.jscalendar import calendar_feed
 from moonwrit.publish.language import Language
+from moonwrit.publish.maps import charts
 from moonwrit.publish.messages import messages
 from moonwrit.publish.notices import atom_feed, json_feed
 from moonwrit.publish.own import look_sheet
@@ -42,11 +43,14 @@ def site_files(
     if own.logo:
         files[own.logo.path] = own.logo.data
     listed: list[Page] = []
+    drawn = [charts(almanac) for almanac in almanacs]
     for code in site.all_languages:
         names = {in_language(name, site.language): in_language(name, code, site.language) for name in almanacs[0].names}
         language = Language(code, names)
         renderer = Renderer(site, language, own)
-        editions = [Edition(almanac, ledger, language, index == 0, own) for index, almanac in enumerate(almanacs)]
+        editions = [
+            Edition(almanac, ledger, language, index == 0, own, drawn[index]) for index, almanac in enumerate(almanacs)
+        ]
         for edition in editions:
             for made in pages(edition, editions):
                 page = replace(made, has_sheet=paper is not None and made.template in SHEETS)
