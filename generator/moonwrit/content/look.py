@@ -126,7 +126,7 @@ def too_faint(document: Document, colours: LightColours) -> Iterator[ContentErro
                 passing = _nearest(all_of_them[chosen], [all_of_them[other] for other in beside])
                 mend = (
                     f'{chosen} would pass as "{passing}"' if passing
-                    else f"no {chosen} would pass: bring {' and '.join(_BEHIND)} nearer together"
+                    else f"no {chosen} would pass: keep paper and sheet both light or both dark"
                 )
                 # Rounded down: a ratio that fails is not printed as one that passes.
                 what = (f"{name} {all_of_them[name]} on {behind} {all_of_them[behind]} has a contrast of "
@@ -223,6 +223,9 @@ def _svg_size(file: Path, data: bytes) -> tuple[float, float]:
 
     parser.StartElementHandler = element
     parser.StartDoctypeDeclHandler = lambda *_: refuse("the logo has a DOCTYPE")
+    parser.XmlDeclHandler = lambda _, encoding, __: (
+        refuse(f"the logo is in {encoding}", "save it in UTF-8") if encoding and encoding.lower() != "utf-8" else None
+    )
     parser.ProcessingInstructionHandler = lambda *_: refuse("the logo has a processing instruction")
     try:
         data.decode("utf-8")
