@@ -16,7 +16,7 @@ import numpy.typing as npt
 
 from moonwrit.policy.conditions import CLOSE_SHARE, EDGE_SHARE, Scoped
 from moonwrit.policy.walk import LEAD_IN_MONTHS, Questions
-from moonwrit.sky import Array, Places, span
+from moonwrit.sky import Array, Ephemeris, Evenings, Places, ephemeris, span
 from moonwrit.sky.comparison import Rule, met
 from moonwrit.sky.ephemeris import using
 from moonwrit.sky.lunation import Integers
@@ -122,19 +122,27 @@ def walk_each(rule: Rule, places: Places, first: int, last: int) -> Months:
     return Months(np.stack(starts[first - begin:]), closeness, age)
 
 
+@lru_cache(maxsize=32)
+def _evenings(sky: Ephemeris, first: int, last: int, column: int | None = None) -> Evenings:
+    """The evenings around each of the lunations ``first`` to ``last``; or the one that many days after the first."""
+    questions = Questions((), first, last)
+    days = questions.days if column is None else questions.days[:, :1] + column
+    return questions.evenings(np.arange(len(days)), days)
+
+
 class _Asked:
     """A rule's shares and the ages of the Moon at places, on evenings counted from the first of each lunation's."""
 
     def __init__(self, rule: Rule, places: Places, first: int, last: int) -> None:
-        self.rule, self.places = rule, places
-        self.questions = Questions((), first, last)
-        self.days = self.questions.days
-        self.near = self._on(self.days)
+        self.rule, self.places, self.span = rule, places, (first, last)
+        near = _evenings(ephemeris(), first, last)
+        self.days = near.day
+        self.near = self._found(near)
         self.far: dict[int, tuple[Array, Array]] = {}
 
-    def _on(self, days: Integers) -> tuple[Array, Array]:
-        """Shares and ages [lunation, evening, place] on ``days`` [lunation, evening]."""
-        c = self.questions.evenings(np.arange(len(days)), days).at(self.places)
+    def _found(self, evenings: Evenings) -> tuple[Array, Array]:
+        """Shares and ages [lunation, evening, place]."""
+        c = evenings.at(self.places)
         return np.broadcast_to(self.rule.share(c), c.sunset_tt.shape), c.age_h
 
     def first_start(self) -> Integers:
@@ -159,6 +167,6 @@ class _Asked:
             for far in np.unique(column[~near]).tolist():
                 # For all lunations at once: where the Moon is late once, near the polar circles, it is often.
                 if far not in self.far:
-                    self.far[far] = self._on(self.days[:, :1] + far)
+                    self.far[far] = self._found(_evenings(ephemeris(), *self.span, far))
                 out[column == far] = self.far[far][which][row, 0, column == far]
         return out
