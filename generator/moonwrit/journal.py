@@ -26,6 +26,8 @@ from moonwrit.errors import ContentError, MoonwritError
 from moonwrit.policy import Month
 
 FILE = "record/journal.jsonl"
+MAX_BYTES = 32 * 1024 * 1024
+"""Some two hundred thousand lines."""
 _MARKER = "This folder was built by moonwrit and is replaced whole at every build."
 
 Known = Literal["expected", "settled", "amended", "withdrawn"]
@@ -94,6 +96,8 @@ def read(folder: Path) -> tuple[Entry, ...]:
     """
     file = folder / FILE
     try:
+        if file.stat().st_size > MAX_BYTES:
+            raise ContentError(file, 0, "the journal is larger than 32 MB", "restore it from your copies")
         text = file.read_text(encoding="utf-8")
     except FileNotFoundError:
         return ()
@@ -344,12 +348,12 @@ def _parsed(line: str) -> Entry:
     at = datetime.fromisoformat(values["at"])
     names = [name for name in (calendar, key) if isinstance(name, str) and _NAME.fullmatch(name)]
     is_whole = type(seq) is int and 0 <= seq < 2**31
-    is_moment = at.tzinfo is not None and 1 < at.year < 9999
-    if len(names) < 2 or not is_whole or standing not in _STANDINGS or not is_moment:
+    days = {name: date.fromisoformat(values[name]) for name in ("starts", "ends", "was") if name in values}
+    are_near = all(1 < day.year < 9999 for day in (at, *days.values()))
+    if len(names) < 2 or not is_whole or standing not in _STANDINGS or at.tzinfo is None or not are_near:
         raise ValueError(line)
     return Entry(
-        calendar, key, date.fromisoformat(values["starts"]), date.fromisoformat(values["ends"]), standing, seq, at,
-        date.fromisoformat(values["was"]) if "was" in values else None,
+        calendar, key, days["starts"], days["ends"], standing, seq, at, days.get("was"),
         None if because is None else _TEXT.validate_python(because),
     )
 

@@ -198,7 +198,7 @@ def _respelt(errors: Sequence[ErrorDetails]) -> str:
     if isinstance(value, (int, float)) and ("string_type" in kinds or str(value) in words):
         return f'put it in quotes: "{_shown(value)}"'
     if isinstance(value, str):
-        if kinds & {"int_type", "float_type"} and re.fullmatch(r"[-+]?[0-9]+(\.[0-9]+)?", value):
+        if kinds & {"int_type", "float_type"} and re.fullmatch(r"[-+]?[0-9]{1,18}(\.[0-9]+)?", value):
             return f"write it without quotes: {value}"
         if kinds == {"literal_error"}:
             return did_you_mean(value, words)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from datetime import date
 from typing import Annotated, Literal
 
 from pydantic import AfterValidator, Field, WithJsonSchema, model_validator
@@ -10,6 +11,10 @@ from pydantic import AfterValidator, Field, WithJsonSchema, model_validator
 from moonwrit.content.models import Day, Identifier, Moment, Text, Words, _Model
 
 _MONTH = r"^\d{3,4}-(0[1-9]|1[0-2])$"
+_FIRST_DAY = date(622, 7, 19).toordinal()
+_MEAN_MONTH = 29.530588
+_TOLERANCE_DAYS = 10
+"""A slip of the pen in year or month, and not a method: no calendar is so far from the mean Moon."""
 _CLOCK = r"^([01]\d|2[0-3]):[0-5]\d$"
 
 
@@ -80,6 +85,14 @@ class Decision(_Model):
             raise ValueError("an adopted date needs adopted_from: the authority it was taken from")
         if self.basis != "adopted" and self.adopted_from is not None:
             raise ValueError("adopted_from goes with basis: adopted; drop it")
+        return self
+
+    @model_validator(mode="after")
+    def _in_its_season(self) -> Decision:
+        about = _FIRST_DAY + _MEAN_MONTH * self.ordinal
+        if abs(self.starts.toordinal() - about) > _TOLERANCE_DAYS:
+            near = date.fromordinal(int(about)) if 1 <= about < date.max.toordinal() else "outside the civil calendar"
+            raise ValueError(f"{self.month} cannot begin on {self.starts}; it begins about {near}: mend one of the two")
         return self
 
     @property

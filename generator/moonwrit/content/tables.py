@@ -46,10 +46,10 @@ def _starts(file: Path, rows: csv.DictReader[str]) -> Table:
     for row in rows:
         line = rows.line_num
         try:
-            month = int(row["month"])
-            ordinal = (int(row["year"]) - 1) * 12 + month - 1
+            year, month = int(row["year"]), int(row["month"])
+            ordinal = (year - 1) * 12 + month - 1
             starts = date.fromisoformat(row["starts"].strip())
-            if not 1 <= month <= 12 or ordinal < 0:
+            if not 1 <= month <= 12 or not 1 <= year <= 9999:
                 raise ValueError(month)
         except (AttributeError, TypeError, ValueError):
             mend = "write for instance 1447,9,2026-02-18"

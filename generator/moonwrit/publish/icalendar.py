@@ -6,6 +6,7 @@ every build, and one that moved keeps its UID.
 
 from __future__ import annotations
 
+import re
 from collections.abc import Callable, Iterable, Mapping
 from datetime import date, datetime, timedelta
 from functools import partial
@@ -28,6 +29,13 @@ REFRESH = timedelta(hours=12)
 """A lower bound on how often a client should ask (RFC 7986, 5.7); clients keep their own hours."""
 WITHDRAWN_DAYS = 60
 """A withdrawn event stays in the feeds as cancelled for this many days, so that clients learn of it."""
+
+
+class _Text(vText):
+    """TEXT as RFC 5545, 3.3.11 has it. The library takes a backslash before a letter N for a line break."""
+
+    def to_ical(self) -> bytes:
+        return re.sub(r"[\\;,]", r"\\\g<0>", self).replace("\n", r"\n").encode()
 
 
 def observances_feed(edition: Edition) -> bytes:
@@ -211,7 +219,7 @@ def _timed(edition: Edition, entry: Entry, evening: Evening, place: str) -> Even
     )
     event.add("dtstart", starts)
     event.add("dtend", ends)
-    event.add("location", vText(name))
+    event.add("location", _Text(name))
     event.add("geo", (here.latitude, here.longitude))
     event.add("status", "CONFIRMED" if month.standing != "expected" else "TENTATIVE")
     return event
@@ -228,8 +236,8 @@ def _event(
     event.add("dtstamp", entry.at)
     event.add("last-modified", entry.at)
     event.add("sequence", entry.seq)
-    event.add("summary", vText(title, params={"LANGUAGE": language.code}))
-    event.add("description", vText(
+    event.add("summary", _Text(title, params={"LANGUAGE": language.code}))
+    event.add("description", _Text(
         "\n\n".join([*paragraphs, words.authority_sentence(edition.say(edition.site.authority), language)]),
         params={"LANGUAGE": language.code},
     ))
@@ -252,7 +260,7 @@ def _reminder(hours: int, title: str) -> Alarm:
     alarm = Alarm()
     alarm.add("action", "DISPLAY")
     alarm.add("trigger", timedelta(hours=-hours))
-    alarm.add("description", title)
+    alarm.add("description", _Text(title))
     return alarm
 
 
@@ -264,9 +272,9 @@ def _feed(edition: Edition, name: str, title: str, events: list[bytes], *, zoned
     calendar.add("version", "2.0")
     calendar.add("calscale", "GREGORIAN")
     # No UID for the whole (RFC 7986, 5.3): subscribers that split a feed, such as vdirsyncer, give it to every event.
-    calendar.add("name", vText(title, params={"LANGUAGE": language.code}))
-    calendar.add("x-wr-calname", title)
-    calendar.add("description", vText(
+    calendar.add("name", _Text(title, params={"LANGUAGE": language.code}))
+    calendar.add("x-wr-calname", _Text(title))
+    calendar.add("description", _Text(
         words.authority_sentence(authority, language), params={"LANGUAGE": language.code}
     ))
     calendar.add("url", vUri(edition.page()))
