@@ -1,13 +1,19 @@
-"""How long a century takes, beside peers in the same run: ``make benchmarks``, alone on the machine.
+"""How long things take, beside peers in the same run: ``make benchmarks``, alone on the machine.
 
 A century is 1,240 conjunctions and two evenings after each at one place: sunset, moonset, best time, and
 altitude and azimuth of Sun and Moon then. Each figure is the median of several runs (least in brackets).
 Runs of this package and of its peers take turns, so that a busy machine slows both.
+
+The large site has 10 Hijri years, 6 languages and 2 calendars. The cache (``MOONWRIT_CACHE``) is a folder of the run's
+own, and off where the table says "from nothing".
 """
 
 from __future__ import annotations
 
+import json
+import os
 import platform
+import resource
 import shutil
 import statistics
 import subprocess
@@ -18,6 +24,8 @@ from collections.abc import Callable
 from dataclasses import dataclass
 from importlib.metadata import version
 from pathlib import Path
+from typing import Any
+from unittest.mock import patch
 
 import astronomy
 import ephem
@@ -26,7 +34,13 @@ import numpy.typing as npt
 from skyfield import almanac
 from skyfield.api import wgs84
 
-from moonwrit.sky import Circumstances, Lunations, Places, ephemeris, lunations
+from moonwrit.almanac import assemble
+from moonwrit.building import content_of, held
+from moonwrit.policy import method
+from moonwrit.publish.site import site_files
+from moonwrit.publish.writing import put_in_place
+from moonwrit.sky import Circumstances, Lunations, Places, ephemeris, horizon, lunations
+from moonwrit.sky.ephemeris import series
 
 ROOT = Path(__file__).resolve().parent.parent.parent
 PYTHON = sys.executable
@@ -93,17 +107,47 @@ def anywhere(count: int) -> Places:
 
 def from_nothing() -> float:
     """In a process of its own: kernel opened, windows and conjunctions computed, then the evenings."""
-    return float(alone("print(run.timed(run.century))"))
+    return float(alone("print(run.timed(run.century))", cache="off"))
+
+
+def from_disk(cache: str) -> float:
+    """The same with the windows read from the cache."""
+    return float(alone("print(run.timed(run.century))", cache=cache))
 
 
 def century() -> None:
     settings_of(lunations(FIRST, LAST), here())
 
 
-def alone(statement: str) -> str:
+def alone(statement: str, cache: str) -> str:
     """What a statement about this module prints, in a process that has done nothing else."""
     text = f"import sys; sys.path.insert(0, {str(Path(__file__).parent)!r}); import run; {statement}"
-    return subprocess.run([PYTHON, "-c", text], capture_output=True, text=True, check=True).stdout
+    return subprocess.run(
+        [PYTHON, "-c", text], stdout=subprocess.PIPE, text=True, check=True, env={**os.environ, "MOONWRIT_CACHE": cache}
+    ).stdout
+
+
+def floor(moons: Lunations, where: Places) -> Callable[[], object]:
+    """As many evaluations of Chebyshev series as the century asks for, all in one call of numpy."""
+    count = 0
+
+    def counted(coefficients: Array, x: Array) -> Array:
+        nonlocal count
+        count += x.size
+        return series(coefficients, x)
+
+    def vector(coefficients: Array, x: Array) -> tuple[Array, ...]:
+        return tuple(counted(coefficients[:, axis], x) for axis in range(3))
+
+    with patch.object(horizon, "series", counted), patch.object(horizon, "vector", vector):
+        settings_of(moons, where)
+    x = np.random.default_rng(1).uniform(-1, 1, (len(moons), count // len(moons)))
+    return lambda: series(moons.windows.gast_rad, x)
+
+
+def anywhere_over_a_century() -> None:
+    """The month starts of 1371 to 1470 AH by the criterion of Istanbul, 2016: anywhere on Earth, with two clauses."""
+    method("istanbul-2016", content_of(ROOT / "content")).starts(1371, 1470)
 
 
 def noons_ut(conjunction_ut: float) -> list[float]:
@@ -206,6 +250,84 @@ def demonstration_site() -> tuple[float, str]:
         return program("publish", "--content", str(content), "--output", str(Path(folder) / "output"))
 
 
+def imported(what: str) -> float:
+    return timed(lambda: subprocess.run([PYTHON, "-c", what], capture_output=True, check=True))
+
+
+# --- sites ---------------------------------------------------------------------------------------------
+
+def large(folder: Path, languages: str) -> Path:
+    """The demonstration content with ten years and two calendars, in ``folder``."""
+    shutil.copytree(ROOT / "content", folder)
+    site = folder / "site.yaml"
+    text = site.read_text(encoding="utf-8").replace("years: {from: 1447, to: 1449}", "years: {from: 1447, to: 1456}")
+    text += "  second: {name: Second calendar, policy: umm-al-qura, region: three-harbours}\n"
+    site.write_text(f"languages: [{languages}]\n{text}", encoding="utf-8")
+    content = content_of(folder)
+    assert (content.site.years.first, content.site.years.last, len(content.site.calendars)) == (1447, 1456, 2)
+    return folder
+
+
+def site(folder: Path) -> dict[str, Any]:
+    """Seconds for assembling, rendering, and writing the same bytes; how many pages, megabytes, and the peak."""
+    content = content_of(folder)
+    start = time.perf_counter()
+    almanacs, ledger = held(content, folder, None)
+    assembled = time.perf_counter()
+    files = site_files(almanacs, ledger)
+    rendered = time.perf_counter()
+    put_in_place(files, folder.parent / f"{folder.name}-written")
+    written = time.perf_counter()
+    return {
+        "assembling": assembled - start, "rendering": rendered - assembled, "writing": written - rendered,
+        "pages": sum(name.endswith(".html") for name in files), "MB": sum(map(len, files.values())) / 1e6,
+        "peak": resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024,
+    }
+
+
+def decide(folder: Path) -> None:
+    """One decision more: the first expected month of the main calendar begins as expected."""
+    content = content_of(folder)
+    month = next(one for one in assemble(content, max(d.starts for d in content.decisions))[0].months
+                 if one.standing == "expected")
+    with (folder / "record/decisions.yaml").open("a", encoding="utf-8") as file:
+        file.write(f"""
+- month: {month.year}-{month.month:02d}
+  starts: '{month.starts}'
+  basis: calculated
+  by: A benchmark
+  at: '{month.eve}T21:30:00+10:00'
+""")
+
+
+def sites(cache: str) -> None:
+    """The table of sites: each figure from one run in a process of its own."""
+    with tempfile.TemporaryDirectory() as place:
+        rows = []
+        for title, languages in (("1 language", ""), ("6 languages", "ar, tr, ur, id, fr")):
+            folder = large(Path(place) / title.replace(" ", "-"), languages)
+            ask = f"import json, pathlib; print(json.dumps(run.site(pathlib.Path({str(folder)!r}))))"
+            found = json.loads(alone(ask, cache))
+            rows.append((
+                f"10 years, 2 calendars, {title}", f"{found['pages']}", f"{found['MB']:.0f}",
+                _seconds(found["assembling"]), _seconds(found["rendering"]),
+                f"{found['pages'] / found['rendering']:.0f}", f"{found['rendering'] / found['writing']:.1f}",
+                f"{found['peak']:.0f}",
+            ))
+        _columns([
+            ("site", "pages", "MB", "assembling", "rendering", "pages/s", "x writing the same bytes", "peak MB"), *rows
+        ])
+        words = ("publish", "--content", str(folder), "--output", str(Path(place) / "output"))
+        full, fault = program(*words)
+        if fault:
+            sys.exit(fault)
+        decide(folder)
+        again, fault = program(*words)
+        if fault:
+            sys.exit(fault)
+        print(f"rebuild after one decision: {again:.2f} s, {again / full:.2f} of the full build's {full:.2f} s")
+
+
 # --- the table ---------------------------------------------------------------------------------------
 
 Row = tuple[str, Timing, str, Timing | None]
@@ -216,30 +338,53 @@ def main() -> None:
     print(f"{platform.platform()}, {platform.machine()}, Python {platform.python_version()}, " + ", ".join(
         f"{name} {version(name)}" for name in ("numpy", "skyfield", "ephem", "astronomy-engine")
     ))
+    with tempfile.TemporaryDirectory() as cache:
+        os.environ["MOONWRIT_CACHE"] = cache
+        century_table(cache)
+        print()
+        sites(cache)
+
+
+def century_table(cache: str) -> None:
     same_answers()
-    moons, one, fifty = lunations(FIRST, LAST), here(), anywhere(50)
+    moons, one, hundred = lunations(FIRST, LAST), here(), anywhere(100)
+    least = floor(moons, one)
     found = taking_turns(
         {
             "nothing": from_nothing,
+            "disk": lambda: from_disk(cache),
             "cached": lambda: timed(lambda: settings_of(moons, one)),
-            "fifty": lambda: timed(lambda: settings_of(moons, fifty)),
+            "hundred": lambda: timed(lambda: settings_of(moons, hundred)),
+            "floor": lambda: timed(least),
             "ephem": lambda: timed(pyephem),
+            "help": lambda: imported("from moonwrit.cli import main; main(['--help'])"),
+            "import": lambda: imported("import skyfield.api"),
         },
         runs=7,
     )
     found |= taking_turns(
-        {"astronomy": lambda: timed(astronomy_engine), "skyfield": lambda: timed(skyfield)}, runs=3
+        {
+            "astronomy": lambda: timed(astronomy_engine),
+            "skyfield": lambda: timed(skyfield),
+            "anywhere": lambda: timed(anywhere_over_a_century),
+        },
+        runs=3,
     )
     further = Timing(
-        (found["fifty"].median_s - found["cached"].median_s) / 49,
-        (found["fifty"].least_s - found["cached"].least_s) / 49,
+        (found["hundred"].median_s - found["cached"].median_s) / 99,
+        (found["hundred"].least_s - found["cached"].least_s) / 99,
     )
     rows: list[Row] = [
         ("century at one place, from nothing", found["nothing"], "PyEphem loop", found["ephem"]),
         ("", found["nothing"], "skyfield, whole century at once", found["skyfield"]),
         ("", found["nothing"], "astronomy-engine loop", found["astronomy"]),
+        ("century at one place, from the cache on disk", found["disk"], "PyEphem loop", found["ephem"]),
         ("century at one place, windows at hand", found["cached"], "PyEphem loop", found["ephem"]),
-        ("century at each further place of 50", further, "PyEphem loop", found["ephem"]),
+        ("", found["cached"], "numpy, as many series at once", found["floor"]),
+        ("century at each further place of 100", further, "PyEphem loop", found["ephem"]),
+        ("century of month starts, anywhere on Earth (Istanbul 2016)", found["anywhere"], "PyEphem loop, one place",
+         found["ephem"]),
+        ("moonwrit --help", found["help"], "import skyfield.api", found["import"]),
     ]
     for title, work, runs in (
         ("moonwrit months, Yallop A-B, 100 years, whole process", months_of_a_century, 5),
@@ -256,12 +401,17 @@ def main() -> None:
 
 
 def _table(rows: list[Row]) -> None:
-    cells = [("what", "median (least)", "beside", "median (least)", "times as fast")]
-    cells += [
-        (title, str(mine), peer, str(theirs or ""), f"{theirs.median_s / mine.median_s:.1f}" if theirs else "")
-        for title, mine, peer, theirs in rows
-    ]
-    widths = [max(len(row[column]) for row in cells) for column in range(5)]
+    _columns([
+        ("what", "median (least)", "beside", "median (least)", "times as fast"),
+        *(
+            (title, str(mine), peer, str(theirs or ""), f"{theirs.median_s / mine.median_s:.1f}" if theirs else "")
+            for title, mine, peer, theirs in rows
+        ),
+    ])
+
+
+def _columns(cells: list[tuple[str, ...]]) -> None:
+    widths = [max(map(len, column)) for column in zip(*cells, strict=True)]
     for row in cells:
         print("  ".join(cell.ljust(width) for cell, width in zip(row, widths, strict=True)).rstrip())
 
