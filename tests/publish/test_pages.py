@@ -211,7 +211,9 @@ def test_markup_in_the_content_is_shown_and_never_obeyed(marked_up: Path, demons
             assert tag != "script" or path.name == "en.html", path
             assert "onclick" not in attributes, path
         before = Parsed(demonstration / path.relative_to(marked_up))
-        assert [tag for tag, _ in page.elements] == [tag for tag, _ in before.elements], path
+        # Maps leave out names for which there is no room.
+        tags, tags_before = ([tag for tag, _ in one.elements if tag != "text"] for one in (page, before))
+        assert tags == tags_before, path
     assert shown > len(list(marked_up.rglob("*.html")))
 
 
