@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 import shutil
 import struct
 import zlib
@@ -416,8 +417,6 @@ def test_a_picture_is_refused_at_its_line(folder: Path) -> None:
 @given(st.text(alphabet="ab<>&\"'`*_[]()!#\\{}|:/ \n-=+1.", max_size=80))
 def test_any_text_becomes_clean_html_or_one_message(tmp_path_factory: pytest.TempPathFactory, text: str) -> None:
     """Expected: only the elements and attributes that are let through, whatever is written."""
-    import re
-
     from moonwrit.content.own import _TAGS, read_texts
 
     folder = tmp_path_factory.mktemp("pages", numbered=True)
@@ -468,7 +467,8 @@ def test_a_page_that_is_a_link_to_another_file_is_refused(folder: Path) -> None:
 def test_each_language_may_have_a_text_of_its_own(folder: Path) -> None:
     """Expected: texts by language; the site's own is needed, and may be named."""
     site = folder / "site.yaml"
-    site.write_text(site.read_text(encoding="utf-8") + "languages: [tr, ar]\n", encoding="utf-8")
+    text = re.sub(r"(?m)^languages:.*\n", "", site.read_text(encoding="utf-8"))
+    site.write_text(text + "languages: [tr, ar]\n", encoding="utf-8")
     write(folder / "pages/about.tr.md", "# Hakkında\nx")
     assert refused(folder).startswith("pages/about.md: the file is missing; write it in the site's language, en, too")
     write(folder / "pages/about.md", "# About\nx")

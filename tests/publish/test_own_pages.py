@@ -52,7 +52,8 @@ def folder(tmp_path_factory: pytest.TempPathFactory) -> Path:
     site = (folder / "site.yaml").read_text(encoding="utf-8")
     was = "community: Three Harbours Council"
     assert was in site
-    write(folder / "site.yaml", site.replace(was, f"community: '{NAME}'") + "languages: [tr, ar]\n")
+    site = re.sub(r"(?m)^languages:.*\n", "", site.replace(was, f"community: '{NAME}'"))
+    write(folder / "site.yaml", site + "languages: [tr, ar]\n")
     write(folder / "look.yaml", (
         "colours: {link: '#004000', dark: {link: '#a0ffa0', paper: '#000'}}\n"
         "logo: {file: logo.svg, alt: '\"><script>alert(1)</script>'}\n"
