@@ -15,6 +15,7 @@ from moonwrit.content.outlines import Polygons
 from moonwrit.content.record import Decision
 from moonwrit.errors import RequestError
 from moonwrit.observances import Occurrence, occurrences
+from moonwrit.observances.fasting import FastingMonth, fasting_months
 from moonwrit.policy import Method, Month, method, named_place
 from moonwrit.policy.differ import Beside, LongRun, beside, long_run
 from moonwrit.policy.evening import Row, evenings_at
@@ -57,6 +58,7 @@ class Almanac:
     ``superseded`` holds, by month ordinal, decisions that later ones have replaced; ``others`` the other
     policies of the content. ``as_of`` is "today". ``names`` are the names of places and policies, and the policies'
     summaries, in the languages in which the content gives them. ``outline`` is that of the region, where it has one.
+    ``fasting`` are the tables of the months of fasting, where the site has them.
     """
 
     calendar_id: str
@@ -74,6 +76,7 @@ class Almanac:
     as_of: date
     names: tuple[Mapping[str, str], ...]
     outline: Polygons = ()
+    fasting: tuple[FastingMonth, ...] = ()
 
 
 def assemble(content: Content, as_of: date, known_until: datetime | None = None) -> tuple[Almanac, ...]:
@@ -101,7 +104,7 @@ def assemble(content: Content, as_of: date, known_until: datetime | None = None)
             {place: content.places[place] for place in region.places},
             content.observances, months, evenings, occurrences(content.observances, months), replaced,
             _others(content, calendar.policy, adopted, months), as_of, _names(content),
-            content.outlines.get(calendar.region, ()),
+            content.outlines.get(calendar.region, ()), _fasting(months, region, content),
         ))
     return tuple(out)
 
@@ -109,6 +112,13 @@ def assemble(content: Content, as_of: date, known_until: datetime | None = None)
 def _names(content: Content) -> tuple[Mapping[str, str], ...]:
     summaries = [policy.summary for policy in content.policies.values() if policy.summary is not None]
     return (*(p.name for p in content.places.values()), *(p.name for p in content.policies.values()), *summaries)
+
+
+def _fasting(months: Sequence[Month], region: Region, content: Content) -> tuple[FastingMonth, ...]:
+    if content.site.fasting is None:
+        return ()
+    places = {place_id: named_place(content, place_id) for place_id in region.places}
+    return fasting_months(content.site.fasting, months, places)
 
 
 def _others(content: Content, policy_id: str, adopted: Method, months: tuple[Month, ...]) -> tuple[Other, ...]:

@@ -293,6 +293,16 @@ class Calendar(_Model):
     region: Identifier
 
 
+class Fasting(_Model):
+    """The table of dawn and sunset in the month of fasting. ``minute-safe`` rounds both so that the fast is never
+    shorter than reckoned: dawn down, sunset up."""
+
+    dawn_depression: Annotated[
+        float, Field(ge=6, le=24, description="degrees of the Sun below the horizon at dawn, 6 to 24")
+    ]
+    rounding: Literal["minute-safe", "nearest-minute"] = "minute-safe"
+
+
 OtherCalendar = Literal["solar-hijri", "solar-hijri-33", "rumi", "julian"]
 
 
@@ -321,6 +331,9 @@ class Site(_Model):
         int | None,
         Field(ge=0, le=168, description="hours before midnight at which feeds remind of main observances, 0 to 168"),
     ] = None
+    fasting: Annotated[
+        Fasting | None, Field(description="dawn_depression: degrees, with which a table of the fasting days is made")
+    ] = None
     calendars: Annotated[dict[Identifier, Calendar], Field(min_length=1)]
 
     @property
@@ -340,6 +353,7 @@ class Site(_Model):
 __all__ = [
     "Calendar",
     "Day",
+    "Fasting",
     "Identifier",
     "Language",
     "Moment",
