@@ -329,5 +329,5 @@ def test_survey_reaches_six_hundred_years_ahead(tmp_path: Path) -> None:
     assert done.exit_code == 0, done.output
     value = json.loads((tmp_path / "out" / "survey.json").read_bytes())
     assert value["survey"]["ephemeris"]["span"] == "1549-12-30 to 2650-01-24"
-    assert "standard error comes to about 8" in (tmp_path / "out" / "survey.html").read_text(encoding="utf-8")
+    assert "the standard error reaches about 8" in (tmp_path / "out" / "survey.html").read_text(encoding="utf-8")
     assert value["agreement"][0]["most_days_apart"] <= 3

@@ -10,15 +10,20 @@ from moonwrit.policy.months import Margin, Note
 _KNOWN_UNTIL = 2026
 
 
+_PAST = ((1900, 0.1), (1800, 1.0), (1750, 2.0), (1700, 5.0), (1600, 20.0))
+"""From that year on, the standard error in seconds: L. V. Morrison and F. R. Stephenson 2004, as tabulated with
+Espenak's eclipse canons; from memory. Before 1600: the same 20 s."""
+
+
 def delta_t_error_s(year: float) -> float:
-    """Standard error of delta-T in seconds, for years after those measured.
+    """Standard error of delta-T in seconds, for years before and after those measured.
 
     365.25 N sqrt(N Q/3 (1 + N/M)) / 1000 with Q = 0.058 ms2/yr, M = 2500 yr, N years from the last measured:
-    P. Huber 2006, as used in F. Espenak's eclipse canons; from memory. Before: 0.1 s, generously.
+    P. Huber 2006, as used in F. Espenak's eclipse canons; from memory. From 1900 to then: 0.1 s, generously.
     """
     n = year - _KNOWN_UNTIL
     if n <= 0:
-        return 0.1
+        return next((error for since, error in _PAST if year >= since), _PAST[-1][1])
     return max(0.1, 365.25 * n * sqrt(n * 0.058 / 3 * (1 + n / 2500)) / 1000)
 
 

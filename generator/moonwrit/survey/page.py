@@ -31,13 +31,14 @@ def page(results: Results) -> bytes:
     where = (f"a grid of {survey['grid_deg']:g} degrees between 60 S and 60 N ({survey['place_count']} places)"
              if survey["grid_deg"] else ", ".join(place["name"] for place in survey["places"]))
     sky = survey["ephemeris"]
-    error = delta_t_error_s(survey["last_year"] * 354.36707 / 365.2425 + 621.57)
+    error = max(delta_t_error_s(survey[key] * 354.36707 / 365.2425 + 621.57) for key in ("first_year", "last_year"))
     parts = [
         f"<h1>Survey of {len(titles)} policies, {years}</h1>",
         f"<p>At {escape(where)}. Each number is computed; recorded decisions are left aside. Policies that name no "
         "place of their own are asked at each place. On a grid a place counts by the area that it stands for.</p>",
-        f"<p>Ephemeris {escape(sky['file'])}, {escape(sky['span'])}. The Earth's rotation is not known ahead: at the "
-        f"end of these years its standard error comes to about {error:.0f} s, and calls closer than that are open.</p>",
+        f"<p>Ephemeris {escape(sky['file'])}, {escape(sky['span'])}. How far the Earth has turned is not known exactly "
+        f"ahead, nor long ago: in these years the standard error reaches about {error:.1f} s, and calls closer than that "
+        "are open.</p>",
         "<h2>Agreement</h2>",
     ]
     if results.seams:
@@ -138,7 +139,7 @@ def _matrix(results: Results, names: list[str]) -> str:
             x, y = beside + step * across, 10 + step * down
             parts.append(f'<rect x="{x:.1f}" y="{y}" width="{step - 2}" height="{step - 2}" fill="{_blue(share)}"/>')
             parts.append(_text(x + step / 2 - 1, y + step / 2 + 4, f"{share:.1%}", "middle",
-                               "#fff" if share > 0.5 else "#1b1f24"))
+                               "#fff" if share > 0.7 else "#1b1f24"))
     return _svg("agreement", beside + step * len(names) + 10, 30 + step * len(names),
                 "Months that two policies begin on the same day", " ".join(told), parts)
 
