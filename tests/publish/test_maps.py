@@ -13,8 +13,8 @@ import pytest
 from moonwrit.almanac import Almanac, assemble
 from moonwrit.content import load
 from moonwrit.policy import NamedPlace
-from moonwrit.policy.everywhere import Asked, asked_everywhere
 from moonwrit.policy.evening import evening_at
+from moonwrit.policy.everywhere import Asked, asked_everywhere
 from moonwrit.policy.published import published
 from moonwrit.publish.language import ENGLISH, Language
 from moonwrit.publish.maps import WIDTH, Box, Chart, charts, key, region_map, told, world_map
