@@ -191,6 +191,12 @@ def test_uncertainty_grows_with_the_years_after_those_measured() -> None:
     assert errors[5] > 100
 
 
+def test_uncertainty_grows_with_the_years_before_those_measured() -> None:
+    """Before clocks and occultations were exact it is a second in 1800 and many in 1600."""
+    errors = [delta_t_error_s(year) for year in (1950, 1850, 1780, 1720, 1650, 1560)]
+    assert errors == [0.1, 1.0, 2.0, 5.0, 20.0, 20.0]
+
+
 @pytest.mark.parametrize("seconds", [0.0, 0.05, 0.19])
 @pytest.mark.parametrize("sign", [1, -1])
 def test_a_margin_within_two_errors_is_said_to_be_so(seconds: float, sign: int) -> None:

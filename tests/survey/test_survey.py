@@ -4,10 +4,12 @@ from __future__ import annotations
 
 import csv
 import json
+import multiprocessing
 import re
 import shutil
 import subprocess
 import sys
+from collections.abc import Callable
 from datetime import date, datetime, timedelta
 from itertools import groupby
 from pathlib import Path
@@ -19,6 +21,7 @@ import pytest
 from click.testing import CliRunner, Result
 
 from moonwrit.cli import main
+from moonwrit.errors import RequestError
 from moonwrit.policy import NamedPlace, method
 from moonwrit.policy.conditions import Scoped
 from moonwrit.sky import Places
@@ -174,6 +177,16 @@ def test_page_says_what_the_numbers_say(surveyed: Path) -> None:
     assert not re.search(r'(src|href)="', text)
 
 
+@pytest.mark.judge("vnu")
+def test_page_is_valid_html(surveyed: Path, vnu: Callable[[Path], list[dict[str, Any]]], tmp_path: Path) -> None:
+    """The Nu Html Checker finds nothing wrong in the page of a list of places, nor in that of a grid."""
+    (tmp_path / "pages").mkdir()
+    shutil.copy(surveyed / "survey.html", tmp_path / "pages" / "places.html")
+    run(small(), tmp_path / "out")
+    (tmp_path / "pages" / "grid.html").write_bytes(page(gather(small(), tmp_path / "out")))
+    assert [message for message in vnu(tmp_path / "pages") if message["type"] == "error"] == []
+
+
 # --- walking at many places at once -----------------------------------------------------------------------------------
 
 
@@ -267,6 +280,20 @@ def test_a_killed_survey_is_carried_on(tmp_path: Path) -> None:
     assert 1 <= there < 6
     done = moonwrit(*words)
     assert done.stdout.startswith(f"{6 - there} units computed, {there} were there")
+
+
+def test_a_killed_process_is_told_and_made_good(tmp_path: Path) -> None:
+    """Where one of this machine's processes is killed, the command says so, and the next run does what is left."""
+    def kill(done: int, of: int) -> None:
+        if done == 2:
+            for child in multiprocessing.active_children():
+                child.kill()
+
+    with pytest.raises(RequestError, match="a worker ended without an answer; run again: what is finished is kept"):
+        run(small(), tmp_path / "out", 2, each=kill)
+    there = len(list(tmp_path.glob("out/units/*/*/*.npz")))
+    assert 2 <= there < 12
+    assert run(small(), tmp_path / "out") == 12 - there
 
 
 # --- what cannot be asked ---------------------------------------------------------------------------------------------
