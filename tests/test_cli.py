@@ -22,6 +22,7 @@ from click.testing import CliRunner, Result
 
 from moonwrit import __version__
 from moonwrit.cli import main
+from moonwrit.content import yaml
 from moonwrit.publish.schemas import schemas
 
 ROOT = Path(__file__).resolve().parent.parent
@@ -265,12 +266,32 @@ def test_begin_writes_content_that_is_sound(desk: Desk) -> None:
     done = desk.run("begin", "ours")
     assert (done.exit_code, done.stderr) == (0, "")
     assert sorted(path.name for path in (desk.folder / "ours").iterdir()) == [
-        "observances.yaml", "places.yaml", "policies.yaml", "regions.yaml", "site.yaml",
+        "logo.svg", "look.yaml", "notices", "observances.yaml", "pages", "places.yaml", "policies.yaml", "regions.yaml",
+        "schema", "site.yaml",
     ]
     assert desk.run("check", "--content", "ours").exit_code == 0
     assert "ours is there already and not empty" in desk.refused("begin", "ours")
     assert "is there already" in desk.refused("begin", "ours/site.yaml")
     assert "cannot be written" in desk.refused("begin", "ours/site.yaml/below")
+
+
+def test_begin_brings_schemas_that_editors_find(desk: Desk) -> None:
+    """Expected: each file begins with the line by which a YAML editor finds its schema, which is one and which the
+    file keeps; the record's schemas are there for when it is begun."""
+    assert desk.run("begin", "ours").exit_code == 0
+    folder = desk.folder / "ours"
+    files = sorted(folder.glob("*.yaml"))
+    assert len(files) == 6
+    for file in files:
+        match = re.match(r"# yaml-language-server: \$schema=(\S+)\n", file.read_text(encoding="utf-8"))
+        assert match, file
+        schema = json.loads((folder / match[1]).read_text(encoding="utf-8"))
+        jsonschema.Draft202012Validator.check_schema(schema)
+        value = yaml.read(file).value
+        jsonschema.Draft202012Validator(schema).validate(value)
+        with pytest.raises(jsonschema.ValidationError):
+            jsonschema.Draft202012Validator(schema).validate([value])
+    assert {file.stem for file in (folder / "schema").glob("*.json")} > {"reports.schema", "decisions.schema"}
 
 
 # --- content at fault ----------------------------------------------------------------------------------
