@@ -12,6 +12,7 @@ from typing import Any
 
 from jinja2 import (
     BaseLoader,
+    BytecodeCache,
     ChoiceLoader,
     Environment,
     FileSystemLoader,
@@ -19,8 +20,10 @@ from jinja2 import (
     StrictUndefined,
     TemplateNotFound,
     TemplateSyntaxError,
+    pass_context,
     pass_eval_context,
 )
+from jinja2.bccache import Bucket
 from jinja2.nodes import EvalContext
 from markupsafe import Markup, escape
 
@@ -61,6 +64,23 @@ class Page:
         return "../" * self.path.count("/")
 
 
+class _Compiled(BytecodeCache):
+    """Templates compiled once in a process, for the environments of all languages."""
+
+    def __init__(self) -> None:
+        self.held: dict[str, bytes] = {}
+
+    def load_bytecode(self, bucket: Bucket) -> None:
+        if bucket.key in self.held:
+            bucket.bytecode_from_string(self.held[bucket.key])
+
+    def dump_bytecode(self, bucket: Bucket) -> None:
+        self.held[bucket.key] = bucket.bytecode_to_string()
+
+
+_COMPILED = _Compiled()
+
+
 class Renderer:
     """Renders pages of one language.
 
@@ -79,10 +99,12 @@ class Renderer:
             trim_blocks=True,
             lstrip_blocks=True,
             keep_trailing_newline=True,
-            # Whole numbers that are shown are written in the language's digits.
-            finalize=lambda value: (
+            # Whole numbers that are shown are written in the language's digits; with the context, so that none is
+            # written while a template is compiled, which is done once for all languages.
+            finalize=pass_context(lambda _, value: (
                 language.digits(value) if isinstance(value, int) and not isinstance(value, bool) else value
-            ),
+            )),
+            bytecode_cache=_COMPILED,
         )
         self.environment.filters["zip"] = zip
         self.environment.globals.update(
