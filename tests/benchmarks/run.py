@@ -39,8 +39,10 @@ from moonwrit.building import content_of, held
 from moonwrit.policy import method
 from moonwrit.publish.site import site_files
 from moonwrit.publish.writing import put_in_place
-from moonwrit.sky import Circumstances, Lunations, Places, ephemeris, horizon, lunations
+from moonwrit.sky import Circumstances, Evenings, Lunations, Places, ephemeris, horizon, lunations
+from moonwrit.sky.criteria import criterion, cubic
 from moonwrit.sky.ephemeris import series
+from moonwrit.sky.maps import Grid, over, spanned
 
 ROOT = Path(__file__).resolve().parent.parent.parent
 PYTHON = sys.executable
@@ -222,6 +224,63 @@ def same_answers() -> None:
             sys.exit(f"the answers differ by {apart:.1f} s: nothing here can be compared")
 
 
+# --- maps of one evening ------------------------------------------------------------------------------
+
+MAPPED = 17353
+"""The lunation whose map is drawn: of July 2025."""
+SAMPLE = 24
+"""Points of a map that skyfield computes; its time for the whole map is scaled up from them."""
+
+
+def map_of_q(step_deg: float) -> tuple[Grid, Array]:
+    """Yallop's q over the Earth between 60 S and 60 N on the evening after the conjunction's date."""
+    moons = lunations(MAPPED, MAPPED)
+    quantity = criterion("yallop-1997").quantity
+    assert quantity is not None
+    grid = Grid.over(-180, -60, 180, 60, step_deg)
+    evening = Evenings(moons.ephemeris, moons.windows, moons.conjunction_tt, moons.day[:, None] + 1)
+    return grid, over(grid, spanned(evening), quantity.of)[0]
+
+
+def skyfield_q(latitude: float, longitude: float, noon_ut: float) -> float:
+    """Sunset and moonset by skyfield's own search, and q at best time from its apparent places."""
+    sky = ephemeris()
+    kernel, ts = sky.kernel, sky.timescale
+    earth = kernel["earth"]  # type: ignore[index]
+    start, end = ts.ut1_jd(noon_ut), ts.ut1_jd(noon_ut + 0.9)  # type: ignore[attr-defined]
+    sunset, moonset = (
+        almanac.find_settings(earth + wgs84.latlon(latitude, longitude), kernel[body], start, end)[0].ut1[0]  # type: ignore[index]
+        for body in ("sun", "moon")
+    )
+    t = ts.ut1_jd(sunset + 4 / 9 * max(moonset - sunset, 0))  # type: ignore[attr-defined]
+    phi, turn = np.radians(latitude), np.radians(15 * t.gast + longitude)
+    zenith = np.array([np.cos(phi) * np.cos(turn), np.cos(phi) * np.sin(turn), np.sin(phi)])
+    sun, moon = (t.M @ earth.at(t).observe(kernel[body]).apparent().xyz.km for body in ("sun", "moon"))  # type: ignore[index]
+    far = float(np.linalg.norm(moon))
+    sun, moon = sun / np.linalg.norm(sun), moon / far
+    altitude, parallax = np.arcsin(moon @ zenith), np.arcsin(6378.137 / far)
+    width = np.degrees(0.27245 * parallax * (1 + np.sin(altitude) * np.sin(parallax)) * (1 - sun @ moon)) * 60
+    return float((np.degrees(altitude - np.arcsin(sun @ zenith)) - cubic(width, 11.8371)) / 10)
+
+
+def point_by_skyfield() -> float:
+    """Seconds for a point of the map; its q must be the map's within 1e-4 (its search stops at some hundredths of a
+    second)."""
+    grid, q = map_of_q(1.0)
+    noon = float(lunations(MAPPED, MAPPED).day[0]) + 1 + 1721424.5 + 0.5
+    rows, columns = np.unravel_index(np.linspace(0, q.size - 1, SAMPLE).astype(int), q.shape)
+    points = [
+        (float(grid.latitude_deg[row]), float(grid.longitude_deg[column]))
+        for row, column in zip(rows, columns, strict=True)
+    ]
+    found: list[float] = []
+    taken = timed(lambda: found.extend(skyfield_q(lat, lon, noon - lon / 360) for lat, lon in points))
+    apart = np.abs(q[rows, columns] - np.array(found)).max()
+    if not apart < 1e-4:
+        sys.exit(f"the maps differ by {apart:.2g} in q: nothing here can be compared")
+    return taken / SAMPLE
+
+
 # --- whole programs ----------------------------------------------------------------------------------
 
 
@@ -394,6 +453,14 @@ def century_table(cache: str) -> None:
          found["ephem"]),
         ("moonwrit --help", found["help"], "import skyfield.api", found["import"]),
     ]
+    point = taking_turns({"point": point_by_skyfield}, runs=3)["point"]
+    for step in (1.0, 0.5):
+        size = map_of_q(step)[1].size
+        mine = taking_turns({"map": lambda step=step: timed(lambda: map_of_q(step))}, runs=7)["map"]  # type: ignore[misc]
+        rows.append((
+            f"q of one evening over the Earth, {step:g} degree, {size:,} points", mine,
+            f"skyfield, scaled from {SAMPLE}", Timing(point.median_s * size, point.least_s * size),
+        ))
     for title, work, runs in (
         ("moonwrit months, Yallop A-B, 100 years, whole process", months_of_a_century, 5),
         ("moonwrit publish, the demonstration site", demonstration_site, 3),
