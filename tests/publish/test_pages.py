@@ -20,7 +20,7 @@ HERE = "https://site.example/"
 KINDS = (
     "index.html", "1448/", "1447/jumada-al-ula/", "observances/", "observances/ramadan/", "evenings/2025-10-22/",
     "policy/", "differences/", "changes/", "subscribe/", "reading/", "404.html", "embed/", "embed/en.html",
-    "civil/2027/", "places/", "pages/about/", "notices/",
+    "civil/2027/", "places/", "fasting/1448/", "pages/about/", "notices/",
 )
 FRAMED = "embed/en.html"
 """The page that other sites show in a frame: the only one with a script."""

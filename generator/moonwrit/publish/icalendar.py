@@ -10,6 +10,7 @@ import re
 from collections.abc import Callable, Iterable, Mapping
 from datetime import date, datetime, timedelta
 from functools import partial
+from zoneinfo import ZoneInfo
 
 from icalendar import Alarm, Calendar, Event, vDDDTypes, vDuration, vText, vUri
 
@@ -19,6 +20,7 @@ from moonwrit.calendars import month_slug
 from moonwrit.concordance import in_calendar
 from moonwrit.journal import Entry, month_key
 from moonwrit.observances import Occurrence
+from moonwrit.observances.fasting import FastingDay
 from moonwrit.policy import Month
 from moonwrit.publish import labels, words
 from moonwrit.publish.edition import Edition
@@ -86,7 +88,25 @@ def evenings_feed(edition: Edition) -> bytes:
             if event is not None:
                 events.append(event.to_ical())
     title = edition.language.gettext("%(calendar)s: evenings for observers") % {"calendar": edition.name}
-    return _feed(edition, "evenings.ics", title, events, zoned=True)
+    zones = {place.timezone: place.zone for place in almanac.places.values()}
+    return _feed(edition, "evenings.ics", title, events, zones)
+
+
+def fasting_feed(edition: Edition, place: str) -> bytes:
+    """``fasting/<place>.ics``: the days of fasting at a place, from dawn to sunset.
+
+    A whole day where the Sun does not reach the angle or does not set: there is no time to give.
+    """
+    almanac, language = edition.almanac, edition.language
+    events = [
+        _fast(edition, table.month, one, place).to_ical()
+        for table in almanac.fasting if table.month.year >= edition.first_rolling_year
+        for one in table.at[place] if one.day is not None
+    ]
+    here = almanac.places[place]
+    title = language.gettext("%(calendar)s: fasting days at %(place)s") % {
+        "calendar": edition.name, "place": edition.say(here.name)}
+    return _feed(edition, f"fasting/{place}.ics", title, events, {here.timezone: here.zone})
 
 
 def tags(edition: Edition) -> list[str]:
@@ -225,6 +245,34 @@ def _timed(edition: Edition, entry: Entry, evening: Evening, place: str) -> Even
     return event
 
 
+def _fast(edition: Edition, month: Month, one: FastingDay, place: str) -> Event:
+    declared, here, language = edition.site.fasting, edition.almanac.places[place], edition.language
+    assert declared is not None
+    entry = edition.entry(month_key(month.year, month.month))
+    _ = language.gettext
+    times = _("Dawn %(dawn)s; sunset %(sunset)s.") % {
+        which: words.fasting_moment(one, which, language) for which in ("dawn", "sunset")}
+    event = _event(
+        edition, f"fast-{month.year}-{one.day:02d}-{place}", entry,
+        words.remarked(words.fast_title(one, language), month.standing, language, moved=entry.was is not None),
+        [
+            *was_sentence(entry, language), times, *words.fasting_notes([one], language),
+            words.fasting_rule(declared, language), words.fasting_caution(language),
+            words.standing_sentence(month, language),
+        ],
+        f"fasting/{month.year}/",
+    )
+    if isinstance(one.dawn, datetime) and isinstance(one.sunset, datetime):
+        event.add("dtstart", one.dawn)
+        event.add("dtend", one.sunset)
+    else:
+        _span(event, one.on, one.on)
+    event.add("location", _Text(edition.say(here.name)))
+    event.add("geo", (here.latitude, here.longitude))
+    event.add("status", "CONFIRMED" if month.standing != "expected" else "TENTATIVE")
+    return event
+
+
 def _event(
     edition: Edition, key: str, entry: Entry, title: str, paragraphs: Iterable[str], path: str
 ) -> Event:
@@ -264,7 +312,10 @@ def _reminder(hours: int, title: str) -> Alarm:
     return alarm
 
 
-def _feed(edition: Edition, name: str, title: str, events: list[bytes], *, zoned: bool = False) -> bytes:
+def _feed(
+    edition: Edition, name: str, title: str, events: list[bytes], zones: Mapping[str, ZoneInfo] | None = None
+) -> bytes:
+    """``zones``: those of timed events, by name."""
     language = edition.language
     authority = edition.say(edition.site.authority)
     calendar = Calendar()
@@ -288,13 +339,13 @@ def _feed(edition: Edition, name: str, title: str, events: list[bytes], *, zoned
     source.params["VALUE"] = "URI"
     calendar.add("source", source)
     calendar.add("color", "midnightblue")
-    if zoned:
-        first, last = edition.almanac.evenings[0].on.year, edition.almanac.evenings[-1].on.year
-        zones = {place.timezone: place.zone for place in edition.almanac.places.values()}
-        for _, zone in sorted(zones.items()):
-            calendar.add_component(vtimezone(zone, first, last))
+    first, last = edition.almanac.evenings[0].on.year, edition.almanac.evenings[-1].on.year
+    for _, zone in sorted((zones or {}).items()):
+        calendar.add_component(vtimezone(zone, first, last))
     head = bytes(calendar.to_ical()).removesuffix(_END)
     return b"".join([head, *events, _END])
 
 
-__all__ = ["evenings_feed", "months_feed", "observances_feed", "tag_feed", "tags", "was_sentence", "year_feed"]
+__all__ = [
+    "evenings_feed", "fasting_feed", "months_feed", "observances_feed", "tag_feed", "tags", "was_sentence", "year_feed",
+]

@@ -15,6 +15,7 @@ from moonwrit.calendars import month_slug
 from moonwrit.concordance import in_calendar
 from moonwrit.journal import Entry, Ledger, month_key
 from moonwrit.observances import Occurrence
+from moonwrit.observances.fasting import FastingMonth
 from moonwrit.policy import Month
 from moonwrit.policy.differ import Beside
 from moonwrit.publish import labels, maps, pictures, words
@@ -73,6 +74,9 @@ def pages(edition: Edition, editions: Sequence[Edition]) -> Iterator[Page]:
     for evening in almanac.evenings:
         title = _("Evening of %(date)s") % {"date": language.long_date(evening.on)}
         yield frame.page(evening_path(evening), "evening", title, **_evening(edition, evening))
+    for table in almanac.fasting:
+        title = _("Fasting days of %(month)s") % {"month": words.month_title(table.month, language)}
+        yield frame.page(fasting_path(table.month), "fasting", title, **_fasting(edition, table))
     yield frame.page("places/", "places", _("Places"), next_evening=_next_evening(almanac))
     yield frame.page("policy/", "policy", _("The policy"), asked=asked_in_words(almanac.method, language))
     if almanac.others:
@@ -111,6 +115,8 @@ class _Frame:
             "has_notices": bool(own_notices(editions[0])),
             "month_path": month_path,
             "evening_path": evening_path,
+            "fasting_path": fasting_path,
+            "next_fasting": _next_fasting(almanac),
             "month_of": edition.month_of.__getitem__,
             "reach": pictures.reach,
         }
@@ -132,6 +138,10 @@ def evening_path(evening: Evening) -> str:
     return f"evenings/{evening.on.isoformat()}/"
 
 
+def fasting_path(month: Month) -> str:
+    return f"fasting/{month.year}/"
+
+
 def _home(almanac: Almanac) -> dict[str, object]:
     today = almanac.as_of
     current = next((month for month in almanac.months if month.starts <= today <= month.ends), None)
@@ -148,6 +158,23 @@ def _home(almanac: Almanac) -> dict[str, object]:
 
 def _next_evening(almanac: Almanac) -> Evening | None:
     return next((evening for evening in almanac.evenings if evening.on >= almanac.as_of), None)
+
+
+def _next_fasting(almanac: Almanac) -> Month | None:
+    """The present or next month of fasting that has a table, or else the last."""
+    months = [table.month for table in almanac.fasting]
+    return next((month for month in months if month.ends >= almanac.as_of), months[-1] if months else None)
+
+
+def _fasting(edition: Edition, table: FastingMonth) -> dict[str, object]:
+    return {
+        "table": table,
+        "month": table.month,
+        "declared": edition.site.fasting,
+        "names": {place: edition.say(value.name) for place, value in edition.almanac.places.items()},
+        "noted": _noted(edition.almanac, edition.ledger, month_key(table.month.year, table.month.month)),
+        "tables": [one.month for one in edition.almanac.fasting],
+    }
 
 
 def _year(almanac: Almanac, year: int, language: Language) -> dict[str, object]:
@@ -259,7 +286,9 @@ def _subscribe(edition: Edition) -> dict[str, object]:
               _("Each 29th evening at each place, from sunset to moonset.")),
     ]
     some = [_Feed(edition, f"tags/{tag}.ics", tag, "") for tag in tags(edition)]
-    return {"subscriptions": feeds, "by_tag": some, "schemas": list(schemas())}
+    places = edition.almanac.places if edition.almanac.fasting else {}
+    fasting = [_Feed(edition, f"fasting/{place}.ics", edition.say(one.name), "") for place, one in places.items()]
+    return {"subscriptions": feeds, "by_tag": some, "fasting": fasting, "schemas": list(schemas())}
 
 
 @dataclass(frozen=True)

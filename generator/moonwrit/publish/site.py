@@ -15,7 +15,15 @@ from moonwrit.publish.basis import basis_feed
 from moonwrit.publish.dates import next_feed, year_file
 from moonwrit.publish.edition import Edition
 from moonwrit.publish.embed import embed_files
-from moonwrit.publish.icalendar import evenings_feed, months_feed, observances_feed, tag_feed, tags, year_feed
+from moonwrit.publish.icalendar import (
+    evenings_feed,
+    fasting_feed,
+    months_feed,
+    observances_feed,
+    tag_feed,
+    tags,
+    year_feed,
+)
 from moonwrit.publish.jscalendar import calendar_feed
 from moonwrit.publish.language import Language
 from moonwrit.publish.maps import charts
@@ -77,6 +85,7 @@ def _feeds(edition: Edition, *, alone: bool) -> dict[str, bytes]:
         "observances.ics": observances_feed(edition),
         "months.ics": months_feed(edition),
         "evenings.ics": evenings_feed(edition),
+        **{f"fasting/{place}.ics": fasting_feed(edition, place) for place in almanac.places if almanac.fasting},
         **{f"tags/{tag}.ics": tag_feed(edition, tag) for tag in tags(edition)},
         **{f"years/{year}.ics": year_feed(edition, year) for year in years},
         **{f"years/{year}.json": year_file(edition, year) for year in years},

@@ -6,15 +6,20 @@ Used by pages, feeds and ``moonwrit why``. Every sentence is looked up in the la
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from datetime import date
+from datetime import date, datetime
+from itertools import pairwise
+from typing import TYPE_CHECKING, Literal
 
-from moonwrit.content.models import Observance, When, in_language
+from moonwrit.content.models import Fasting, Observance, When, in_language
 from moonwrit.observances import Occurrence
 from moonwrit.policy.months import Closeness, Finding, Margin, Month, Note, Standing
 from moonwrit.publish import labels
 from moonwrit.publish.language import ENGLISH, Language
 
-EYES = "Never point optics at or near the Sun before the whole disc has set: eyes can be lost."
+if TYPE_CHECKING:
+    from moonwrit.observances.fasting import FastingDay
+
+EYES = labels.EYES
 
 
 def why_paragraphs(month: Month, language: Language = ENGLISH) -> list[str]:
@@ -276,6 +281,69 @@ def _while(day_share: float, language: Language) -> str:
         return language.ngettext("about %(n)s minute", "about %(n)s minutes", n) % {"n": language.digits(n)}
     n = round(minutes / 60)
     return language.ngettext("about %(n)s hour", "about %(n)s hours", n) % {"n": language.digits(n)}
+
+
+# --- the days of fasting -------------------------------------------------------------------------
+
+
+def fasting_rule(declared: Fasting, language: Language = ENGLISH) -> str:
+    """What dawn and sunset are, and how they are rounded."""
+    _ = language.gettext
+    text = (
+        _("Dawn: the Sun's centre comes to %(degrees)s° below the horizon, rounded down to the minute. Sunset: its "
+          "upper limb goes below a level horizon, rounded up to the minute. So both are on the cautious side.")
+        if declared.rounding == "minute-safe" else
+        _("Dawn: the Sun's centre comes to %(degrees)s° below the horizon. Sunset: its upper limb goes below a level "
+          "horizon. Both are given to the nearest minute.")
+    )
+    return text % {"degrees": language.number(declared.dawn_depression)}
+
+
+def fasting_caution(language: Language = ENGLISH) -> str:
+    return language.gettext("The times of the local authority prevail over these.")
+
+
+def fasting_moment(one: FastingDay, which: Literal["dawn", "sunset"], language: Language = ENGLISH) -> str:
+    """04:58; with its date where that is another; or why there is no time."""
+    _ = language.gettext
+    moment = one.dawn if which == "dawn" else one.sunset
+    if isinstance(moment, datetime):
+        clock = language.clock(moment)
+        if moment.date() == one.on:
+            return clock
+        return _("%(time)s on %(date)s") % {"time": clock, "date": language.short_date(moment.date())}
+    if which == "dawn":
+        return (_("none: the Sun stays above the angle") if moment == "stays above"
+                else _("none: the Sun stays below the angle"))
+    return _("none: the Sun does not set") if moment == "stays above" else _("none: the Sun does not rise")
+
+
+def fasting_notes(days: Sequence[FastingDay], language: Language = ENGLISH) -> list[str]:
+    """What is unusual about the days at one place: clocks that change, times that do not happen."""
+    _ = language.gettext
+    offsets = [
+        (one.on, moment.utcoffset()) for one in days
+        for moment in (one.dawn, one.sunset) if isinstance(moment, datetime) and moment.date() == one.on
+    ]
+    notes = [
+        _("The clocks change on %(date)s; the times are by the clock in force.") % {"date": language.full_date(on)}
+        for (_before, was), (on, now) in pairwise(dict(offsets).items()) if was != now
+    ]
+    if not all(one.complete for one in days):
+        notes.append(_("Where no time stands, the Sun does not go so far on that date. None is made up here: the "
+                       "community's own rule decides."))
+    return notes
+
+
+def fast_title(one: FastingDay, language: Language = ENGLISH) -> str:
+    """Fast, day 3: dawn 04:58 – sunset 18:23"""
+    _ = language.gettext
+    day = language.digits(one.day or "")
+    if not one.complete:
+        return _("Fast, day %(day)s: by the community's own rule") % {"day": day}
+    return _("Fast, day %(day)s: dawn %(dawn)s – sunset %(sunset)s") % {
+        "day": day, "dawn": fasting_moment(one, "dawn", language), "sunset": fasting_moment(one, "sunset", language),
+    }
 
 
 # --- observances ---------------------------------------------------------------------------------
