@@ -3,6 +3,7 @@
 #   make site        the site of content/, built into output/
 #   make test        style, types, layers, tests
 #   make judges      the programs that the tests are held against, where the machine lacks them
+#   make fuzz        hostile input for SECONDS=300, guided by coverage; installs atheris
 #   make benchmarks  tests/benchmarks/, alone on the machine
 #   make catalogues  the texts of theme and code brought into the message catalogues
 #   make lock        requirements.lock again, after a change of pyproject.toml
@@ -12,7 +13,7 @@ PYTHON ?= python3
 BIN := .venv/bin
 READY := .venv/.ready
 
-.PHONY: site test judges benchmarks catalogues lock clean
+.PHONY: site test judges fuzz benchmarks catalogues lock clean
 
 site: $(READY)
 	$(BIN)/moonwrit publish
@@ -27,21 +28,26 @@ test: $(READY)
 judges:
 	.ci/judges
 
+SECONDS ?= 300
+fuzz: $(READY)
+	$(BIN)/python -m pip install --quiet 'atheris>=2.3,<4'
+	$(BIN)/python tests/fuzz/run.py $(SECONDS)
+
 benchmarks: $(READY)
 	$(BIN)/python tests/benchmarks/run.py
 
 catalogues: $(READY)
 	$(BIN)/python themes/catalogues.py
 
-# Versions already locked are kept where they still fit; delete the lock first to take the newest of all.
+# Without the extra long-range, whose file is 114 MB. Versions already locked are kept where they still fit; delete the lock first to take the newest of all.
 lock: | $(BIN)/python
 	$(BIN)/python -m pip install --quiet uv
 	$(BIN)/uv pip compile pyproject.toml --quiet --output-file requirements.lock \
-		--universal --python-version 3.11 --fork-strategy fewest --all-extras \
+		--universal --python-version 3.11 --fork-strategy fewest --extra dev --extra pdf --extra cluster \
 		--generate-hashes --no-emit-index-url --custom-compile-command 'make lock'
 
 clean:
-	rm -rf .venv .judges .benchmarks .hypothesis .import_linter_cache .mypy_cache .pytest_cache .ruff_cache dist
+	rm -rf .venv .judges .fuzz .benchmarks .hypothesis .import_linter_cache .mypy_cache .pytest_cache .ruff_cache dist
 	find output -mindepth 1 ! -name .gitkeep -delete
 	find generator tests -name __pycache__ -prune -exec rm -rf {} +
 
