@@ -12,6 +12,8 @@ def _(message: str) -> str:
     return message
 
 
+EYES = _("Never point optics at or near the Sun before the whole disc has set: eyes can be lost.")
+
 STANDINGS: Mapping[Standing, str] = MappingProxyType({
     "expected": _("expected"),
     "settled": _("settled"),
