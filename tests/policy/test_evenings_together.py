@@ -27,5 +27,5 @@ def test_rows_of_many_evenings_are_those_of_each_alone() -> None:
 def test_a_year_alone_is_the_same_year_among_many() -> None:
     """Its months with all evidence and notes, where the 28th and 30th evenings are far from the conjunction too."""
     for name in ("yallop-b", "mabims-2021"):
-        method = published(name, PLACES[1])
+        method = published(name, NamedPlace("Reykjavik", 64.15, -21.94, 0.0, ZoneInfo("Atlantic/Reykjavik")))
         assert method.months(1440, 1440) == method.months(1430, 1450)[120:132]
