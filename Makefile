@@ -31,7 +31,7 @@ judges:
 SECONDS ?= 300
 fuzz: $(READY)
 	$(BIN)/python -m pip install --quiet 'atheris>=2.3,<4'
-	$(BIN)/python tests/fuzz/run.py $(SECONDS)
+	$(BIN)/python tests/fuzz/guided.py $(SECONDS)
 
 benchmarks: $(READY)
 	$(BIN)/python tests/benchmarks/run.py

@@ -21,6 +21,7 @@ from moonwrit.policy.differ import Beside, LongRun, beside, long_run
 from moonwrit.policy.evening import Row, evenings_at
 from moonwrit.record import Weighed, in_force, superseded, weighed
 from moonwrit.record.decisions import objection
+from moonwrit.sky import ephemeris
 
 LONG_RUN_YEARS = 15
 """Policies are held against each other over this many years before and after those published, too."""
@@ -85,6 +86,7 @@ def assemble(content: Content, as_of: date, known_until: datetime | None = None)
     Of the record, only what was written down until ``known_until`` counts (all: None). Raises ContentError where a
     declaration or a decision is at fault, or a year cannot be computed.
     """
+    ephemeris()  # a file that cannot be read is no fault of the years asked for
     years = content.site.years
     decisions = in_force(content.decisions, known_until)
     replaced = superseded(content.decisions, known_until)

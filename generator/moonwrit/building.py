@@ -7,7 +7,7 @@ from collections.abc import Callable, Iterable, Sequence
 from concurrent.futures import ProcessPoolExecutor
 from contextlib import AbstractContextManager, nullcontext
 from dataclasses import dataclass, replace
-from datetime import UTC, date, datetime
+from datetime import UTC, date, datetime, timedelta
 from functools import partial
 from multiprocessing import get_context
 from pathlib import Path
@@ -88,12 +88,23 @@ def publish(
         journal.recover(folder, output / MARKER, content.site.address)
     with progress("Computing months and observances"):
         almanacs, ledger = held(content, folder, as_of)
+    if as_of is None and ledger.added:
+        _refuse_earlier_than(max(entry.at for entry in ledger.history), now())
     with progress("Writing the site"):
         # A replay leaves nothing in the site for the journal to recover.
         files = put(almanacs, ledger if as_of is None else replace(ledger, added=()), output, paper, content.own)
     if as_of is None:
         journal.append(folder, ledger.added)
     return files
+
+
+def _refuse_earlier_than(last: datetime, moment: datetime) -> None:
+    """What is published now must not seem older than what was published before: its reasons would not count."""
+    if moment < last - timedelta(days=1):
+        raise RequestError(
+            f"the clock says {moment.isoformat(timespec='seconds')}, and the journal was last written "
+            f"{last.astimezone(UTC).isoformat()}", "set the clock, or SOURCE_DATE_EPOCH",
+        )
 
 
 @dataclass(frozen=True, slots=True)

@@ -211,18 +211,14 @@ def _opened(kernel: str) -> Ephemeris:
         # Opened directly, without skyfield-data's own loader: that one warns once the Earth orientation file
         # beside it has aged.
         opened = load_file(str(path))
+        segments = opened.spk.segments
+        first, last = max(s.start_jd for s in segments), min(s.end_jd for s in segments)
+        timescale = load.timescale(builtin=True)
         for body in ("sun", "moon", "earth"):
-            opened[body]
-    except (OSError, ValueError, KeyError) as fault:
+            opened[body].at(timescale.tt_jd(last - 1))  # reads it, which fails where the file is cut short
+    except (OSError, ValueError, KeyError, TypeError) as fault:
         raise RequestError(f"the ephemeris {path} cannot be read ({fault})", mend) from fault
-    segments = opened.spk.segments
-    return Ephemeris(
-        path,
-        opened,
-        load.timescale(builtin=True),
-        max(s.start_jd for s in segments),
-        min(s.end_jd for s in segments),
-    )
+    return Ephemeris(path, opened, timescale, first, last)
 
 
 def _file(kernel: str) -> tuple[Path, str]:
