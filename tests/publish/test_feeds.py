@@ -55,7 +55,8 @@ def calendars(site: Path) -> list[Path]:
     found = sorted(site.rglob("*.ics"))
     names = {path.relative_to(site).as_posix() for path in found}
     assert {"feeds/observances.ics", "feeds/main/months.ics", "feeds/table/evenings.ics", "feeds/tags/main.ics",
-            "feeds/years/1448.ics", "ar/feeds/observances.ics", "tr/feeds/table/tags/shia.ics"} <= names
+            "feeds/years/1448.ics", "feeds/fasting/wattle-harbour.ics",
+            "ar/feeds/observances.ics", "tr/feeds/table/tags/shia.ics"} <= names
     return found
 
 
