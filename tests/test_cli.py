@@ -564,8 +564,11 @@ def test_every_command_is_in_the_readme() -> None:
 
 
 def test_what_the_readme_shows_works_in_its_order(desk: Desk) -> None:
-    """Expected: each line of README that begins with moonwrit ends with 0, on the evening of which it speaks."""
-    for words in _in_readme():
+    """Expected: each line of README that begins with moonwrit ends with 0, on the evening of which it speaks.
+
+    But for the preview, which serves until it is stopped: tests/test_preview.py.
+    """
+    for words in (line for line in _in_readme() if line[0] != "preview"):
         done = desk.run(*words)
         assert done.exit_code == 0, f"moonwrit {' '.join(words)}: {done.output}"
 

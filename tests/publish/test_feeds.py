@@ -37,7 +37,7 @@ def site(tmp_path_factory: pytest.TempPathFactory) -> Path:
     content = tmp_path_factory.mktemp("feeds") / "content"
     shutil.copytree(ROOT / "content", content)
     site = (content / "site.yaml").read_text(encoding="utf-8")
-    site = site.replace("language: en\n", "language: en\nlanguages: [ar, tr]\nremind_hours_before: 6\n")
+    site = re.sub(r"(?m)^languages:.*$", "languages: [ar, tr]\nremind_hours_before: 6", site)
     site += "  table:\n    name: The tabular one\n    policy: tabular\n    region: three-harbours\n"
     (content / "site.yaml").write_text(site, encoding="utf-8")
     observances = (content / "observances.yaml").read_text(encoding="utf-8")

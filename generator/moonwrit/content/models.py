@@ -306,6 +306,12 @@ class Fasting(_Model):
 OtherCalendar = Literal["solar-hijri", "solar-hijri-33", "rumi", "julian"]
 
 
+_FOLDERS = frozenset({
+    "changes", "civil", "differences", "embed", "evenings", "fasting", "feeds", "messages", "notices", "observances",
+    "pages", "places", "policy", "reading", "schema", "subscribe", "tags", "years",
+})
+
+
 class Site(_Model):
     """The community and its site."""
 
@@ -347,6 +353,9 @@ class Site(_Model):
             raise ValueError("a language is named twice; languages lists those besides language")
         if both := set(self.languages) & set(self.calendars):
             raise ValueError(f'"{min(both)}" is a language and a calendar, which want one folder; rename the calendar')
+        # The first calendar stands at the top, and only its feeds also in a folder of its name.
+        if taken := _FOLDERS & set(list(self.calendars)[1:]):
+            raise ValueError(f'a calendar cannot be called "{min(taken)}", which is a folder of the site; rename it')
         return self
 
 

@@ -4,10 +4,11 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from datetime import date
 
 from moonwrit.errors import RequestError
 from moonwrit.policy.methods import Method
-from moonwrit.policy.months import Evidence, Margin, Month, Note
+from moonwrit.policy.months import Evidence, Finding, Margin, Month, Note
 
 
 @dataclass(frozen=True, slots=True)
@@ -96,13 +97,15 @@ def _reason(
     early: Month, early_title: str, late: Month, late_title: str, on_eve: tuple[Evidence, Margin] | None
 ) -> Note:
     """Why the earlier policy could begin the month when the later one could not."""
-    names = {"early": early_title, "late": late_title, "evening": early.eve.isoformat()}
+    names: dict[str, str | int | float | date | Finding] = {
+        "early": early_title, "late": late_title, "evening": early.eve,
+    }
     for month, title in ((early, early_title), (late, late_title)):
         if not month.evidence.findings:
             return Note("%(title)s is reckoned ahead and does not look at the Moon.", {"title": title})
     if on_eve is None:
         return Note("%(late)s follows another authority, which begins later.", names)
-    names["missed"] = _in_brief(*on_eve)
+    names["missed"] = _deciding(*on_eve)
     if on_eve[1].day_share is not None and on_eve[1].day_share >= 0:
         return Note(
             "On the evening of %(evening)s both tests are met (%(late)s: %(missed)s), but under %(late)s that is "
@@ -113,20 +116,14 @@ def _reason(
             "Under %(early)s thirty days were complete on the evening of %(evening)s, whatever the Moon; "
             "%(late)s has %(missed)s then.", names,
         )
-    names["found"] = _in_brief(early.evidence, early.margin)
+    names["found"] = _deciding(early.evidence, early.margin)
     return Note("On the evening of %(evening)s %(early)s has %(found)s; %(late)s has %(missed)s.", names)
 
 
-_OPPOSITE = {">=": "<", ">": "<=", "<=": ">", "<": ">="}
-
-
-def _in_brief(evidence: Evidence, margin: Margin) -> str:
-    """The deciding quantity against its threshold, as symbols: the same in every language."""
+def _deciding(evidence: Evidence, margin: Margin) -> Finding | str:
+    """The deciding comparison."""
     for finding in evidence.findings:
         deciding = (margin.quantity, margin.value, margin.threshold)
         if (finding.quantity, finding.value, finding.threshold) == deciding:
-            unit = f" {finding.unit}" if finding.unit else ""
-            value = "none" if finding.value is None else f"{finding.value:g}{unit}"
-            sign = finding.comparison if finding.met else _OPPOSITE[finding.comparison]
-            return f"{finding.quantity} {value} {sign} {finding.threshold:g}{unit} ({finding.place})"
+            return finding
     return f"{margin.quantity} ({evidence.place})"

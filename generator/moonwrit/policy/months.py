@@ -49,12 +49,22 @@ class Finding:
     met: bool
     margin: float | None
 
+    def __str__(self) -> str:
+        """age 5.581 h > 0 h (Makkah)"""
+        unit = f" {self.unit}" if self.unit else ""
+        value = "none" if self.value is None else f"{self.value:g}{unit}"
+        sign = self.comparison if self.met else _OPPOSITE[self.comparison]
+        return f"{self.quantity} {value} {sign} {self.threshold:g}{unit} ({self.place})"
+
+
+_OPPOSITE = {">=": "<", ">": "<=", "<=": ">", "<": ">="}
+
 
 class Note(NamedTuple):
     """A sentence with named places for values, kept apart so that it can be translated."""
 
     text: str
-    values: Mapping[str, str | int | float] = MappingProxyType({})
+    values: Mapping[str, str | int | float | date | Finding] = MappingProxyType({})
 
     def __str__(self) -> str:
         return self.text % self.values

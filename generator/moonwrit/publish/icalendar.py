@@ -119,7 +119,7 @@ def was_sentence(entry: Entry, language: Language) -> list[str]:
     if entry.was is None:
         return []
     return [language.gettext("Moved: it was published as %(was)s. Reason: %(reason)s.") % {
-        "was": language.full_date(entry.was), "reason": entry.because or "",
+        "was": language.full_date(entry.was), "reason": words.reason(entry.because, language),
     }]
 
 
@@ -212,7 +212,7 @@ def _all_day(
 def _cancelled(edition: Edition, entry: Entry) -> Event:
     _ = edition.language.gettext
     name = words.published_name(entry.key, edition.almanac.observances, edition.site.language, edition.language)
-    reason = _("Withdrawn: %(reason)s.") % {"reason": entry.because or ""}
+    reason = _("Withdrawn: %(reason)s.") % {"reason": words.reason(entry.because, edition.language)}
     event = _event(edition, entry.key, entry, _("%(title)s (withdrawn)") % {"title": name}, [reason], "changes/")
     _span(event, entry.starts, entry.ends)
     event.add("status", "CANCELLED")

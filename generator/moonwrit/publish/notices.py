@@ -133,7 +133,7 @@ def _changes(edition: Edition) -> Iterable[Notice]:
             "what": words.published_name(entry.key, edition.almanac.observances, edition.site.language, language),
             "was": language.full_date(entry.was or entry.starts),
             "is": language.full_date(entry.starts),
-            "reason": entry.because or "",
+            "reason": words.reason(entry.because, language),
         }
         if entry.standing == "withdrawn":
             title, text = _("%(what)s is withdrawn"), _("It was published as %(was)s. Reason: %(reason)s.")

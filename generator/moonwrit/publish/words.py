@@ -5,6 +5,7 @@ Used by pages, feeds and ``moonwrit why``. Every sentence is looked up in the la
 
 from __future__ import annotations
 
+import re
 from collections.abc import Mapping, Sequence
 from datetime import date, datetime
 from itertools import pairwise
@@ -204,7 +205,43 @@ def note_sentences(month: Month, language: Language = ENGLISH) -> list[str]:
 
 def said(note: Note, language: Language = ENGLISH) -> str:
     """A note with its values in the language's form."""
-    return language.gettext(note.text) % language.values(note.values)
+    values = {
+        key: language.long_date(value) if isinstance(value, date)
+        else in_brief(value, language) if isinstance(value, Finding) else value
+        for key, value in note.values.items()
+    }
+    return language.gettext(note.text) % language.values(values)
+
+
+def in_brief(finding: Finding, language: Language = ENGLISH) -> str:
+    """A comparison in few words: age of the Moon 5.6 hours (more than 0 hours is asked), Makkah"""
+    value = "–" if finding.value is None else measured(finding.value, finding.unit, language)
+    return language.gettext("%(quantity)s %(value)s (%(asked)s is asked), %(place)s") % {
+        "quantity": quantity(finding.quantity, language), "value": value, "asked": asked(finding, language),
+        "place": language.name(finding.place),
+    }
+
+
+def reason(text: str | None, language: Language = ENGLISH) -> str:
+    """The journal's reason for a change in the language, as far as it is the journal's own words."""
+    _ = language.gettext
+    if text is None:
+        return ""
+    if found := _BY_DECISION.fullmatch(text):
+        return _("decision of %(date)s on %(month)s by %(who)s") % {
+            "date": language.long_date(date.fromisoformat(found[1])),
+            "month": title_of(int(found[2]), int(found[3]), language), "who": found[4],
+        }
+    if found := _BY_AMENDMENT.fullmatch(text):
+        return _("amendment of %(date)s by %(who)s: %(why)s") % {
+            "date": language.long_date(date.fromisoformat(found[1])), "who": found[2], "why": found[3],
+        }
+    return text
+
+
+_BY_DECISION = re.compile(r"decision of (\d{4}-\d{2}-\d{2}) on month (\d+)-(\d{2}) by (.*)", re.DOTALL)
+_BY_AMENDMENT = re.compile(r"amendment of (\d{4}-\d{2}-\d{2}) by (.*?): (.*)", re.DOTALL)
+"""As the journal writes them."""
 
 
 def authority_sentence(authority: str, language: Language = ENGLISH) -> str:

@@ -37,8 +37,8 @@ def page(results: Results) -> bytes:
         f"<p>At {escape(where)}. Each number is computed; recorded decisions are left aside. Policies that name no "
         "place of their own are asked at each place. On a grid a place counts by the area that it stands for.</p>",
         f"<p>Ephemeris {escape(sky['file'])}, {escape(sky['span'])}. How far the Earth has turned is not known exactly "
-        f"ahead, nor long ago: in these years the standard error reaches about {error:.1f} s, and calls closer than that "
-        "are open.</p>",
+        f"ahead, nor long ago: in these years the standard error reaches about {error:.1f} s, and calls closer than "
+        "that are open.</p>",
         "<h2>Agreement</h2>",
     ]
     if results.seams:
