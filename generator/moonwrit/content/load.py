@@ -166,7 +166,7 @@ def _read(folder: Path, file: str) -> Document:
         return yaml.read(path, empty=_nothing(file))
     if (empty := _nothing(file)) is not None:
         return Document(path, empty, {(): 0})
-    others = {other.name for other in folder.glob("*.y*ml")} - set(SHAPES)
+    others = {other.name for other in folder.glob("*.y*ml")} - set(_ALL)
     near = difflib.get_close_matches(file, sorted(others), n=1)
     mend = f'rename "{near[0]}" to {file}' if near else "add it, with {} where it has nothing to say"
     raise ContentError(path, 0, "the file is missing", mend)

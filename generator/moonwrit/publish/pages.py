@@ -90,7 +90,7 @@ def pages(edition: Edition, editions: Sequence[Edition]) -> Iterator[Page]:
         yield frame.page(one.path, "own", one.title, one=one, body=_clean(one))
     if notices:
         yield frame.page("notices/", "notices", _("Notices"), notices=notices)
-    if edition.is_main:
+    if edition.is_main and not edition.tree:
         yield Page("404.html", "missing", _("No such page"), frame.common)
 
 
