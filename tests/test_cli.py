@@ -20,6 +20,7 @@ import jsonschema
 import pytest
 from click.testing import CliRunner, Result
 
+from demonstration import one_language
 from moonwrit import __version__
 from moonwrit.cli import main
 from moonwrit.content import yaml
@@ -72,6 +73,7 @@ class Desk:
 @pytest.fixture
 def desk(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Desk:
     shutil.copytree(ROOT / "content", tmp_path / "content")
+    one_language(tmp_path / "content")
     monkeypatch.chdir(tmp_path)
     return Desk(tmp_path)
 

@@ -28,6 +28,7 @@ from hypothesis import example, given, settings
 from hypothesis import strategies as st
 from pydantic import TypeAdapter, ValidationError
 
+from demonstration import one_language
 from moonwrit import journal
 from moonwrit.building import content_of, held
 from moonwrit.cli import main
@@ -82,6 +83,7 @@ def mark(number: int) -> str:
 def with_text(content: Path, text: str) -> Path:
     """The demonstration with ``text`` in each of the fields, behind a mark of its own, and languages besides."""
     shutil.copytree(ROOT / "content", content)
+    one_language(content)
     (content / "record/journal.jsonl").unlink()
     (content / "record/amendments.yaml").write_text("- {at: '2026-11-20T00:00:00Z', since: 1450-01}\n")
     documents = {
@@ -233,6 +235,7 @@ def saying(tmp_path_factory: pytest.TempPathFactory) -> Callable[[str, str], Edi
     """A year with one observance, of a given name and text about it, by a community and an authority called so."""
     content = tmp_path_factory.mktemp("small") / "content"
     shutil.copytree(ROOT / "content", content)
+    one_language(content)
     site = (content / "site.yaml").read_text(encoding="utf-8")
     (content / "site.yaml").write_text(site.replace("from: 1447, to: 1449", "from: 1448, to: 1448"), encoding="utf-8")
     shutil.rmtree(content / "pages", ignore_errors=True)
@@ -290,6 +293,7 @@ def test_any_text_that_is_taken_reads_back_from_every_feed(
 def desk(tmp_path_factory: pytest.TempPathFactory) -> Path:
     content = tmp_path_factory.mktemp("desk") / "content"
     shutil.copytree(ROOT / "content", content)
+    one_language(content)
     return content
 
 
@@ -480,6 +484,7 @@ def test_what_cannot_be_taken_is_one_message(case: str, tmp_path: Path) -> None:
     write, said = REFUSED[case]
     content = tmp_path / "content"
     shutil.copytree(ROOT / "content", content)
+    one_language(content)
     line = write(content)
     before = sorted(tmp_path.rglob("*"))
     done = CliRunner().invoke(
@@ -528,6 +533,7 @@ def test_loading_stays_within_bounds(case: str, tmp_path: Path) -> None:
     """Expected: refused with a message (comments alone are taken), within 25 s of computing and 600 MB."""
     content = tmp_path / "content"
     shutil.copytree(ROOT / "content", content)
+    one_language(content)
     COSTLY[case](content)
     done = subprocess.run(
         [sys.executable, "-c", LOADING, str(content)], capture_output=True, encoding="utf-8", check=True,
@@ -543,6 +549,7 @@ def test_loading_stays_within_bounds(case: str, tmp_path: Path) -> None:
 def test_a_byte_order_mark_is_no_fault(tmp_path: Path) -> None:
     """Expected: editors of one system put it before UTF-8; the content reads as without it."""
     shutil.copytree(ROOT / "content", tmp_path / "content")
+    one_language(tmp_path / "content")
     plain = content_of(ROOT / "content")
     for file in (tmp_path / "content").glob("*.yaml"):
         file.write_bytes(b"\xef\xbb\xbf" + file.read_bytes().replace(b"\n", b"\r\n"))

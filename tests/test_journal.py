@@ -15,6 +15,7 @@ from pathlib import Path
 import pytest
 from click.testing import CliRunner, Result
 
+from demonstration import one_language
 from moonwrit.cli import main
 
 ROOT = Path(__file__).resolve().parent.parent
@@ -55,6 +56,7 @@ class Desk:
 def desk(tmp_path: Path) -> Desk:
     content = tmp_path / "content"
     shutil.copytree(ROOT / "content", content, ignore=shutil.ignore_patterns("record"))
+    one_language(content)
     made = Desk(content, tmp_path / "output")
     made.change("site.yaml", "years: {from: 1447, to: 1449}", "years: {from: 1448, to: 1448}")
     return made

@@ -8,6 +8,7 @@ from pathlib import Path
 import pytest
 from click.testing import CliRunner
 
+from demonstration import one_language
 from moonwrit.cli import main
 
 ROOT = Path(__file__).resolve().parent.parent
@@ -20,6 +21,7 @@ def folders(tmp_path: Path) -> dict[str, Path]:
     for name in ("north", "broken", "silent"):
         content = out[name] = tmp_path / name
         shutil.copytree(ROOT / "content", content, ignore=shutil.ignore_patterns("record"))
+        one_language(content)
         site = (content / "site.yaml").read_text(encoding="utf-8")
         site = site.replace("{from: 1447, to: 1449}", "{from: 1448, to: 1448}")
         (content / "site.yaml").write_text(site, encoding="utf-8")

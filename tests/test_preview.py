@@ -13,6 +13,7 @@ from pathlib import Path
 
 import pytest
 
+from demonstration import one_language
 from moonwrit.errors import RequestError
 from moonwrit.preview import serve
 
@@ -52,6 +53,7 @@ class Previewed:
 def previewed(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Previewed]:
     content = tmp_path_factory.mktemp("previewed") / "content"
     shutil.copytree(ROOT / "content", content)
+    one_language(content)
     site = (content / "site.yaml").read_text(encoding="utf-8")
     site = site.replace("{from: 1447, to: 1449}", "{from: 1448, to: 1448}")
     (content / "site.yaml").write_text(site, encoding="utf-8")

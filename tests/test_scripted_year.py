@@ -19,6 +19,7 @@ from xml.etree import ElementTree as ET
 import pytest
 from click.testing import CliRunner
 
+from demonstration import one_language
 from live_subscriber import Subscriber, subscribed
 from moonwrit.cli import main
 
@@ -50,6 +51,7 @@ class Community:
 def community(tmp_path: Path) -> Community:
     content = tmp_path / "content"
     shutil.copytree(ROOT / "content", content, ignore=shutil.ignore_patterns("record"))
+    one_language(content)
     site = content / "site.yaml"
     text = site.read_text(encoding="utf-8")
     site.write_text(text.replace("years: {from: 1447, to: 1449}", "years: {from: 1448, to: 1448}"), encoding="utf-8")

@@ -12,6 +12,8 @@ from pathlib import Path
 import pytest
 import skyfield_data
 
+from demonstration import one_language
+
 ROOT = Path(__file__).resolve().parent.parent
 PUBLISH = [sys.executable, "-m", "moonwrit.cli", "publish"]
 
@@ -19,6 +21,7 @@ PUBLISH = [sys.executable, "-m", "moonwrit.cli", "publish"]
 @pytest.fixture
 def content(tmp_path: Path) -> Path:
     shutil.copytree(ROOT / "content", tmp_path / "content")
+    one_language(tmp_path / "content")
     return tmp_path / "content"
 
 

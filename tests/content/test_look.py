@@ -444,7 +444,7 @@ def test_any_text_becomes_clean_html_or_one_message(tmp_path_factory: pytest.Tem
     ("pages/about.md", "# Title\n" + "x" * 300_000, "pages/about.md: the text is larger than 256 kB"),
     ("pages/About.md", "# T\nx", 'pages/About.md: "About" cannot be the name of a page'),
     ("pages/a--b.md", "# T\nx", 'pages/a--b.md: "a--b" cannot be the name of a page'),
-    ("pages/about.de.md", "# T\nx", 'pages/about.tr.md: "de" is no language of the site'),
+    ("pages/about.de.md", "# T\nx", 'pages/about.de.md: "de" is no language of the site'),
     ("pages/about.html", "# T\nx", "pages/about.html: this is not a Markdown file"),
     ("pages/sub/about.md", "# T\nx", "pages/sub: this is not a Markdown file"),
     ("notices/hall-closed.md", "# T\nx", "notices/hall-closed.md: the name does not begin with a date"),
@@ -469,7 +469,7 @@ def test_each_language_may_have_a_text_of_its_own(folder: Path) -> None:
     site = folder / "site.yaml"
     text = re.sub(r"(?m)^languages:.*\n", "", site.read_text(encoding="utf-8"))
     site.write_text(text + "languages: [tr, ar]\n", encoding="utf-8")
-    write(folder / "pages/about.de.md", "# Hakkında\nx")
+    write(folder / "pages/about.tr.md", "# Hakkında\nx")
     assert refused(folder).startswith("pages/about.md: the file is missing; write it in the site's language, en, too")
     write(folder / "pages/about.md", "# About\nx")
     write(folder / "notices/2026-11-20-b.en.md", "# B\nx")

@@ -15,6 +15,7 @@ import pytest
 from click.testing import CliRunner
 from page_values import ROOT
 
+from demonstration import one_language
 from moonwrit.almanac import Almanac
 from moonwrit.building import content_of, held
 from moonwrit.cli import main
@@ -47,6 +48,7 @@ def folder(tmp_path_factory: pytest.TempPathFactory) -> Path:
     """The demonstration in three languages with texts, colours and notices of its own, and a name of markup."""
     folder = tmp_path_factory.mktemp("own") / "content"
     shutil.copytree(ROOT / "content", folder)
+    one_language(folder)
     for name in ("pages", "notices"):
         shutil.rmtree(folder / name)
     site = (folder / "site.yaml").read_text(encoding="utf-8")

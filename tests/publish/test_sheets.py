@@ -12,6 +12,7 @@ import pytest
 from page_values import ROOT
 from pypdf import PdfReader
 
+from demonstration import one_language
 from moonwrit.errors import RequestError
 from moonwrit.publish import sheets
 
@@ -23,6 +24,7 @@ def built(request: pytest.FixtureRequest, tmp_path_factory: pytest.TempPathFacto
     """A paper, and the site of one year with sheets of it."""
     content = tmp_path_factory.mktemp("sheets") / "content"
     shutil.copytree(ROOT / "content", content, ignore=shutil.ignore_patterns("record"))
+    one_language(content)
     site = content / "site.yaml"
     one_year = site.read_text(encoding="utf-8").replace("{from: 1447, to: 1449}", "{from: 1448, to: 1448}")
     site.write_text(one_year, encoding="utf-8")

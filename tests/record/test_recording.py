@@ -10,6 +10,7 @@ from pathlib import Path
 import pytest
 from click.testing import CliRunner, Result
 
+from demonstration import one_language
 from moonwrit.cli import main
 from moonwrit.content import load
 from moonwrit.content.models import Place
@@ -123,6 +124,7 @@ class Desk:
 def desk(tmp_path: Path) -> Desk:
     content = tmp_path / "content"
     shutil.copytree(ROOT / "content", content, ignore=shutil.ignore_patterns("record"))
+    one_language(content)
     return Desk(content)
 
 
