@@ -127,10 +127,14 @@ class Language:
         """The name of a Hijri month, 1 to 12."""
         return month_name(month, self.code)
 
+    @property
+    def comma(self) -> str:
+        """What stands between the items of a list."""
+        return "، " if self.direction == "rtl" else ", "
+
     def listing(self, items: list[str]) -> str:
         """a, b, c"""
-        separator = "، " if self.direction == "rtl" else ", "
-        return separator.join(items)
+        return self.comma.join(items)
 
     def _date(self, skeleton: str, day: date) -> str:
         return _date(self.code, skeleton, day)
@@ -163,7 +167,9 @@ def _full_date(code: str, day: date) -> str:
 def _number(code: str, value: float, decimals: int) -> str:
     pattern = "#,##0." + "#" * decimals if decimals else "#,##0"
     text = format_decimal(value, pattern, _locale(code), numbering_system="default")
-    return text.replace("-", "\u2212").translate(_digits(code))
+    # Without the mark, European digits in a line from right to left would have their sign on the wrong side (CLDR).
+    minus = "\u200e\u2212" if _locale(code).text_direction == "rtl" and not _digits(code) else "\u2212"
+    return text.replace("-", minus).translate(_digits(code))
 
 
 ENGLISH = Language()

@@ -379,12 +379,15 @@ def seasons(almanac: Almanac, month: int, language: Language) -> str:
         parts.append(f'<circle class="mark {kind}" cx="{x:.1f}" cy="{y:.1f}" r="{r}"/>')
         if later in {0, len(known) - 1, _ROUND - 1}:
             x, y = at(days / _SEASONS_DAYS, radius - 34 - later * 2.4)
-            parts.append(_text(x, y + 5, str(known[0].year + later), "name", "middle"))
-    names = {"month": language.month(month), "first": known[0].year, "last": known[0].year + _ROUND - 1}
+            parts.append(_text(x, y + 5, language.digits(known[0].year + later), "name", "middle"))
+    names = {
+        "month": language.month(month), "first": language.digits(known[0].year),
+        "last": language.digits(known[0].year + _ROUND - 1),
+    }
     told = [
         _("The civil year as a ring; from %(first)s to %(last)s the first day of %(month)s moves once round it, each "
           "year about eleven days earlier.") % names,
-        *(f"{one.year}: {language.long_date(one.starts)}." for one in known),
+        *(f"{language.digits(one.year)}: {language.long_date(one.starts)}." for one in known),
     ]
     title = _("The first day of %(month)s moves through the seasons") % names
     return _svg(size, size, title, " ".join(told), "seasons", parts)
