@@ -41,7 +41,10 @@ async function look(browser, colorScheme, width) {
 
 (async () => {
   const browser = await chromium.launch({ executablePath, args: ["--no-sandbox"] });
-  const looks = ["light", "dark"].flatMap((scheme) => [1280, 320].map((width) => look(browser, scheme, width)));
+  const all = ["light", "dark"].flatMap((scheme) => [1280, 320].map((width) => [scheme, width]));
+  // LOOKS=crossed: light and wide, dark and narrow.
+  const chosen = process.env.LOOKS === "crossed" ? [all[0], all[3]] : all;
+  const looks = chosen.map(([scheme, width]) => look(browser, scheme, width));
   console.log(JSON.stringify((await Promise.all(looks)).flat()));
   await browser.close();
 })();

@@ -96,6 +96,20 @@ def test_pages_are_accessible_and_fit_light_and_dark_wide_and_narrow(
     assert bad == []
 
 
+@pytest.mark.judge("axe")
+@pytest.mark.parametrize("code", ["ar", "tr", "ur", "id", "fr"])
+def test_pages_are_accessible_in_every_language(
+    demonstration: Path, node: Callable[..., Any], chromium: str, code: str, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Expected: the same of every kind of page in each other language, light and wide, dark and narrow."""
+    monkeypatch.setenv("LOOKS", "crossed")
+    pages = [kind.replace("en.html", f"{code}.html") if kind.endswith("en.html") else f"{code}/{kind}"
+             for kind in KINDS if kind != "404.html"]
+    found = node(Path(__file__).with_name("look.js"), chromium, demonstration, *pages)
+    assert len(found) == 2 * len(pages)
+    assert [look for look in found if look["violations"] or look["faults"] or look["wider"] > 0] == []
+
+
 def test_every_internal_link_and_fragment_leads_somewhere(demonstration: Path, parsed: dict[str, Parsed]) -> None:
     """Expected: each relative address is a file of the site, each fragment the one element with that id."""
     followed = 0
