@@ -512,8 +512,8 @@ COSTLY: dict[str, Write] = {
     "many rings": outline(json.dumps({"type": "MultiPolygon", "coordinates": [json.loads(f"[{SQUARE}]")] * 150_000})),
     "rows": table(HEAD + "1447,1,2026-01-01\n" * 110_000),
 }
-LOADING = """
-import resource, sys, time
+LOADING = r"""
+import re, resource, sys
 from pathlib import Path
 from moonwrit.building import content_of
 from moonwrit.errors import ContentError
@@ -523,7 +523,9 @@ try:
 except ContentError as fault:
     print(str(fault)[:300])
 used = resource.getrusage(resource.RUSAGE_SELF)
-print(used.ru_utime + used.ru_stime, used.ru_maxrss // 1024)
+# Not ru_maxrss, which begins with what the process that started this one had.
+peak = int(re.search(r"VmHWM:\s*(\d+)", Path("/proc/self/status").read_text())[1]) // 1024
+print(used.ru_utime + used.ru_stime, peak)
 """
 SECONDS, MEGABYTES = 25, 600
 
