@@ -13,6 +13,7 @@ from __future__ import annotations
 import json
 import os
 import platform
+import re
 import resource
 import shutil
 import statistics
@@ -321,7 +322,7 @@ def large(folder: Path, languages: str) -> Path:
     site = folder / "site.yaml"
     text = site.read_text(encoding="utf-8").replace("years: {from: 1447, to: 1449}", "years: {from: 1447, to: 1456}")
     text += "  second: {name: Second calendar, policy: umm-al-qura, region: three-harbours}\n"
-    site.write_text(f"languages: [{languages}]\n{text}", encoding="utf-8")
+    site.write_text(re.sub(r"(?m)^languages:.*$", f"languages: [{languages}]", text), encoding="utf-8")
     content = content_of(folder)
     assert (content.site.years.first, content.site.years.last, len(content.site.calendars)) == (1447, 1456, 2)
     return folder
