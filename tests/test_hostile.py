@@ -30,7 +30,7 @@ from pydantic import TypeAdapter, ValidationError
 
 from demonstration import one_language
 from moonwrit import journal
-from moonwrit.building import content_of, held
+from moonwrit.building import assembled, content_of, held
 from moonwrit.cli import main
 from moonwrit.content.models import Text
 from moonwrit.errors import ContentError, MoonwritError
@@ -241,7 +241,9 @@ def saying(tmp_path_factory: pytest.TempPathFactory) -> Callable[[str, str], Edi
     shutil.rmtree(content / "pages", ignore_errors=True)
     (content / "record/journal.jsonl").unlink()
     (content / "observances.yaml").write_text("eid: {name: Eid, when: {month: 10, day: 1}, tags: [main]}\n")
-    (almanac,), ledger = held(content_of(content), content, date(2026, 12, 1))
+    read, today = content_of(content), date(2026, 12, 1)
+    almanacs = assembled(read, today)
+    (almanac,), ledger = almanacs, held(read, content, almanacs, today)
 
     def said(name: str, about: str) -> Edition:
         eid = almanac.observances["eid"].model_copy(update={"name": {"": name}, "about": {"": about}})

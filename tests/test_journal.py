@@ -8,58 +8,16 @@ import shutil
 import subprocess
 import sys
 from collections.abc import Callable
-from dataclasses import dataclass
-from datetime import datetime
 from pathlib import Path
 
 import pytest
-from click.testing import CliRunner, Result
 
-from demonstration import one_language
-from moonwrit.cli import main
-
-ROOT = Path(__file__).resolve().parent.parent
-
-
-@dataclass(frozen=True)
-class Desk:
-    """An officer's copy of the content, and the site built from it."""
-
-    content: Path
-    output: Path
-
-    def try_to(self, now: str, *words: str) -> Result:
-        at = str(int(datetime.fromisoformat(now).timestamp()))
-        return CliRunner(env={"SOURCE_DATE_EPOCH": at}).invoke(main, [*words, "--content", str(self.content)])
-
-    def publish(self, now: str, exit_code: int = 0) -> str:
-        done = self.try_to(now, "publish", "--output", str(self.output))
-        assert done.exit_code == exit_code, done.output
-        return done.output
-
-    def decide(self, now: str, month: str, starts: str, basis: str, *more: str) -> None:
-        done = self.try_to(now, "record", "decision", "--month", month, "--starts", starts, "--basis", basis,
-                           "--by", "The committee", *more)
-        assert done.exit_code == 0, done.output
-
-    def change(self, file: str, old: str, new: str) -> None:
-        text = (self.content / file).read_text(encoding="utf-8")
-        assert text.count(old) == 1
-        (self.content / file).write_text(text.replace(old, new), encoding="utf-8")
-
-    def lines(self) -> list[dict[str, object]]:
-        text = (self.content / "record/journal.jsonl").read_text(encoding="utf-8")
-        return [json.loads(line) for line in text.splitlines()]
+from demonstration import ROOT, Desk, desk_of_one_year
 
 
 @pytest.fixture
 def desk(tmp_path: Path) -> Desk:
-    content = tmp_path / "content"
-    shutil.copytree(ROOT / "content", content, ignore=shutil.ignore_patterns("record"))
-    one_language(content)
-    made = Desk(content, tmp_path / "output")
-    made.change("site.yaml", "years: {from: 1447, to: 1449}", "years: {from: 1448, to: 1448}")
-    return made
+    return desk_of_one_year(tmp_path)
 
 
 JUNE = "2026-06-01T00:00:00Z"

@@ -86,3 +86,11 @@ def test_a_cluster_builds_the_same(folders: dict[str, Path], tmp_path: Path) -> 
     assert done.exit_code == 0, done.output
     assert files(tmp_path / "here/north") == files(tmp_path / "there/north")
     assert files(tmp_path / "here/south") == files(tmp_path / "there/south")
+
+
+def test_a_cluster_that_does_not_answer_is_one_message(folders: dict[str, Path], tmp_path: Path) -> None:
+    pytest.importorskip("distributed", reason="the extra cluster is not installed")
+    words = [word for folder in folders.values() for word in ("--content", str(folder))]
+    done = CliRunner().invoke(main, ["publish", *words, "--output", str(tmp_path / "all"), "--scheduler", "nowhere"])
+    assert done.exit_code == 1
+    assert "no Dask scheduler answers at nowhere" in done.output

@@ -8,58 +8,25 @@ is held against the feed itself.
 from __future__ import annotations
 
 import json
-import shutil
 from collections import Counter
 from collections.abc import Iterator
-from dataclasses import dataclass
-from datetime import date, datetime
+from datetime import date
 from pathlib import Path
 from xml.etree import ElementTree as ET
 
 import pytest
-from click.testing import CliRunner
 
-from demonstration import one_language
+from demonstration import Desk, desk_of_one_year
 from live_subscriber import Subscriber, subscribed
-from moonwrit.cli import main
-
-ROOT = Path(__file__).resolve().parent.parent
-
-
-@dataclass(frozen=True)
-class Community:
-    """An officer's folder, and the site that the public reads."""
-
-    content: Path
-    output: Path
-
-    def run(self, now: str, *words: str) -> str:
-        """A command at a moment; it must end well."""
-        at = str(int(datetime.fromisoformat(now).timestamp()))
-        done = CliRunner(env={"SOURCE_DATE_EPOCH": at}).invoke(main, [*words, "--content", str(self.content)])
-        assert done.exit_code == 0, done.output
-        return done.output
-
-    def publish(self, now: str) -> None:
-        self.run(now, "publish", "--output", str(self.output))
-
-    def decide(self, now: str, month: str, starts: str, basis: str) -> None:
-        self.run(now, "record", "decision", "--month", month, "--starts", starts, "--basis", basis, "--by", "Us")
 
 
 @pytest.fixture
-def community(tmp_path: Path) -> Community:
-    content = tmp_path / "content"
-    shutil.copytree(ROOT / "content", content, ignore=shutil.ignore_patterns("record"))
-    one_language(content)
-    site = content / "site.yaml"
-    text = site.read_text(encoding="utf-8")
-    site.write_text(text.replace("years: {from: 1447, to: 1449}", "years: {from: 1448, to: 1448}"), encoding="utf-8")
-    return Community(content, tmp_path / "output")
+def community(tmp_path: Path) -> Desk:
+    return desk_of_one_year(tmp_path)
 
 
 @pytest.fixture
-def subscriber(community: Community, tmp_path: Path) -> Iterator[Subscriber]:
+def subscriber(community: Desk, tmp_path: Path) -> Iterator[Subscriber]:
     community.publish("2026-06-01T00:00:00Z")
     with subscribed(community.output, tmp_path / "home", ["observances.ics"]) as reader:
         yield reader
@@ -74,17 +41,17 @@ def _plain(title: str) -> str:
     return title.partition(" (")[0]
 
 
-def _uids(community: Community) -> list[str]:
+def _uids(community: Desk) -> list[str]:
     lines = _feed(community, "observances.ics").replace("\r\n ", "").splitlines()
     return sorted(line for line in lines if line.startswith("UID:"))
 
 
-def _feed(community: Community, name: str) -> str:
+def _feed(community: Desk, name: str) -> str:
     return (community.output / "feeds" / name).read_text(encoding="utf-8")
 
 
 @pytest.mark.judge("vdirsyncer", "khal")
-def test_subscribers_follow_three_decisions_and_lose_nothing(community: Community, subscriber: Subscriber) -> None:
+def test_subscribers_follow_three_decisions_and_lose_nothing(community: Desk, subscriber: Subscriber) -> None:
     """One decision as expected, one that moves a month by a day, one superseded the same night."""
     expected = _look(subscriber)
     assert ("Ramadan (expected)", date(2027, 2, 9)) in expected
@@ -140,7 +107,7 @@ def test_subscribers_follow_three_decisions_and_lose_nothing(community: Communit
     assert page.count("<tr><td>") == len([one for one in lines if "was" in one])
 
 
-def test_replay_gives_what_the_public_saw(community: Community, tmp_path: Path) -> None:
+def test_replay_gives_what_the_public_saw(community: Desk, tmp_path: Path) -> None:
     """``publish --as-of`` a past day writes byte for byte the site of that day, whatever was decided since."""
     community.publish("2027-02-05T12:00:00+11:00")
     community.decide("2027-02-07T21:00:00+11:00", "1448-09", "2027-02-08", "sighted")
@@ -152,9 +119,9 @@ def test_replay_gives_what_the_public_saw(community: Community, tmp_path: Path) 
     assert _files(community.output) != seen
 
     replayed = tmp_path / "replayed"
-    community.run("2028-01-01T00:00:00Z", "publish", "--as-of", "2027-02-07", "--output", str(replayed))
+    community.do("2028-01-01T00:00:00Z", "publish", "--as-of", "2027-02-07", "--output", str(replayed))
     assert _files(replayed) == seen
-    community.run("2028-01-01T00:00:00Z", "publish", "--output", str(replayed))
+    community.do("2028-01-01T00:00:00Z", "publish", "--output", str(replayed))
     lines = (community.content / "record/journal.jsonl").read_bytes().splitlines()
     assert lines == journal.splitlines(), "a replay leaves nothing behind for the journal"
 

@@ -13,6 +13,7 @@ from babel.messages.catalog import Catalog
 from babel.messages.extract import extract_from_dir
 from babel.messages.pofile import read_po, write_po
 
+from moonwrit.concordance import TITLES
 from moonwrit.policy.names import CRITERIA, published_names
 from moonwrit.policy.published import NamedPlace, published
 from moonwrit.publish.catalogue import untranslated
@@ -43,6 +44,7 @@ def template() -> Catalog:
         ):
             found.append((f"{label}/{file.replace(chr(92), '/')}", message, context))
     found += [("generator/moonwrit/sky/criteria.py", text, None) for text in _of_policies()]
+    found += [("generator/moonwrit/concordance.py", text, None) for text in TITLES.values()]
     for place, message, _context in sorted(found, key=lambda one: (one[0].startswith("themes"), one[0])):
         out.add(message, locations=[(place, None)])  # type: ignore[list-item]
     return out

@@ -14,6 +14,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 from zoneinfo import ZoneInfo
 
+from moonwrit.cluster import connected
 from moonwrit.content import Content, load
 from moonwrit.errors import MoonwritError, RequestError
 from moonwrit.policy.names import CRITERIA, published_names
@@ -55,19 +56,25 @@ def end_of(day: date, content: Content) -> datetime:
     return datetime(day.year, day.month, day.day, 23, 59, 59, tzinfo=zone(content))
 
 
-def held(content: Content, folder: Path, as_of: date | None) -> tuple[tuple[Almanac, ...], Ledger]:
-    """The almanacs of a folder, and what they change of what was published; ``as_of``: as it was known on that day.
-
-    Raises MoonwritError: ContentError, RequestError, or SilentChangeError.
-    """
-    from moonwrit import journal
+def assembled(content: Content, as_of: date | None) -> tuple[Almanac, ...]:
+    """The almanacs of the content; ``as_of``: as it was known on that day. Raises ContentError or RequestError."""
     from moonwrit.almanac import assemble
 
-    moment = now()
+    if as_of is None:
+        return assemble(content, today(content, now()))
+    return assemble(content, as_of, end_of(as_of, content))
+
+
+def held(content: Content, folder: Path, almanacs: Sequence[Almanac], as_of: date | None) -> Ledger:
+    """What almanacs change of what a folder's journal says was published; ``as_of``: until that day.
+
+    Raises ContentError for a damaged journal, SilentChangeError for a change without a reason.
+    """
+    from moonwrit import journal
+
     until = None if as_of is None else end_of(as_of, content)
-    almanacs = assemble(content, as_of or today(content, moment), until)
     seen = [entry for entry in journal.read(folder) if until is None or entry.at <= until]
-    return almanacs, journal.hold_against(seen, almanacs, content.amendments, until or moment)
+    return journal.hold_against(seen, almanacs, content.amendments, until or now())
 
 
 def publish(
@@ -87,7 +94,8 @@ def publish(
     if as_of is None:
         journal.recover(folder, output / MARKER, content.site.address)
     with progress("Computing months and observances"):
-        almanacs, ledger = held(content, folder, as_of)
+        almanacs = assembled(content, as_of)
+        ledger = held(content, folder, almanacs, as_of)
     if as_of is None and ledger.added:
         _refuse_earlier_than(max(entry.at for entry in ledger.history), now())
     with progress("Writing the site"):
@@ -135,11 +143,7 @@ def publish_many(
         with ProcessPoolExecutor(workers, mp_context=get_context("spawn")) as pool:
             yield from pool.map(job, places)
         return
-    try:
-        from distributed import Client
-    except ImportError:
-        raise RequestError("--scheduler needs the extra cluster", "pip install 'moonwrit[cluster]'") from None
-    with Client(scheduler) as client:
+    with connected(scheduler) as client:
         yield from client.gather(client.map(job, places, pure=False))
 
 
@@ -153,4 +157,4 @@ def _outcome(folder: Path, output: Path, as_of: date | None, paper: Paper | None
     return Outcome(folder, f"{files} files in {output / folder.name}", 0)
 
 
-__all__ = ["Outcome", "content_of", "end_of", "held", "now", "publish", "publish_many", "today", "zone"]
+__all__ = ["Outcome", "assembled", "content_of", "end_of", "held", "now", "publish", "publish_many", "today", "zone"]

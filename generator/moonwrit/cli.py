@@ -219,7 +219,9 @@ def evening(
         ("", *(str(row["place"]) for row in rows)),
         [(key, *("-" if row[key] is None else str(row[key]) for row in rows)) for key in keys],
     )
-    click.echo("Never point optics at or near the Sun before the whole disc has set: eyes can be lost.")
+    from moonwrit.publish.labels import EYES
+
+    click.echo(EYES)
 
 
 @main.command()

@@ -16,7 +16,7 @@ from http import HTTPStatus
 from pathlib import Path
 from urllib.parse import urlsplit
 
-from moonwrit.building import content_of, held, now, today
+from moonwrit.building import assembled, content_of, held, now
 from moonwrit.errors import MoonwritError, RequestError
 from moonwrit.journal import SilentChangeError, hold_against
 from moonwrit.resources import themes_folder
@@ -60,13 +60,11 @@ def build(folder: Path, output: Path, as_of: date | None) -> list[str]:
 
     said = []
     content = content_of(folder)
+    almanacs = assembled(content, as_of)
     try:
-        almanacs, ledger = held(content, folder, as_of)
+        ledger = held(content, folder, almanacs, as_of)
     except SilentChangeError as fault:
-        from moonwrit.almanac import assemble
-
         said.append(f"publish would stop: {fault}")
-        almanacs = assemble(content, as_of or today(content, now()))
         ledger = hold_against((), almanacs, (), now())
     put(almanacs, replace(ledger, added=()), output, own=content.own)
     return said

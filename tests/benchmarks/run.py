@@ -36,7 +36,7 @@ from skyfield import almanac
 from skyfield.api import wgs84
 
 from moonwrit.almanac import assemble
-from moonwrit.building import content_of, held
+from moonwrit.building import assembled, content_of, held
 from moonwrit.policy import method
 from moonwrit.publish.site import site_files
 from moonwrit.publish.writing import put_in_place
@@ -332,14 +332,15 @@ def site(folder: Path) -> dict[str, Any]:
     """Seconds for assembling, rendering, and writing the same bytes; how many pages, megabytes, and the peak."""
     content = content_of(folder)
     start = time.perf_counter()
-    almanacs, ledger = held(content, folder, None)
-    assembled = time.perf_counter()
+    almanacs = assembled(content, None)
+    ledger = held(content, folder, almanacs, None)
+    ready = time.perf_counter()
     files = site_files(almanacs, ledger)
     rendered = time.perf_counter()
     put_in_place(files, folder.parent / f"{folder.name}-written")
     written = time.perf_counter()
     return {
-        "assembling": assembled - start, "rendering": rendered - assembled, "writing": written - rendered,
+        "assembling": ready - start, "rendering": rendered - ready, "writing": written - rendered,
         "pages": sum(name.endswith(".html") for name in files), "MB": sum(map(len, files.values())) / 1e6,
         "peak": _peak_mb(),
     }

@@ -17,7 +17,7 @@ from page_values import ROOT
 
 from demonstration import one_language
 from moonwrit.almanac import Almanac
-from moonwrit.building import content_of, held
+from moonwrit.building import assembled, content_of, held
 from moonwrit.cli import main
 from moonwrit.errors import ContentError
 from moonwrit.journal import Ledger
@@ -72,7 +72,9 @@ def folder(tmp_path_factory: pytest.TempPathFactory) -> Path:
 
 @pytest.fixture(scope="module")
 def known(folder: Path) -> tuple[tuple[Almanac, ...], Ledger]:
-    return held(content_of(folder), folder, TODAY)
+    content = content_of(folder)
+    almanacs = assembled(content, TODAY)
+    return almanacs, held(content, folder, almanacs, TODAY)
 
 
 @pytest.fixture(scope="module")

@@ -48,8 +48,7 @@ def method(name: str, content: Content | None = None, place: NamedPlace | None =
 def named_place(content: Content, place_id: str) -> NamedPlace:
     """A place of the content by the name that the site's language gives it."""
     place = content.places[place_id]
-    name = in_language(place.name, content.site.language)
-    return NamedPlace(name, place.latitude, place.longitude, place.elevation, place.zone)
+    return NamedPlace.of(in_language(place.name, content.site.language), place)
 
 
 @dataclass(frozen=True)

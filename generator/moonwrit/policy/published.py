@@ -7,6 +7,7 @@ from dataclasses import dataclass
 from zoneinfo import ZoneInfo
 
 from moonwrit.calendars import TABULAR_NAMES, tabular_by_name
+from moonwrit.content.models import Place
 from moonwrit.errors import RequestError, did_you_mean
 from moonwrit.policy.conditions import Either, Every, Scoped
 from moonwrit.policy.methods import Method
@@ -34,6 +35,11 @@ class NamedPlace:
     longitude_deg: float
     elevation_m: float
     zone: ZoneInfo | None
+
+    @classmethod
+    def of(cls, name: str, place: Place) -> NamedPlace:
+        """A place of the content, by a name."""
+        return cls(name, place.latitude, place.longitude, place.elevation, place.zone)
 
     @property
     def row(self) -> tuple[float, float, float, ZoneInfo | None]:

@@ -17,12 +17,12 @@ from icalendar import Alarm, Calendar, Event, vDDDTypes, vDuration, vText, vUri
 from moonwrit import __version__
 from moonwrit.almanac import Evening
 from moonwrit.calendars import month_slug
-from moonwrit.concordance import in_calendar
+from moonwrit.concordance import TITLES, in_calendar
 from moonwrit.journal import Entry, month_key
 from moonwrit.observances import Occurrence
 from moonwrit.observances.fasting import FastingDay
 from moonwrit.policy import Month
-from moonwrit.publish import labels, words
+from moonwrit.publish import words
 from moonwrit.publish.edition import Edition
 from moonwrit.publish.language import Language
 from moonwrit.publish.timezones import vtimezone
@@ -190,7 +190,7 @@ def _reasons(month: Month, language: Language) -> list[str]:
 def _also(edition: Edition, day: date) -> list[str]:
     """The first day in the other calendars that the site keeps beside its own."""
     found = [
-        f"{edition.language.gettext(labels.CALENDARS[calendar])} {other}" for calendar in edition.site.also
+        f"{edition.language.gettext(TITLES[calendar])} {other}" for calendar in edition.site.also
         if (other := in_calendar(day, calendar)) is not None
     ]
     return [edition.language.listing(found) + "."] if found else []

@@ -81,13 +81,6 @@ FRAMES: Mapping[str, str] = MappingProxyType({
 })
 """The parts of a frame, by the words that the sky has for them. One that is missing here is shown as it is."""
 
-CALENDARS: Mapping[str, str] = MappingProxyType({
-    "solar-hijri": _("Solar Hijri"),
-    "solar-hijri-33": _("Solar Hijri (33-year approximation)"),
-    "rumi": _("Rumi"),
-    "julian": _("Julian"),
-})
-
 SIGNS: Mapping[str, str] = MappingProxyType({
     ">=": _("at least %(limit)s"),
     ">": _("more than %(limit)s"),

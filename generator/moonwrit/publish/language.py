@@ -111,13 +111,9 @@ class Language:
         """Friday"""
         return str(get_day_names("wide", "stand-alone", self.locale)[day.weekday()])
 
-    def short_weekday(self, day: date) -> str:
-        """Fri"""
-        return str(get_day_names("abbreviated", "stand-alone", self.locale)[day.weekday()])
-
-    def clock(self, moment: datetime, seconds: bool = False) -> str:
+    def clock(self, moment: datetime) -> str:
         """20:15, by the clock of the moment's own zone."""
-        return self.digits(moment.strftime("%H:%M:%S" if seconds else "%H:%M"))
+        return self.digits(moment.strftime("%H:%M"))
 
     def number(self, value: float, decimals: int = 4) -> str:
         """With a true minus sign and at most so many decimals."""

@@ -151,8 +151,7 @@ class Chart:
 def charts(almanac: Almanac) -> dict[date, Chart]:
     """A chart for the 29th evening before each month; none where the policy does not ask the sky itself."""
     places = [
-        NamedPlace(in_language(place.name, almanac.site.language), place.latitude, place.longitude, place.elevation,
-                   place.zone)
+        NamedPlace.of(in_language(place.name, almanac.site.language), place)
         for place in almanac.places.values()
     ]
     outlined = None

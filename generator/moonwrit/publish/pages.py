@@ -12,13 +12,13 @@ from markupsafe import Markup, escape
 
 from moonwrit.almanac import Almanac, Evening
 from moonwrit.calendars import month_slug
-from moonwrit.concordance import in_calendar
+from moonwrit.concordance import TITLES, in_calendar
 from moonwrit.journal import Entry, Ledger, month_key
 from moonwrit.observances import Occurrence
 from moonwrit.observances.fasting import FastingMonth
 from moonwrit.policy import Month
 from moonwrit.policy.differ import Beside
-from moonwrit.publish import labels, maps, pictures, words
+from moonwrit.publish import maps, pictures, words
 from moonwrit.publish.asked import asked_in_words
 from moonwrit.publish.civil import civil_months, civil_years
 from moonwrit.publish.edition import Edition, tree
@@ -198,7 +198,7 @@ def _month(almanac: Almanac, ledger: Ledger, index: int) -> dict[str, object]:
         "cells": _cells(almanac, month),
         "superseded": almanac.superseded.get(month.ordinal, ()),
         "noted": _noted(almanac, ledger, month_key(month.year, month.month)),
-        "also": [labels.CALENDARS[calendar] for calendar in almanac.site.also],
+        "also": [TITLES[calendar] for calendar in almanac.site.also],
     }
 
 

@@ -42,7 +42,7 @@ def weighed(
 
 
 def _weigh(report: Report, place: Place, name: str) -> Weighed:
-    here = NamedPlace(name, place.latitude, place.longitude, place.elevation, place.zone)
+    here = NamedPlace.of(name, place)
     found = evening_at(report.evening, [here])[0]
     if report.outcome == "could-not-look":
         return Weighed(report, "as expected", ())

@@ -13,6 +13,7 @@ from itertools import islice
 from multiprocessing import get_context
 from pathlib import Path
 
+from moonwrit.cluster import connected
 from moonwrit.errors import RequestError
 from moonwrit.survey.plan import Plan, Unit
 from moonwrit.survey.unit import computed
@@ -106,15 +107,9 @@ def _here(plan: Plan, todo: list[Unit], workers: int) -> Finished:
 
 def _on_cluster(plan: Plan, todo: list[Unit], scheduler: str) -> Finished:
     """On the Dask cluster at the address. What a lost worker had under way is given to another."""
-    try:
-        from distributed import Client, KilledWorker, as_completed
-    except ImportError:
-        raise RequestError("--scheduler needs the extra cluster", "pip install 'moonwrit[cluster]'") from None
-    try:
-        client = Client(scheduler, timeout=20)
-    except (OSError, ValueError) as fault:
-        raise RequestError(f"no Dask scheduler answers at {scheduler} ({fault})",
-                           "start one, or give its address, such as tcp://host:8786") from None
+    client = connected(scheduler)
+    from distributed import KilledWorker, as_completed
+
     job = partial(computed, plan)
     waiting = iter(todo)
     with client:
