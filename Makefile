@@ -43,7 +43,7 @@ catalogues: $(READY)
 lock: | $(BIN)/python
 	$(BIN)/python -m pip install --quiet uv
 	$(BIN)/uv pip compile pyproject.toml --quiet --output-file requirements.lock \
-		--universal --python-version 3.11 --fork-strategy fewest --extra dev --extra pdf --extra cluster \
+		--universal --python-version 3.11 --fork-strategy fewest --extra dev --extra pdf --extra cluster --extra parquet \
 		--generate-hashes --no-emit-index-url --custom-compile-command 'make lock'
 
 clean:
