@@ -312,8 +312,8 @@ def _silent_line(known: Entry, fresh: Entry, month: Month) -> str:
 
 
 def _year_of(key: str) -> int | None:
-    """The Hijri year in a key: the first number of three or four figures after the name."""
-    for part in key.split("-")[1:]:
+    """The Hijri year in a key: the last number of three or four figures, for the name may hold one as well."""
+    for part in reversed(key.split("-")[1:]):
         if part.isdigit() and len(part) in (3, 4):
             return int(part)
     return None
