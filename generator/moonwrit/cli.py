@@ -329,9 +329,9 @@ def survey(
                      None if content is None else folder.resolve())
     with _counted("Units") as each:
         done = run(asked, output, workers, scheduler, each)
-    with _progress("Gathering results"):
-        results = gather(asked, output)
-        write(output / "survey.html", page(results))
+    with _counted("Parts gathered") as each:
+        results = gather(asked, output, workers, each)
+    write(output / "survey.html", page(results))
     click.echo(f"{done} units computed, {asked.unit_count - done} were there; results in {output / 'survey.html'}")
     if results.seams:
         click.echo(f"{results.seams} joints of two runs of years do not meet (unsettled_seams): do not count on month "

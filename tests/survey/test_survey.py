@@ -26,8 +26,9 @@ from moonwrit.policy import NamedPlace, method
 from moonwrit.policy.conditions import Scoped
 from moonwrit.sky import Places
 from moonwrit.survey.page import page
+from moonwrit.survey.part import LongestRuns
 from moonwrit.survey.plan import Plan, plan
-from moonwrit.survey.results import gather, longest_runs
+from moonwrit.survey.results import gather
 from moonwrit.survey.running import run
 from moonwrit.survey.unit import walk_each
 
@@ -206,13 +207,16 @@ def test_walk_at_many_places_is_the_walk_at_each(name: str) -> None:
         assert kinds == [month.margin.closeness for month in months]
 
 
-def test_longest_runs() -> None:
-    """The first of the longest runs counts; none is none."""
+@pytest.mark.parametrize("cut", range(6))
+def test_longest_runs(cut: int) -> None:
+    """The first of the longest runs counts, also across two blocks of months; none is none."""
     flags = np.array([[1, 0, 1], [1, 0, 0], [0, 0, 1], [1, 0, 1], [1, 0, 1]], dtype=bool)
-    lengths, begins = longest_runs(flags)
-    assert lengths.tolist() == [2, 0, 3]
-    assert begins.tolist()[0] == 0
-    assert begins.tolist()[2] == 2
+    found = LongestRuns(3)
+    for block in (flags[:cut], flags[cut:]):
+        if len(block):
+            found.add(block)
+    assert found.longest.tolist() == [2, 0, 3]
+    assert found.begins.tolist()[::2] == [0, 2]
 
 
 # --- carrying on ------------------------------------------------------------------------------------------------------
@@ -229,11 +233,14 @@ def vars_of(made: Plan) -> dict[str, Any]:
 
 
 def test_units_cut_differently_give_equal_results(tmp_path: Path) -> None:
-    """Where a survey is cut changes no number; nor do several processes."""
+    """Where a survey is cut changes no number; nor do several processes, whose parts are joined in order."""
+    told: list[tuple[int, int]] = []
     for name, made, workers in (("cut", small(), 1), ("whole", small(places_per_unit=500, years_per_unit=50), 1),
                                 ("side by side", small(), 2)):
         run(made, tmp_path / name, workers)
-        (tmp_path / name / "survey.html").write_bytes(page(gather(made, tmp_path / name)))
+        results = gather(made, tmp_path / name, workers, lambda *done: told.append(done))
+        (tmp_path / name / "survey.html").write_bytes(page(results))
+    assert told == [(1, 2), (2, 2), (1, 1), (1, 2), (2, 2)]
     cut, whole, beside = (files(tmp_path / name) for name in ("cut", "whole", "side by side"))
     assert cut == beside
     assert len([name for name in cut if name.startswith("units")]) == 12
@@ -339,13 +346,16 @@ def test_a_folder_of_something_else_is_refused(tmp_path: Path) -> None:
     assert files(tmp_path / "out") == before
 
 
-def test_a_damaged_unit_is_named(tmp_path: Path) -> None:
-    """What is damaged is not read past: its file is named, and what to do."""
+@pytest.mark.parametrize("workers", [1, 2])
+def test_a_damaged_unit_is_named(tmp_path: Path, workers: int) -> None:
+    """What is damaged is not read past: its file is named, and what to do; no table is begun."""
     run(small(), tmp_path / "out")
-    (path, *_) = sorted(tmp_path.glob("out/units/*/*/*.npz"))
+    path = sorted(tmp_path.glob("out/units/*/*/*.npz"))[1]
     path.write_bytes(path.read_bytes()[:-100])
-    with pytest.raises(Exception, match=rf"{path.name} .*delete it and run again"):
-        gather(small(), tmp_path / "out")
+    before = files(tmp_path / "out")
+    with pytest.raises(RequestError, match=rf"{path.name} .*delete it and run again"):
+        gather(small(), tmp_path / "out", workers)
+    assert files(tmp_path / "out") == before
 
 
 def test_survey_reaches_six_hundred_years_ahead(tmp_path: Path) -> None:

@@ -4,14 +4,16 @@ from __future__ import annotations
 
 import json
 import os
-from collections.abc import Callable, Generator
+from collections import deque
+from collections.abc import Callable, Generator, Iterator, Sequence
 from concurrent.futures import FIRST_COMPLETED, Future, ProcessPoolExecutor, wait
 from concurrent.futures.process import BrokenProcessPool
-from contextlib import closing
+from contextlib import closing, contextmanager
 from functools import partial
 from itertools import islice
 from multiprocessing import get_context
 from pathlib import Path
+from typing import TypeVar
 
 from moonwrit.cluster import connected
 from moonwrit.errors import RequestError
@@ -20,9 +22,12 @@ from moonwrit.survey.unit import computed
 
 PLAN = "plan.json"
 _AHEAD = 4
-"""Units handed out at a time for each worker: enough that none waits, few enough to hold in memory."""
+"""Pieces handed out at a time for each worker: enough that none waits, few enough to hold in memory."""
 
 Finished = Generator[tuple[Unit, bytes], None, None]
+
+_Asked = TypeVar("_Asked")
+_Told = TypeVar("_Told")
 
 
 def run(
@@ -88,21 +93,42 @@ def _here(plan: Plan, todo: list[Unit], workers: int) -> Finished:
             yield unit, computed(plan, unit)
         return
     waiting = iter(todo)
-    with ProcessPoolExecutor(workers, mp_context=get_context("spawn")) as pool:
+    with _processes(workers) as pool:
         under_way: dict[Future[bytes], Unit] = {}
-        try:
-            while True:
-                for unit in islice(waiting, workers * _AHEAD - len(under_way)):
-                    under_way[pool.submit(computed, plan, unit)] = unit
-                if not under_way:
-                    return
-                for future in wait(under_way, return_when=FIRST_COMPLETED).done:
-                    yield under_way.pop(future), future.result()
-        except BrokenProcessPool:
-            raise RequestError("a worker ended without an answer", "run again: what is finished is kept") from None
-        finally:
-            for future in under_way:
-                future.cancel()
+        while True:
+            for unit in islice(waiting, workers * _AHEAD - len(under_way)):
+                under_way[pool.submit(computed, plan, unit)] = unit
+            if not under_way:
+                return
+            for future in wait(under_way, return_when=FIRST_COMPLETED).done:
+                yield under_way.pop(future), future.result()
+
+
+def in_order(job: Callable[[_Asked], _Told], todo: Sequence[_Asked], workers: int) -> Generator[_Told, None, None]:
+    """What the job says of each, one after the other, worked out here or in several processes of this machine."""
+    if workers == 1 or len(todo) < 2:
+        yield from map(job, todo)
+        return
+    with _processes(workers) as pool:
+        under_way: deque[Future[_Told]] = deque()
+        for asked in todo:
+            under_way.append(pool.submit(job, asked))
+            if len(under_way) == workers * _AHEAD:
+                yield under_way.popleft().result()
+        while under_way:
+            yield under_way.popleft().result()
+
+
+@contextmanager
+def _processes(workers: int) -> Iterator[ProcessPoolExecutor]:
+    """What nobody has begun is let go at the end."""
+    pool = ProcessPoolExecutor(workers, mp_context=get_context("spawn"))
+    try:
+        yield pool
+    except BrokenProcessPool:
+        raise RequestError("a worker ended without an answer", "run again: what is finished is kept") from None
+    finally:
+        pool.shutdown(cancel_futures=True)
 
 
 def _on_cluster(plan: Plan, todo: list[Unit], scheduler: str) -> Finished:
