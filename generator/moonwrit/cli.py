@@ -306,9 +306,10 @@ def differ(
 @click.option("--workers", type=click.IntRange(1, 256), default=os.cpu_count() or 1, metavar="N",
               help="How many processes of this machine.")
 @click.option("--scheduler", metavar="ADDRESS", help="A Dask cluster to work on instead.")
+@click.option("--parquet", "as_parquet", is_flag=True, help="The tables as Parquet also (extra parquet).")
 def survey(
     folder: Path, policies: tuple[str, ...], places: tuple[str, ...], grid: float | None, first: int | None,
-    last: int | None, ephemeris: str, output: Path, workers: int, scheduler: str | None,
+    last: int | None, ephemeris: str, output: Path, workers: int, scheduler: str | None, as_parquet: bool,
 ) -> None:
     """A long-run study: how often policies agree, how long months run, how close the calls are.
 
@@ -319,11 +320,14 @@ def survey(
     else:
         content = [_content_if_there(folder, policy) for policy in policies or (None,)][-1]
     years = _years(content, first, last)
+    from moonwrit.survey import parquet
     from moonwrit.survey.page import page
     from moonwrit.survey.plan import plan
     from moonwrit.survey.results import gather
     from moonwrit.survey.running import run, write
 
+    if as_parquet:
+        parquet.library()
     with _progress("Looking at what is asked"):
         asked = plan(policies, [_place(content, text) for text in places], grid, *years, ephemeris,
                      None if content is None else folder.resolve())
@@ -331,6 +335,9 @@ def survey(
         done = run(asked, output, workers, scheduler, each)
     with _counted("Parts gathered") as each:
         results = gather(asked, output, workers, each)
+    if as_parquet:
+        with _progress("Writing Parquet"):
+            parquet.write_parquet(output)
     write(output / "survey.html", page(results))
     click.echo(f"{done} units computed, {asked.unit_count - done} were there; results in {output / 'survey.html'}")
     if results.seams:
