@@ -24,7 +24,7 @@ from moonwrit.content.yaml import parse
 from moonwrit.errors import ContentError
 from moonwrit.observances import occurrences
 from moonwrit.policy import FIXED, Evidence, Month
-from moonwrit.publish.icalendar import _Text as Plain
+from moonwrit.publish.icalendar import FeedText
 
 HERE = Path(__file__).parent
 CORPUS = HERE / "corpus"
@@ -78,7 +78,7 @@ def text(data: bytes) -> None:
     except ValidationError:
         return
     event = icalendar.Event()
-    event.add("summary", Plain(said))
+    event.add("summary", FeedText(said))
     lines = event.to_ical().decode().replace("\r\n ", "").split("\r\n")
     assert [line.partition(":")[0] for line in lines] == ["BEGIN", "SUMMARY", "END", ""], lines
     assert str(icalendar.Event.from_ical(event.to_ical())["summary"]) == said

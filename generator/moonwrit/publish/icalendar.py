@@ -33,7 +33,7 @@ WITHDRAWN_DAYS = 60
 """A withdrawn event stays in the feeds as cancelled for this many days, so that clients learn of it."""
 
 
-class _Text(vText):
+class FeedText(vText):
     """TEXT as RFC 5545, 3.3.11 has it. The library takes a backslash before a letter N for a line break."""
 
     def to_ical(self) -> bytes:
@@ -239,7 +239,7 @@ def _timed(edition: Edition, entry: Entry, evening: Evening, place: str) -> Even
     )
     event.add("dtstart", starts)
     event.add("dtend", ends)
-    event.add("location", _Text(name))
+    event.add("location", FeedText(name))
     event.add("geo", (here.latitude, here.longitude))
     event.add("status", "CONFIRMED" if month.standing != "expected" else "TENTATIVE")
     return event
@@ -267,7 +267,7 @@ def _fast(edition: Edition, month: Month, one: FastingDay, place: str) -> Event:
         event.add("dtend", one.sunset)
     else:
         _span(event, one.on, one.on)
-    event.add("location", _Text(edition.say(here.name)))
+    event.add("location", FeedText(edition.say(here.name)))
     event.add("geo", (here.latitude, here.longitude))
     event.add("status", "CONFIRMED" if month.standing != "expected" else "TENTATIVE")
     return event
@@ -284,8 +284,8 @@ def _event(
     event.add("dtstamp", entry.at)
     event.add("last-modified", entry.at)
     event.add("sequence", entry.seq)
-    event.add("summary", _Text(title, params={"LANGUAGE": language.code}))
-    event.add("description", _Text(
+    event.add("summary", FeedText(title, params={"LANGUAGE": language.code}))
+    event.add("description", FeedText(
         "\n\n".join([*paragraphs, words.authority_sentence(edition.say(edition.site.authority), language)]),
         params={"LANGUAGE": language.code},
     ))
@@ -308,7 +308,7 @@ def _reminder(hours: int, title: str) -> Alarm:
     alarm = Alarm()
     alarm.add("action", "DISPLAY")
     alarm.add("trigger", timedelta(hours=-hours))
-    alarm.add("description", _Text(title))
+    alarm.add("description", FeedText(title))
     return alarm
 
 
@@ -323,9 +323,9 @@ def _feed(
     calendar.add("version", "2.0")
     calendar.add("calscale", "GREGORIAN")
     # No UID for the whole (RFC 7986, 5.3): subscribers that split a feed, such as vdirsyncer, give it to every event.
-    calendar.add("name", _Text(title, params={"LANGUAGE": language.code}))
-    calendar.add("x-wr-calname", _Text(title))
-    calendar.add("description", _Text(
+    calendar.add("name", FeedText(title, params={"LANGUAGE": language.code}))
+    calendar.add("x-wr-calname", FeedText(title))
+    calendar.add("description", FeedText(
         words.authority_sentence(authority, language), params={"LANGUAGE": language.code}
     ))
     calendar.add("url", vUri(edition.page()))
@@ -347,5 +347,6 @@ def _feed(
 
 
 __all__ = [
-    "evenings_feed", "fasting_feed", "months_feed", "observances_feed", "tag_feed", "tags", "was_sentence", "year_feed",
+    "FeedText", "evenings_feed", "fasting_feed", "months_feed", "observances_feed", "tag_feed", "tags", "was_sentence",
+    "year_feed",
 ]
