@@ -11,6 +11,7 @@ import json
 import os
 import shutil
 import subprocess
+import sys
 from collections.abc import Callable
 from ctypes.util import find_library
 from pathlib import Path
@@ -23,6 +24,7 @@ os.environ["MOONWRIT_CACHE"] = "off"
 
 ROOT = Path(__file__).resolve().parent.parent
 NODE_MODULES = ROOT / ".judges" / "node_modules"
+PYTHONS = ROOT / ".judges" / "pythons"  # the names of those that make judges found
 
 # What each judge needs: commands on the path, files below NODE_MODULES (those with a slash), system libraries (with
 # "lib:"), and the introspection data of one (with "gi:").
@@ -34,6 +36,7 @@ JUDGES = {
     "vdirsyncer": ("vdirsyncer",),
     "vnu": ("java", "vnu-jar/build/dist/vnu.jar"),
     "pango": ("lib:pango-1.0", "lib:pangoft2-1.0"),
+    "python": (str(PYTHONS),),
     "libical": ("/usr/bin/python3", "gi:ICalGLib-3.0"),
     "ajv": ("node", "ajv/package.json", "ajv-formats/package.json"),
     "node-ical": ("node", "node-ical/package.json"),
@@ -137,6 +140,16 @@ def chromium() -> str:
     path = shutil.which("chromium")
     assert path, "mark the test with judge('chromium')"
     return path
+
+
+@pytest.fixture(scope="session")
+def pythons() -> list[Path]:
+    """The other versions of Python that the machine has, each with the packages of the lock."""
+    mine = f"python{sys.version_info.major}.{sys.version_info.minor}"
+    others = [name for name in PYTHONS.read_text(encoding="utf-8").split() if name != mine]
+    if not others:
+        pytest.skip(f"make judges found no Python here but {mine}")
+    return [PYTHONS.parent / name / "bin/python" for name in others]
 
 
 @pytest.fixture(scope="session")
