@@ -178,14 +178,42 @@ def test_page_says_what_the_numbers_say(surveyed: Path) -> None:
     assert not re.search(r'(src|href)="', text)
 
 
+@pytest.fixture(scope="module")
+def pages(surveyed: Path, tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """The page of a list of places, and that of a grid."""
+    folder = tmp_path_factory.mktemp("pages")
+    shutil.copy(surveyed / "survey.html", folder / "places.html")
+    out = tmp_path_factory.mktemp("grid")
+    run(small(), out)
+    (folder / "grid.html").write_bytes(page(gather(small(), out)))
+    return folder
+
+
 @pytest.mark.judge("vnu")
-def test_page_is_valid_html(surveyed: Path, vnu: Callable[[Path], list[dict[str, Any]]], tmp_path: Path) -> None:
-    """The Nu Html Checker finds nothing wrong in the page of a list of places, nor in that of a grid."""
-    (tmp_path / "pages").mkdir()
-    shutil.copy(surveyed / "survey.html", tmp_path / "pages" / "places.html")
-    run(small(), tmp_path / "out")
-    (tmp_path / "pages" / "grid.html").write_bytes(page(gather(small(), tmp_path / "out")))
-    assert [message for message in vnu(tmp_path / "pages") if message["type"] == "error"] == []
+def test_page_is_valid_html(pages: Path, vnu: Callable[[Path], list[dict[str, Any]]]) -> None:
+    """The Nu Html Checker finds nothing wrong in either page."""
+    assert [message for message in vnu(pages) if message["type"] == "error"] == []
+
+
+@pytest.mark.judge("axe")
+def test_page_can_be_read_by_all(pages: Path, node: Callable[..., Any], chromium: str) -> None:
+    """No violation that axe-core knows of, no complaint of the browser, and never wider than a window of 320 pixels."""
+    found = node(ROOT / "tests/publish/look.js", chromium, pages, "places.html", "grid.html")
+    assert len(found) == 8
+    assert min(look["passes"] for look in found) > 15
+    assert [look for look in found if look["violations"] or look["faults"] or look["wider"] > 0] == []
+
+
+def test_coasts_lie_where_they_are_and_no_line_crosses_the_map(pages: Path) -> None:
+    """The outlines on the grid's map have points of known capes (from any atlas, to a degree: Agulhas 34.8 S 20.0 E,
+    Verde 14.7 N 17.5 W, York 10.7 S 142.5 E); no line is longer than 40 degrees, also where land passes 180 E."""
+    (drawn,) = re.findall(r'<path class="land" d="([^"]+)"', (pages / "grid.html").read_text(encoding="utf-8"))
+    lines = [np.array([pair.split() for pair in line.split("L")], dtype=float) for line in drawn.split("M")[1:]]
+    points = np.concatenate(lines)
+    for longitude, latitude in ((20.0, -34.8), (-17.5, 14.7), (142.5, -10.7)):
+        away = np.abs(points - (2 * (longitude + 180), 2 * (60 - latitude))).max(axis=1)
+        assert away.min() <= 2
+    assert max(np.abs(np.diff(line, axis=0)).max(initial=0) for line in lines) < 80
 
 
 # --- walking at many places at once -----------------------------------------------------------------------------------
