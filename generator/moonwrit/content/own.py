@@ -9,7 +9,8 @@ language. The first line is ``# Title``. Placeholders stand in braces:
     {standing eid-al-fitr 1448}                 expected, settled or amended; of a month: {standing 9 1448}
 
 A brace that is meant as one is written ``\\{``. HTML is shown as it is written and never obeyed. ``theme/`` may hold
-templates that take the place of the theme's own: they are code, and trusted.
+templates that take the place of the theme's own: they write any markup, and are kept from all else
+(``publish/sandbox.py``).
 """
 
 from __future__ import annotations
@@ -31,6 +32,13 @@ from moonwrit.errors import ContentError, did_you_mean
 from moonwrit.resources import themes_folder
 
 MAX_BYTES = 256 * 1024
+MAX_EFFORT = 2_000_000_000
+"""Markdown looks from each bracket, line and star to the end of the paragraph: the sum of the lengths of paragraphs, each
+times their number as they weigh. A list of 300 links makes a quarter of this, and this much takes about five seconds."""
+MAX_DEPTH = 40
+"""Of lists and quotations in one another, as elements."""
+FIRST_YEAR, LAST_YEAR = 1900, 2199
+"""Of notices."""
 PLACEHOLDERS = ("authority", "community", "date", "month-start", "standing")
 _FORMS = {
     "authority": "{authority}", "community": "{community}", "date": "{date eid-al-fitr 1448}",
@@ -114,7 +122,7 @@ def read_texts(
 ) -> dict[str, dict[str, Written]]:
     """The Markdown files of ``folder``, by name and by language; what is wrong with them goes to ``faults``."""
     found: dict[str, dict[str, Written]] = {}
-    files = sorted(folder.iterdir()) if folder.is_dir() else []
+    files = sorted(folder.iterdir()) if folder.is_dir() and not _is_link(folder, faults) else []
     for file in (one for one in files if not one.name.startswith(".")):
         try:
             name, language = _named(file, site)
@@ -138,7 +146,7 @@ def dated(
     for name, text in texts.items():
         try:
             on, rest = date.fromisoformat(name[:10]), name[10:]
-            if not rest.startswith("-"):
+            if not rest.startswith("-") or not FIRST_YEAR <= on.year <= LAST_YEAR:
                 raise ValueError
         except ValueError:
             faults.append(ContentError(folder / f"{name}.md", 0, "the name does not begin with a date",
@@ -151,17 +159,44 @@ def dated(
 def theme_of(folder: Path, faults: list[ContentError]) -> Path | None:
     """The folder of a community's own templates, each of which has the name of one of the theme's."""
     own, theme = folder / "theme", themes_folder() / "moonwrit"
-    if not own.is_dir():
+    if not own.is_dir() or _is_link(own, faults):
         return None
     known = [
         file.relative_to(theme).as_posix() for file in theme.rglob("*") if file.is_file() and "locale" not in file.parts
     ]
     for file in sorted(own.rglob("*")):
         name = file.relative_to(own).as_posix()
+        if _is_link(file, faults) or not file.is_file() or file.name.startswith("."):
+            continue
         # A part of one's own, for one's own templates to include, has a name of one's own.
-        if file.is_file() and not file.name.startswith(".") and not name.startswith("parts/") and name not in known:
+        if not name.startswith("parts/") and name not in known:
             faults.append(ContentError(file, 0, "the theme has no template of this name", did_you_mean(name, known)))
+        else:
+            try:
+                _text_of(file)
+            except ContentError as fault:
+                faults.append(fault)
     return own
+
+
+def _is_link(file: Path, faults: list[ContentError]) -> bool:
+    """What is linked to may lie outside the content, and would be published."""
+    if file.is_symlink():
+        faults.append(ContentError(file, 0, "this is a link to somewhere else", "put what it leads to there itself"))
+        return True
+    return False
+
+
+def _text_of(file: Path) -> str:
+    with file.open("rb") as stream:
+        data = stream.read(MAX_BYTES + 1)
+    if len(data) > MAX_BYTES:
+        raise ContentError(file, 0, f"the text is larger than {MAX_BYTES // 1024} kB", "split or shorten it")
+    try:
+        return data.decode("utf-8-sig").replace("\r\n", "\n")
+    except UnicodeDecodeError as error:
+        line = data.count(b"\n", 0, error.start) + 1
+        raise ContentError(file, line, "a character is not UTF-8", "save the file as UTF-8") from None
 
 
 def _named(file: Path, site: Site) -> tuple[str, str]:
@@ -179,15 +214,7 @@ def _named(file: Path, site: Site) -> tuple[str, str]:
 
 
 def _read(file: Path, language: str, site: Site, observances: Mapping[str, Observance]) -> Written:
-    with file.open("rb") as stream:
-        data = stream.read(MAX_BYTES + 1)
-    if len(data) > MAX_BYTES:
-        raise ContentError(file, 0, f"the text is larger than {MAX_BYTES // 1024} kB", "split or shorten it")
-    try:
-        text = data.decode("utf-8-sig").replace("\r\n", "\n")
-    except UnicodeDecodeError as error:
-        line = data.count(b"\n", 0, error.start) + 1
-        raise ContentError(file, line, "a character is not UTF-8", "save the file as UTF-8") from None
+    text = _text_of(file)
 
     def fault(at: int, what: str, mend: str) -> ContentError:
         return ContentError(file, text.count("\n", 0, at) + 1, what, mend)
@@ -201,7 +228,17 @@ def _read(file: Path, language: str, site: Site, observances: Mapping[str, Obser
     body = tuple(_parts(text, match.end(), len(text), fault, site, observances))
     if not any(isinstance(part, Placeholder) or part.strip() for part in body):
         raise fault(0, "there is nothing below the title", "write the text, or remove the file")
-    _filled(body, lambda _: "x", lambda said, what, mend: fault(max(text.find(said), 0), what, mend))
+    effort = 0
+    for paragraph in re.finditer(r"(?:.+\n?)+", text):
+        weight = sum(paragraph[0].count(sign) * times for sign, times in (("[", 200), ("\n", 20), ("*", 1), ("_", 1)))
+        effort += len(paragraph[0]) * weight
+        if effort > MAX_EFFORT:
+            raise fault(paragraph.start(), "the paragraphs up to this one are too long to be read",
+                        "put empty lines between them, or write fewer links")
+    try:
+        _filled(body, lambda _: "x", lambda said, what, mend: fault(max(text.find(said), 0), what, mend))
+    except RecursionError:
+        raise fault(0, *_TOO_DEEP) from None
     return Written(language, title, body)
 
 
@@ -274,6 +311,8 @@ def _filled(
 
     class Looked(Treeprocessor):
         def run(self, root: Element) -> None:
+            if fault is not None and _depth(root) > MAX_DEPTH:
+                raise fault("", *_TOO_DEEP)
             for element in root.iter():
                 if element.tag == "h1":  # the title is the one heading of its level
                     element.tag = "h2"
@@ -288,6 +327,16 @@ def _filled(
 
     made = Markdown(extensions=["tables", "fenced_code", "sane_lists", OneTitleNoHtml()], output_format="html")
     return _MARK.sub(lambda mark: values[int(mark[1])], made.convert("".join(map(marked, parts))))
+
+
+_TOO_DEEP = ("lists or quotations are nested too deeply", f"nest {MAX_DEPTH // 2} of them at most")
+
+
+def _depth(root: Element) -> int:
+    level, depth = [root], 0
+    while level := [below for element in level for below in element]:
+        depth += 1
+    return depth
 
 
 def _look_at(element: Element, fault: Callable[[str, str, str], ContentError]) -> None:
