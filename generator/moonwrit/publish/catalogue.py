@@ -1,24 +1,35 @@
 """Message catalogues: the texts of templates and code in each language, in ``themes/moonwrit/locale/<code>.po``.
 
 A translator edits the ``.po`` file; ``make catalogues`` brings new texts into it, and ``moonwrit check`` says how many
-are missing in a language of the site.
+are missing in a language of the site. What a translation says is text, and never markup; one with other places for
+values than its original is refused, and so is a file that is no catalogue.
 """
 
 from __future__ import annotations
 
+import re
+from collections.abc import Iterator
 from functools import cache
-from gettext import GNUTranslations, NullTranslations
+from gettext import GNUTranslations, NullTranslations, c2py
 from io import BytesIO
 from pathlib import Path
 
 from babel.messages.catalog import Catalog
 from babel.messages.mofile import write_mo
-from babel.messages.pofile import read_po
+from babel.messages.pofile import PoFileError, read_po
 
+from moonwrit.errors import ContentError
 from moonwrit.resources import themes_folder
 
 SOURCE = "en"
 """The language in which the texts are written."""
+MAX_BYTES = 2 * 1024 * 1024
+MAX_FORMS = 6
+"""Of plurals: Arabic has so many, and no language more."""
+_PLACE = re.compile(r"%(?:\(\w*\).?|.|$)", re.DOTALL)
+_ISOLATES = re.compile("[\u2066-\u2068]")
+_JOINED, _FORMS = re.compile(rb'"\s*"'), re.compile(rb"nplurals\s*=\s*(\d+)")
+_REFUSED = re.compile(r"[\x00-\x09\x0b-\x1f\x7f-\x9f\u2028-\u202e\ufeff\ufffe\uffff]")
 
 
 def folder() -> Path:
@@ -59,9 +70,56 @@ def _read(code: str) -> Catalog | None:
     for name in (code, code.partition("-")[0]):
         file = folder() / f"{name}.po"
         if file.is_file():
-            with file.open("rb") as stream:
-                return read_po(stream, locale=name.replace("-", "_"), abort_invalid=True)
+            return read(file)
     return None
 
 
-__all__ = ["SOURCE", "folder", "translations", "untranslated"]
+def read(file: Path) -> Catalog:
+    """The catalogue in ``file``. Raises ContentError."""
+    with file.open("rb") as stream:
+        data = stream.read(MAX_BYTES + 1)
+    if len(data) > MAX_BYTES:
+        raise ContentError(file, 0, f"the catalogue is larger than {MAX_BYTES // 1024 // 1024} MB", "shorten it")
+    try:
+        if any(int(number) > MAX_FORMS for number in _FORMS.findall(_JOINED.sub(b"", data))):
+            raise ValueError(f"more than {MAX_FORMS} plural forms")
+        catalogue = read_po(BytesIO(data), locale=file.stem.replace("-", "_"), charset="utf-8", abort_invalid=True)
+        catalogue.charset = "utf-8"  # whatever its head says
+        forms = [c2py(catalogue.plural_expr)(number) for number in range(1000)]
+    except UnicodeDecodeError as fault:
+        line = data.count(b"\n", 0, fault.start) + 1
+        raise ContentError(file, line, "a character is not UTF-8", "save the file as UTF-8") from None
+    except PoFileError as fault:
+        mend = "look at the quotes here"
+        raise ContentError(file, fault.lineno + 1, f"this is no catalogue ({fault})", mend) from None
+    except (ValueError, LookupError, ArithmeticError, AttributeError, RecursionError) as fault:
+        what = f"this is no catalogue ({' '.join(str(fault).split())[:100]})"
+        raise ContentError(file, 0, what, "mend its head: take that of another catalogue") from None
+    if min(forms) < 0 or max(forms) >= catalogue.num_plurals:
+        raise ContentError(file, 0, "Plural-Forms names a form that there is not", "take that of gettext's manual")
+    for line, what, mend in _faults(catalogue):
+        raise ContentError(file, line, what, mend)
+    return catalogue
+
+
+def _faults(catalogue: Catalog) -> Iterator[tuple[int, str, str]]:
+    for message in catalogue:
+        if not message.id:
+            continue
+        originals, texts = (
+            [one] if isinstance(one, str) else list(one or ()) for one in (message.id, message.string)
+        )
+        places = {place for text in originals for place in _PLACE.findall(text)}
+        for text in texts:
+            if refused := _REFUSED.search(text):
+                yield message.lineno or 0, f"the character U+{ord(refused[0]):04X} is written here", "remove it"
+            if text.count("\u2069") != len(_ISOLATES.findall(text)):
+                yield message.lineno or 0, "the writing is turned and not turned back", "end each isolate with U+2069"
+            if "\n" in text and not any("\n" in one for one in originals):
+                yield message.lineno or 0, "the translation has several lines", "write it in one, without \\n"
+            for place in set(_PLACE.findall(text)) - places:
+                known = f"those of the original: {', '.join(sorted(places)) or 'none'}"
+                yield message.lineno or 0, f'the place "{place}" is not in the original', f"write {known}"
+
+
+__all__ = ["SOURCE", "folder", "read", "translations", "untranslated"]
