@@ -33,6 +33,7 @@ from moonwrit.errors import ContentError
 from moonwrit.publish import labels, words
 from moonwrit.publish.edition import tree
 from moonwrit.publish.language import Language
+from moonwrit.publish.sandbox import Sandbox
 from moonwrit.resources import themes_folder
 
 THEME = "moonwrit"
@@ -78,7 +79,8 @@ class _Compiled(BytecodeCache):
         self.held[bucket.key] = bucket.bytecode_to_string()
 
 
-_COMPILED = _Compiled()
+_COMPILED, _CONFINED = _Compiled(), _Compiled()
+"""Outside and inside the sandbox."""
 
 
 class Renderer:
@@ -92,7 +94,7 @@ class Renderer:
         own = own or Own()
         self.up = "../" if tree(site, language.code) else ""
         self.theme = own.theme
-        self.environment = Environment(
+        self.environment: Environment = (Environment if own.theme is None else Sandbox)(
             loader=_loader(own.theme),
             autoescape=lambda name: name is None or name.endswith((".html", ".xml")),
             undefined=StrictUndefined,
@@ -104,7 +106,7 @@ class Renderer:
             finalize=pass_context(lambda _, value: (
                 language.digits(value) if isinstance(value, int) and not isinstance(value, bool) else value
             )),
-            bytecode_cache=_COMPILED,
+            bytecode_cache=_COMPILED if own.theme is None else _CONFINED,
         )
         self.environment.filters["zip"] = zip
         self.environment.globals.update(
@@ -151,6 +153,8 @@ class Renderer:
 
     def _made(self, template: str, given: Mapping[str, Any]) -> bytes:
         with self._faults():
+            if isinstance(self.environment, Sandbox):
+                self.environment.steps = 0
             return self.environment.get_template(template).render(**given).encode()
 
     @contextmanager
