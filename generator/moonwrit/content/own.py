@@ -33,8 +33,9 @@ from moonwrit.resources import themes_folder
 
 MAX_BYTES = 256 * 1024
 MAX_EFFORT = 2_000_000_000
-"""Markdown looks from each bracket, line and star to the end of the paragraph: the sum of the lengths of paragraphs, each
-times their number as they weigh. A list of 300 links makes a quarter of this, and this much takes about five seconds."""
+"""Markdown looks from each bracket, line and star to the end of the paragraph: the sum of the lengths of paragraphs,
+each times their number as they weigh. A list of 300 links makes a quarter of it, and all of it some five seconds."""
+_WEIGHTS = (("[", 200), ("\n", 20), ("*", 1), ("_", 1), ("`", 1))
 MAX_DEPTH = 40
 """Of lists and quotations in one another, as elements."""
 FIRST_YEAR, LAST_YEAR = 1900, 2199
@@ -230,7 +231,7 @@ def _read(file: Path, language: str, site: Site, observances: Mapping[str, Obser
         raise fault(0, "there is nothing below the title", "write the text, or remove the file")
     effort = 0
     for paragraph in re.finditer(r"(?:.+\n?)+", text):
-        weight = sum(paragraph[0].count(sign) * times for sign, times in (("[", 200), ("\n", 20), ("*", 1), ("_", 1)))
+        weight = sum(paragraph[0].count(sign) * times for sign, times in (_WEIGHTS))
         effort += len(paragraph[0]) * weight
         if effort > MAX_EFFORT:
             raise fault(paragraph.start(), "the paragraphs up to this one are too long to be read",

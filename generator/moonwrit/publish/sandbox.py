@@ -20,8 +20,8 @@ from jinja2.exceptions import SecurityError
 from jinja2.runtime import Context
 from jinja2.sandbox import ImmutableSandboxedEnvironment
 
-MAX_STEPS = 1_000_000
-"""Turns of loops and calls on one page; the longest of the theme, the site map, takes ten for each page of the site."""
+MAX_STEPS = 500_000
+"""Turns of loops and calls on one page; the longest of the theme, the site map, takes thirty a page of the site."""
 MAX_LENGTH = 1_000_000
 """Of what is multiplied; and a power has at most so many bits."""
 
