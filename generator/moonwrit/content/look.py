@@ -4,8 +4,10 @@ from __future__ import annotations
 
 import re
 import struct
+from collections import Counter
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
+from functools import cache
 from pathlib import Path
 from types import MappingProxyType
 from typing import Annotated
@@ -167,6 +169,11 @@ _ELEMENTS = frozenset({
     "defs", "linearGradient", "radialGradient", "stop", "clipPath", "mask", "pattern", "symbol", "use",
 })
 _OUTSIDE = re.compile(r"""url\(\s*+(?!["']?#)|@import|\\|[a-z]+script:|data:""", re.IGNORECASE)
+_REFERENCE = re.compile(r"""^#(.+)|url\(\s*["']?#([^)"']+)""", re.IGNORECASE)
+SMALLEST, LARGEST = 0.01, 100_000
+"""Sides of a logo, in its own units."""
+MAX_DRAWN, MAX_NESTED = 50_000, 8
+"""Elements that a logo has once those it refers to are put in; a few lines could else unfold into billions."""
 _PLAIN = 'save it as "plain SVG", with shapes only'
 
 
@@ -199,6 +206,9 @@ def _png_size(file: Path, data: bytes) -> tuple[int, int]:
 def _svg_size(file: Path, data: bytes) -> tuple[float, float]:
     """The size in the picture's own units. Raises ContentError at the first thing that is not a shape."""
     sizes: list[tuple[float, float]] = []
+    opened: list[str] = []
+    elements: Counter[str] = Counter()
+    references: dict[str, list[str]] = {}
     parser = expat.ParserCreate("utf-8", namespace_separator=" ")
 
     def refuse(what: str, mend: str = _PLAIN) -> None:
@@ -218,10 +228,23 @@ def _svg_size(file: Path, data: bytes) -> tuple[float, float]:
                 refuse(f"{short} leads out of the logo")
         if not sizes:
             sizes.append(_view(attributes) or (0, 0))
-            if min(sizes[0]) <= 0:
-                refuse("the logo does not say its size", 'give <svg> a viewBox such as viewBox="0 0 120 40"')
+            if not all(SMALLEST <= side <= LARGEST for side in sizes[0]):
+                refuse("the logo does not say its size, or one that cannot be shown",
+                       'give <svg> a viewBox such as viewBox="0 0 120 40"')
+        opened.append(attributes.get("id", ""))
+        found = [(one or other).strip() for value in attributes.values() for one, other in _REFERENCE.findall(value)]
+        for name in {"", *opened}:  # "" is the whole
+            elements[name] += 1
+            references.setdefault(name, []).extend(found)
+
+    @cache
+    def drawn(name: str, nested: int = 0) -> int:
+        if nested > MAX_NESTED:
+            refuse(f"parts of the logo refer to one another more than {MAX_NESTED} deep")
+        return elements[name] + sum(drawn(other, nested + 1) for other in references.get(name, ()))
 
     parser.StartElementHandler = element
+    parser.EndElementHandler = lambda _: opened.pop()
     parser.StartDoctypeDeclHandler = lambda *_: refuse("the logo has a DOCTYPE")
     parser.XmlDeclHandler = lambda _, encoding, __: (
         refuse(f"the logo is in {encoding}", "save it in UTF-8") if encoding and encoding.lower() != "utf-8" else None
@@ -230,6 +253,8 @@ def _svg_size(file: Path, data: bytes) -> tuple[float, float]:
     try:
         data.decode("utf-8")
         parser.Parse(data, True)
+        if drawn("") > MAX_DRAWN:
+            refuse(f"the logo has more than {MAX_DRAWN} elements, those it refers to put in")
     except UnicodeDecodeError:
         raise ContentError(file, 0, "the logo is not UTF-8", _PLAIN) from None
     except expat.ExpatError as error:
