@@ -18,7 +18,7 @@ FOUND = HERE.parent.parent / ".fuzz"
 
 def alone(name: str, seconds: int) -> None:
     """Fuzz one target in this process, which libFuzzer ends."""
-    with atheris.instrument_imports(include=["moonwrit", "yaml", "icalendar"]):
+    with atheris.instrument_imports(include=["moonwrit", "yaml", "icalendar", "markdown", "babel.messages"]):
         from targets import CORPUS, TARGETS
     found = FOUND / name
     found.mkdir(parents=True, exist_ok=True)
