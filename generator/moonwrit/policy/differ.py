@@ -106,7 +106,7 @@ def _reason(
     if on_eve is None:
         return Note("%(late)s follows another authority, which begins later.", names)
     names["missed"] = _deciding(*on_eve)
-    if on_eve[1].day_share is not None and on_eve[1].day_share >= 0:
+    if on_eve[0].met:
         return Note(
             "On the evening of %(evening)s both tests are met (%(late)s: %(missed)s), but under %(late)s that is "
             "only the 28th evening, for its month before began later.", names,
@@ -120,10 +120,7 @@ def _reason(
     return Note("On the evening of %(evening)s %(early)s has %(found)s; %(late)s has %(missed)s.", names)
 
 
-def _deciding(evidence: Evidence, margin: Margin) -> Finding | str:
-    """The deciding comparison."""
-    for finding in evidence.findings:
-        deciding = (margin.quantity, margin.value, margin.threshold)
-        if (finding.quantity, finding.value, finding.threshold) == deciding:
-            return finding
-    return f"{margin.quantity} ({evidence.place})"
+def _deciding(evidence: Evidence, margin: Margin) -> Finding:
+    """The finding that the margin was taken from."""
+    deciding = margin.quantity, margin.value, margin.threshold
+    return next(one for one in evidence.findings if (one.quantity, one.value, one.threshold) == deciding)
