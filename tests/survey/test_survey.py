@@ -25,11 +25,12 @@ from moonwrit.errors import RequestError
 from moonwrit.policy import NamedPlace, method
 from moonwrit.policy.conditions import Scoped
 from moonwrit.sky import Places
+from moonwrit.survey import results
 from moonwrit.survey.page import page
 from moonwrit.survey.part import LongestRuns
 from moonwrit.survey.plan import Plan, plan
 from moonwrit.survey.results import gather
-from moonwrit.survey.running import run
+from moonwrit.survey.running import in_order, run
 from moonwrit.survey.unit import walk_each
 
 ROOT = Path(__file__).resolve().parents[2]
@@ -260,14 +261,15 @@ def vars_of(made: Plan) -> dict[str, Any]:
     return {name: getattr(made, name) for name in made.__dataclass_fields__}
 
 
-def test_units_cut_differently_give_equal_results(tmp_path: Path) -> None:
+def test_units_cut_differently_give_equal_results(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     """Where a survey is cut changes no number; nor do several processes, whose parts are joined in order."""
+    monkeypatch.setattr(results, "_FEW", 0)
     told: list[tuple[int, int]] = []
     for name, made, workers in (("cut", small(), 1), ("whole", small(places_per_unit=500, years_per_unit=50), 1),
                                 ("side by side", small(), 2)):
         run(made, tmp_path / name, workers)
-        results = gather(made, tmp_path / name, workers, lambda *done: told.append(done))
-        (tmp_path / name / "survey.html").write_bytes(page(results))
+        found = gather(made, tmp_path / name, workers, lambda *done: told.append(done))
+        (tmp_path / name / "survey.html").write_bytes(page(found))
     assert told == [(1, 2), (2, 2), (1, 1), (1, 2), (2, 2)]
     cut, whole, beside = (files(tmp_path / name) for name in ("cut", "whole", "side by side"))
     assert cut == beside
@@ -275,6 +277,11 @@ def test_units_cut_differently_give_equal_results(tmp_path: Path) -> None:
     assert len([name for name in whole if name.startswith("units")]) == 2
     for name in ("policies.csv", "agreement.csv", "places.csv", "survey.html"):
         assert cut[name] == whole[name]
+
+
+def test_answers_come_in_order() -> None:
+    """Of more questions than are handed out at a time, the answers of two processes come in the questions' order."""
+    assert list(in_order(abs, range(-20, 0), 2)) == list(range(20, 0, -1))
 
 
 def test_an_interrupted_survey_is_carried_on(tmp_path: Path) -> None:
@@ -375,8 +382,9 @@ def test_a_folder_of_something_else_is_refused(tmp_path: Path) -> None:
 
 
 @pytest.mark.parametrize("workers", [1, 2])
-def test_a_damaged_unit_is_named(tmp_path: Path, workers: int) -> None:
+def test_a_damaged_unit_is_named(tmp_path: Path, workers: int, monkeypatch: pytest.MonkeyPatch) -> None:
     """What is damaged is not read past: its file is named, and what to do; no table is begun."""
+    monkeypatch.setattr(results, "_FEW", 0)
     run(small(), tmp_path / "out")
     path = sorted(tmp_path.glob("out/units/*/*/*.npz"))[1]
     path.write_bytes(path.read_bytes()[:-100])

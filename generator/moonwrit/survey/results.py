@@ -17,6 +17,9 @@ from moonwrit.survey.running import in_order, json_bytes, write
 from moonwrit.survey.schema import TABLES, Row, schema
 from moonwrit.survey.unit import CLOSENESSES
 
+_FEW = 200
+"""So many units are gathered before other processes have begun."""
+
 
 @dataclass(frozen=True)
 class Results:
@@ -53,6 +56,8 @@ def gather(
     """
     totals = _Totals(plan)
     chunks = plan.place_chunks()
+    if plan.unit_count <= _FEW:
+        workers = 1
     paths = [output / f"{name}.csv" for name in TABLES]
     asides = [path.with_name(f".{path.name}.{os.getpid()}") for path in paths]
     try:
