@@ -268,6 +268,7 @@ def _placeholder(words: str, site: Site, observances: Mapping[str, Observance]) 
     """A placeholder, or what is wrong with it and how to mend it."""
     kind, *rest = words.split() or [""]
     escape = r"write \{ for a brace that is meant as one"
+    words = words if len(words) <= 60 else f"{words[:56]}..."
     if kind not in PLACEHOLDERS:
         return f'"{{{words}}}" is no placeholder; {did_you_mean(kind, PLACEHOLDERS)}, or {escape}'
     if kind in ("authority", "community"):
@@ -281,9 +282,9 @@ def _placeholder(words: str, site: Site, observances: Mapping[str, Observance]) 
     if kind != "date" and re.fullmatch(r"[0-9]{1,2}", of):
         return Placeholder(kind, int(of), year) if 1 <= int(of) <= 12 else f"there is no month {of}; write 1 to 12"
     if kind == "month-start":
-        return f'"{of}" is no lunar month; write {_FORMS[kind]}'
+        return f'"{of[:60]}" is no lunar month; write {_FORMS[kind]}'
     if of not in observances:
-        return f'observance "{of}" is not defined; {did_you_mean(of, observances)}'
+        return f'observance "{of[:60]}" is not defined; {did_you_mean(of, observances)}'
     when = observances[of].when
     if when.month == "every" or when.last_nights is not None:
         return f'"{of}" falls more than once a year; name an observance of one date'
