@@ -35,7 +35,7 @@ MAX_BYTES = 256 * 1024
 MAX_EFFORT = 2_000_000_000
 """Markdown looks from each bracket, line and star to the end of the paragraph: the sum of the lengths of paragraphs,
 each times their number as they weigh. A list of 300 links makes a quarter of it, and all of it some five seconds."""
-_WEIGHTS = (("[", 200), ("\n", 20), ("*", 1), ("_", 1), ("`", 1))
+_WEIGHTS = (("[", 200), ("\n", 20), ("*", 1), ("_", 1), ("`", 1), ("\\", 1))
 MAX_DEPTH = 40
 """Of lists and quotations in one another, as elements."""
 FIRST_YEAR, LAST_YEAR = 1900, 2199

@@ -28,7 +28,8 @@ MAX_FORMS = 6
 """Of plurals: Arabic has so many, and no language more."""
 _PLACE = re.compile(r"%(?:\(\w*\).?|.|$)", re.DOTALL)
 _ISOLATES = re.compile("[\u2066-\u2068]")
-_JOINED, _FORMS = re.compile(rb'"\s*"'), re.compile(rb"nplurals\s*=\s*(\d+)")
+_JOINED, _FORMS = re.compile(r'"\s*"'), re.compile(r"nplurals\s*=\s*(\d+)")
+_CHARSET = re.compile(r"(?i)Content-Type:[^\n]*?charset=([^\s;\"\\]*)")
 _REFUSED = re.compile(r"[\x00-\x09\x0b-\x1f\x7f-\x9f\u2028-\u202e\ufeff\ufffe\uffff]")
 
 
@@ -81,10 +82,12 @@ def read(file: Path) -> Catalog:
     if len(data) > MAX_BYTES:
         raise ContentError(file, 0, f"the catalogue is larger than {MAX_BYTES // 1024 // 1024} MB", "shorten it")
     try:
-        if any(int(number) > MAX_FORMS for number in _FORMS.findall(_JOINED.sub(b"", data))):
+        head = _JOINED.sub("", data.decode("utf-8"))
+        if any(int(number) > MAX_FORMS for number in _FORMS.findall(head)):
             raise ValueError(f"more than {MAX_FORMS} plural forms")
+        if others := {name for name in _CHARSET.findall(head) if name.lower() != "utf-8"}:
+            raise ValueError(f"its charset is {min(others)}, not utf-8")
         catalogue = read_po(BytesIO(data), locale=file.stem.replace("-", "_"), charset="utf-8", abort_invalid=True)
-        catalogue.charset = "utf-8"  # whatever its head says
         forms = [c2py(catalogue.plural_expr)(number) for number in range(1000)]
     except UnicodeDecodeError as fault:
         line = data.count(b"\n", 0, fault.start) + 1
