@@ -109,7 +109,7 @@ def said(text: str) -> str:
         ),
         (
             "on: 2026-02-29\n",
-            '1: on: "2026-02-29" is not a date (day is out of range for month); write for instance 2026-12-01',
+            '1: on: "2026-02-29" is not a date (there is no such date); write for instance 2026-12-01',
         ),
         (
             "at: 2026-12-01\n",

@@ -277,7 +277,7 @@ FAULTS = [
     (
         "record/decisions.yaml", "2026-12-01T09:00:00+11:00", "2026-02-30T09:00:00+11:00",
         'record/decisions.yaml:5: at: "2026-02-30T09:00:00+11:00" is not a date and time '
-        "(day is out of range for month); write for instance 2026-12-01T09:00:00+11:00",
+        "(there is no such date and time); write for instance 2026-12-01T09:00:00+11:00",
     ),
     (
         "record/decisions.yaml", "2026-12-01T09:00:00+11:00", '"1796083200"',
@@ -299,7 +299,7 @@ FAULTS = [
     ),
     (
         "policies.yaml", "2025-06-01", "2025-06-31",
-        'policies.yaml:4: adopted: "2025-06-31" is not a date (day is out of range for month); '
+        'policies.yaml:4: adopted: "2025-06-31" is not a date (there is no such date); '
         "write for instance 2026-12-01",
     ),
     (

@@ -100,13 +100,13 @@ def _iso(value: Any, kind: type[date], example: str) -> Any:
     # Not left to pydantic, which would take digits alone for seconds since 1970.
     if not isinstance(value, str):
         return value
+    noun = "date and time" if kind is datetime else "date"
     try:
         if _ISO.match(value):
             return kind.fromisoformat(value)
         reason = ""
-    except ValueError as error:
-        reason = f" ({error})"
-    noun = "date and time" if kind is datetime else "date"
+    except ValueError:  # in words that are not those of every Python
+        reason = f" (there is no such {noun})"
     raise ValueError(f'"{value}" is not a {noun}{reason}; write for instance {example}')
 
 

@@ -111,7 +111,8 @@ def value(edition: Edition, asked: Placeholder) -> str:
         return words.standing(found.standing, language)
     alone = found.starts == found.ends
     when = language.full_date(found.starts) if alone else words.span(found.starts, found.ends, language)
-    return f"{when} {language.gettext('(night, from sunset)')}" if found.night else when
+    night = language.gettext("(night, from sunset)")
+    return f"{when} {night}" if found.night else when
 
 
 def _dated(edition: Edition, asked: Placeholder) -> Named | None:
