@@ -19,6 +19,7 @@ import icalendar
 from pydantic import TypeAdapter, ValidationError
 
 from moonwrit import journal
+from moonwrit.content import own
 from moonwrit.content.faults import validated
 from moonwrit.content.load import OPTIONAL, RECORD, SHAPES, load
 from moonwrit.content.look import read_logo, too_faint
@@ -43,7 +44,9 @@ FILE = Path("it.yaml")
 EXAMPLE = load(HERE.parent.parent / "content")
 SHEET = re.compile(r"(@media screen and \(prefers-color-scheme: (light|dark)\) \{\n  :root \{\n"
                    r"(    --[a-z]+: #[0-9A-Fa-f]{3,6};\n)+  \}\n\}\n)*")
+# What is fuzzed runs some fifty times slower.
 sandbox.MAX_STEPS = 10_000
+own.MAX_EFFORT = 40_000_000
 _OBSERVANCES: TypeAdapter[dict[str, Observance]] = TypeAdapter(dict[str, Observance])
 _TEXT: TypeAdapter[str] = TypeAdapter(Text)
 

@@ -33,8 +33,9 @@ from moonwrit.resources import themes_folder
 
 MAX_BYTES = 256 * 1024
 MAX_EFFORT = 2_000_000_000
-"""Markdown looks from each bracket, line and star to the end of the paragraph: the sum of the lengths of paragraphs,
-each times their number as they weigh. A list of 300 links makes a quarter of it, and all of it some five seconds."""
+"""Markdown looks from each bracket, line and star to the end of its paragraph, and from each paragraph to the first:
+the sum of the lengths of paragraphs, each times these signs as they weigh, and of what was before. A list of 300 links
+without an empty line makes most of this; all of it takes some five seconds."""
 _WEIGHTS = (("[", 200), ("\n", 20), ("*", 1), ("_", 1), ("`", 1), ("\\", 1))
 MAX_DEPTH = 40
 """Of lists and quotations in one another, as elements."""
@@ -230,12 +231,12 @@ def _read(file: Path, language: str, site: Site, observances: Mapping[str, Obser
     if not any(isinstance(part, Placeholder) or part.strip() for part in body):
         raise fault(0, "there is nothing below the title", "write the text, or remove the file")
     effort = 0
-    for paragraph in re.finditer(r"(?:.+\n?)+", text):
+    for number, paragraph in enumerate(re.finditer(r"(?:.+\n?)+", text)):
         weight = sum(paragraph[0].count(sign) * times for sign, times in (_WEIGHTS))
-        effort += len(paragraph[0]) * weight
+        effort += len(paragraph[0]) * weight + 5 * number
         if effort > MAX_EFFORT:
-            raise fault(paragraph.start(), "the paragraphs up to this one are too long to be read",
-                        "put empty lines between them, or write fewer links")
+            raise fault(paragraph.start(), "the paragraphs up to this one are too long or too many to be read",
+                        "split the text, put empty lines into the long ones, or write fewer links")
     try:
         _filled(body, lambda _: "x", lambda said, what, mend: fault(max(text.find(said), 0), what, mend))
     except RecursionError:
