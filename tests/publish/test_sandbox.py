@@ -65,6 +65,7 @@ REFUSED = {
     "long figures": "{{ " + "9" * 5000 + " }}",
     "deep brackets": "{{ " + "(" * 50_000 + "1" + ")" * 50_000 + " }}",
     "deep blocks": "{% for a in [1] %}" * 300 + "{% endfor %}" * 300,
+    "a comment without end": "{{ 1 }}{#% include",
     "a control": "{% \0 %}",
 }
 

@@ -50,7 +50,9 @@ class Sandbox(ImmutableSandboxedEnvironment):
         """What is nested too deeply for Python to compile is a fault of the template like any other."""
         try:
             return super().compile(source, name, filename, *args)
-        except TemplateError:
+        except TemplateError as fault:
+            if isinstance(fault, TemplateSyntaxError) and fault.filename is None:  # the lexer does not say
+                fault.filename = filename
             raise
         except Exception as fault:
             raise TemplateSyntaxError(f"it cannot be compiled: {fault}", 1, name, filename) from fault
