@@ -160,6 +160,24 @@ def test_order_is_by_civil_date_then_as_written() -> None:
     assert [one.observance for one in occurrences(rules, months)] == ["eve", "earlier", "zeta", "alpha"]
 
 
+@pytest.mark.parametrize(
+    ("own", "following", "weaker"),
+    [("wide", "edge", "edge"), ("close", "wide", "close"), ("fixed", "wide", "wide"), ("fixed", "fixed", "fixed")],
+)
+def test_what_hangs_on_where_the_month_ends_is_as_close_as_the_closer_of_both_months(
+    own: Closeness, following: Closeness, weaker: Closeness
+) -> None:
+    """The 30th day and what follows it does; the 29th is there in any case, and hangs on its own month alone."""
+    months = [month(9, date(2026, 2, 19), 30, closeness=own), month(10, date(2026, 3, 21), 29, closeness=following)]
+    rules: list[tuple[dict[str, Any], Closeness]] = [
+        ({"day": "last"}, weaker), ({"last": "friday"}, weaker), ({"day": 1, "run": "month"}, weaker),
+        ({"day": 30}, weaker), ({"day": 28, "run": 3}, weaker), ({"day": 29}, own), ({"day": 28, "run": 2}, own),
+    ]
+    for when, expected in rules:
+        (one,) = found(months, month=9, **when)
+        assert one.closeness == expected
+
+
 # Properties
 
 _WEEKDAYS = ["monday", "tuesday", "wednesday", "thursday", "friday", "saturday", "sunday"]
@@ -167,7 +185,7 @@ _WEEKDAYS = ["monday", "tuesday", "wednesday", "thursday", "friday", "saturday",
 
 @st.composite
 def years_of_months(draw: st.DrawFn) -> list[Month]:
-    """Up to thirty consecutive months of 29 or 30 days, from any month on."""
+    """Up to thirty consecutive months of 29 or 30 days, from any month on, of any standing and closeness."""
     lengths = draw(st.lists(st.sampled_from([29, 30]), min_size=1, max_size=30))
     starts = draw(st.dates(date(1900, 1, 1), date(2100, 1, 1)))
     first = draw(st.integers(1447 * 12, 1448 * 12))
@@ -175,7 +193,8 @@ def years_of_months(draw: st.DrawFn) -> list[Month]:
     for step, length in enumerate(lengths):
         year, number = divmod(first + step, 12)
         standing: Standing = draw(st.sampled_from(["expected", "settled", "amended"]))
-        months.append(month(number + 1, starts, length, year=year, standing=standing))
+        closeness: Closeness = draw(st.sampled_from(["edge", "close", "wide", "fixed"]))
+        months.append(month(number + 1, starts, length, year=year, standing=standing, closeness=closeness))
         starts += length * DAY
     return months
 
