@@ -39,6 +39,7 @@ from moonwrit.publish.icalendar import observances_feed
 from moonwrit.publish.jscalendar import calendar_feed
 from moonwrit.publish.language import Language
 from moonwrit.publish.notices import atom_feed, json_feed
+from moonwrit.publish.pieces import Parts
 
 ROOT = Path(__file__).resolve().parent.parent
 TEXT: TypeAdapter[str] = TypeAdapter(Text)
@@ -260,6 +261,10 @@ def saying(tmp_path_factory: pytest.TempPathFactory) -> Callable[[str, str], Edi
     return said
 
 
+def whole(parts: Parts) -> bytes:
+    return b"".join(piece.make() for piece in parts)
+
+
 def taken(text: str) -> str | None:
     """The text as the content takes it; None where it is refused."""
     try:
@@ -286,15 +291,15 @@ def test_any_text_that_is_taken_reads_back_from_every_feed(
     if said is None or told is None:
         return
     edition = saying(said, told)
-    calendar: Any = icalendar.Calendar.from_ical(observances_feed(edition))
+    calendar: Any = icalendar.Calendar.from_ical(whole(observances_feed(edition)))
     (event,) = calendar.walk("VEVENT")
     assert str(event["summary"]) == f"{said} (expected)"
     assert str(event["description"]).startswith(told + "\n\n")
-    (entry,) = (one for one in json.loads(calendar_feed(edition))["entries"] if one["uid"].startswith("eid"))
+    (entry,) = (one for one in json.loads(whole(calendar_feed(edition)))["entries"] if one["uid"].startswith("eid"))
     assert entry["title"] == f"{said} (expected)"
-    author = ET.fromstring(atom_feed(edition)).findtext("{*}author/{*}name")
+    author = ET.fromstring(whole(atom_feed(edition))).findtext("{*}author/{*}name")
     assert author == said
-    assert json.loads(json_feed(edition))["authors"] == [{"name": said}]
+    assert json.loads(whole(json_feed(edition)))["authors"] == [{"name": said}]
 
 
 @pytest.fixture(scope="module")

@@ -79,12 +79,12 @@ def held(content: Content, folder: Path, almanacs: Sequence[Almanac], as_of: dat
 
 def publish(
     folder: Path, output: Path, as_of: date | None, paper: Paper | None = None,
-    progress: Progress = lambda _: nullcontext(),
+    progress: Progress = lambda _: nullcontext(), processes: int = 1,
 ) -> int:
     """Build the site of a content folder, put it in place, and write down what was published; the number of files.
 
-    ``paper``: with PDF sheets of that size. A replay (``as_of``) leaves the journal alone. Raises MoonwritError, and
-    then nothing has changed.
+    ``paper``: with PDF sheets of that size. ``processes``: how many of this machine may make pages. A replay
+    (``as_of``) leaves the journal alone. Raises MoonwritError, and then nothing has changed.
     """
     from moonwrit import journal
     from moonwrit.publish.site import publish as put
@@ -100,7 +100,8 @@ def publish(
         _refuse_earlier_than(max(entry.at for entry in ledger.history), now())
     with progress("Writing the site"):
         # A replay leaves nothing in the site for the journal to recover.
-        files = put(almanacs, ledger if as_of is None else replace(ledger, added=()), output, paper, content.own)
+        told = ledger if as_of is None else replace(ledger, added=())
+        files = put(almanacs, told, output, paper, content.own, processes)
     if as_of is None:
         journal.append(folder, ledger.added)
     return files

@@ -18,21 +18,39 @@ _DIGEST = 32
 
 
 def kept(kind: str, key: object, make: Callable[[], bytes]) -> bytes:
-    """What ``make`` gives, from disk where it was kept before.
-
-    ``kind`` is a folder; ``key`` prints all that the result depends on. A file that does not hold what was written is
-    made anew, with a note on standard error; a folder that cannot be written is done without.
-    """
-    where = _folder()
-    if where is None:
-        return make()
-    file = where / kind / sha256(repr(key).encode()).hexdigest()
-    found = _read(file)
+    """What ``make`` gives, from disk where it was kept before."""
+    found = recalled(kind, key)
     if found is None:
         found = make()
-        with suppress(OSError):
-            _write(file, found)
+        keep(kind, key, found)
     return found
+
+
+def recalled(kind: str, key: object) -> bytes | None:
+    """What was kept last, or None; with a note on standard error where the file does not hold what was written.
+
+    ``kind`` is a folder; ``key`` prints all that the result depends on.
+    """
+    file = _file(kind, key)
+    return None if file is None else _read(file)
+
+
+def keep(kind: str, key: object, content: bytes, most: int | None = None) -> None:
+    """Keep it; of its kind no more than ``most``, those kept last. A folder that cannot be written is done without."""
+    file = _file(kind, key)
+    if file is None:
+        return
+    with suppress(OSError):
+        _write(file, content)
+        if most is not None:
+            there = sorted(file.parent.iterdir(), key=lambda one: one.stat().st_mtime, reverse=True)
+            for old in there[most:]:
+                old.unlink(missing_ok=True)
+
+
+def _file(kind: str, key: object) -> Path | None:
+    where = _folder()
+    return None if where is None else where / kind / sha256(repr(key).encode()).hexdigest()
 
 
 def _folder() -> Path | None:
@@ -70,4 +88,4 @@ def _write(file: Path, content: bytes) -> None:
         aside.unlink(missing_ok=True)
 
 
-__all__ = ["kept"]
+__all__ = ["keep", "kept", "recalled"]

@@ -92,7 +92,7 @@ def main() -> None:
 @click.option("--output", type=click.Path(path_type=Path), default=Path("output"), show_default=True,
               help="Folder of the built site, or of the sites.")
 @click.option("--workers", type=click.IntRange(1, 256), default=os.cpu_count() or 1, metavar="N",
-              help="How many content folders to build side by side.")
+              help="How many processes of this machine: for content folders side by side, or the pages of one.")
 @click.option("--pdf", "paper", type=click.Choice(["a4", "letter"]),
               help="Sheets to print too: years, months and evenings as PDF.")
 @click.option("--scheduler", metavar="ADDRESS", help="A Dask cluster on which to build several content folders.")
@@ -106,7 +106,7 @@ def publish(
     from moonwrit.building import publish_many
 
     if len(folders) == 1:
-        click.echo(f"{build(folders[0], output, as_of, paper, _progress)} files in {output}")
+        click.echo(f"{build(folders[0], output, as_of, paper, _progress, workers)} files in {output}")
         return
     worst = 0
     for outcome in publish_many(folders, output, as_of, paper, workers, scheduler):

@@ -17,6 +17,15 @@ def starter_folder() -> Path:
     return _folder("_starter", "content")
 
 
+def program_files(own_theme: Path | None) -> list[Path]:
+    """Every file that pages are made by: the program, its themes, and a community's own, in a lasting order."""
+    folders = [_PACKAGE, themes_folder(), *([own_theme] if own_theme else [])]
+    return [
+        file for folder in folders for file in sorted(folder.rglob("*"))
+        if file.is_file() and "__pycache__" not in file.parts
+    ]
+
+
 def _folder(installed: str, checkout: str) -> Path:
     inside = _PACKAGE / installed
     return inside if inside.is_dir() else _PACKAGE.parent.parent / checkout

@@ -17,7 +17,7 @@ from moonwrit.policy.evening import evening_at
 from moonwrit.policy.everywhere import Asked, asked_everywhere
 from moonwrit.policy.published import published
 from moonwrit.publish.language import ENGLISH, Language
-from moonwrit.publish.maps import WIDTH, Box, Chart, charts, key, region_map, told, world_map
+from moonwrit.publish.maps import WIDTH, Box, Chart, Charts, key, region_map, told, world_map
 from moonwrit.resources import starter_folder
 from moonwrit.sky.land import Outline
 
@@ -37,7 +37,9 @@ def almanac() -> Almanac:
 
 @pytest.fixture(scope="module")
 def drawn(almanac: Almanac) -> dict[date, Chart]:
-    return charts(almanac)
+    charts = Charts(almanac)
+    found = (charts.of(index) for index in range(len(almanac.months)))
+    return {one.chart.on: one.chart for one in found if one is not None}
 
 
 def asked_by(policy: str, place: NamedPlace = HARBOUR) -> list[Asked]:

@@ -170,6 +170,7 @@ class _Model(BaseModel):
 
 
 @cache
+@cache
 def zone_named(name: str) -> ZoneInfo:
     """The time zone of an IANA name. Raises ValueError, which says how to mend it, for any other."""
     # From the tzdata package, for the same reason: ZoneInfo(name) would prefer the machine's own files.

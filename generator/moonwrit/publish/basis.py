@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+from collections.abc import Sequence
 from dataclasses import asdict
 from datetime import datetime
 from typing import TYPE_CHECKING, Any
@@ -10,7 +11,8 @@ from typing import TYPE_CHECKING, Any
 from moonwrit.policy.months import Finding, Margin, Month
 
 if TYPE_CHECKING:
-    from moonwrit.almanac import Almanac
+    from moonwrit.content.models import Site
+    from moonwrit.policy import Method
     from moonwrit.policy.differ import Beside
 
 VERSION = 1
@@ -77,16 +79,15 @@ def utc(moment: datetime | None) -> str | None:
     return None if moment is None else moment.strftime("%Y-%m-%dT%H:%M:%SZ")
 
 
-def basis_feed(almanac: Almanac) -> bytes:
+def basis_feed(site: Site, calendar: str, method: Method, months: Sequence[Month]) -> bytes:
     """``feeds/basis.json``: every month of a calendar with its full evidence; the same in every language."""
-    method = almanac.method
     return json_bytes({
-        "$schema": almanac.site.address.rstrip("/") + "/feeds/schema/basis.schema.json",
+        "$schema": site.address.rstrip("/") + "/feeds/schema/basis.schema.json",
         "version": VERSION,
-        "calendar": almanac.calendar_id,
-        "site": almanac.site.address,
+        "calendar": calendar,
+        "site": site.address,
         "policy": {"name": method.name, "title": method.title, "source": method.source, "note": method.note},
-        "months": [month_json(month) for month in almanac.months],
+        "months": [month_json(month) for month in months],
     })
 
 

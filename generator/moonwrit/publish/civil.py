@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from calendar import monthrange
+from collections.abc import Sequence
 from dataclasses import dataclass
 from datetime import date, timedelta
 
@@ -35,18 +36,22 @@ def civil_years(almanac: Almanac) -> range:
     return range(almanac.months[0].starts.year, almanac.months[-1].ends.year + 1)
 
 
-def civil_months(almanac: Almanac, year: int, first_weekday: int) -> tuple[CivilMonth, ...]:
-    """The months of a civil year; those without a published day are left out. ``first_weekday``: Monday is 0."""
+def civil_months(
+    months: Sequence[Month], occurrences: Sequence[Occurrence], year: int, first_weekday: int
+) -> tuple[CivilMonth, ...]:
+    """The months of a civil year, with the occurrences given; those without a published day are left out.
+
+    ``months`` are those that hold a day of the year; ``first_weekday``: Monday is 0.
+    """
     lunar = {
         month.starts + timedelta(days=offset): (month, offset + 1)
-        for month in almanac.months
+        for month in months
         for offset in range(month.length)
         if (month.starts + timedelta(days=offset)).year == year
     }
     begins: dict[date, list[Occurrence]] = {}
-    for one in almanac.occurrences:
-        if "main" in one.tags:
-            begins.setdefault(one.starts, []).append(one)
+    for one in occurrences:
+        begins.setdefault(one.starts, []).append(one)
     out = []
     for number in range(1, 13):
         first = date(year, number, 1)
@@ -59,7 +64,7 @@ def civil_months(almanac: Almanac, year: int, first_weekday: int) -> tuple[Civil
             cells.append(CivilDay(day, month, number_of_day, tuple(begins.get(day, ()))))
         cells += [None] * (-len(cells) % 7)
         weeks = tuple(tuple(cells[start:start + 7]) for start in range(0, len(cells), 7))
-        out.append(CivilMonth(first, weeks, tuple(month for month in almanac.months if month.starts in days)))
+        out.append(CivilMonth(first, weeks, tuple(one for one in months if one.starts in days)))
     return tuple(out)
 
 

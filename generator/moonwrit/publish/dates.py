@@ -3,31 +3,33 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from datetime import timedelta
+from datetime import datetime, timedelta
 from typing import Any
 
+from moonwrit.journal import month_key
 from moonwrit.observances import Occurrence
 from moonwrit.policy import Month
 from moonwrit.publish import words
 from moonwrit.publish.basis import VERSION, json_bytes, utc
-from moonwrit.publish.edition import Edition
+from moonwrit.publish.edition import Edition, Imprint
+from moonwrit.publish.pieces import Parts
 
 AHEAD = timedelta(days=400)
 """``next.json`` looks this far ahead: a lunar year and some weeks, so that it serves long after a build."""
 
 
-def next_feed(edition: Edition) -> bytes:
+def next_feed(edition: Edition) -> Parts:
     """``feeds/next.json``: the present lunar month and what falls in the thirteen months or so from its first day.
 
     It changes with the lunar month, not with every day: readers leave out what has passed for them.
     """
     months, dates = upcoming(edition)
-    return _file(edition, "next.json", months, dates)
+    return _parts(edition, "next.json", months, dates)
 
 
-def year_file(edition: Edition, year: int) -> bytes:
+def year_file(edition: Edition, year: int) -> Parts:
     """``feeds/years/<year>.json``: the months and dates of one Hijri year."""
-    return _file(
+    return _parts(
         edition, f"years/{year}.json",
         [month for month in edition.almanac.months if month.year == year],
         [one for one in edition.almanac.occurrences if one.year == year],
@@ -46,18 +48,26 @@ def upcoming(edition: Edition) -> tuple[list[Month], list[Occurrence]]:
     )
 
 
-def _file(edition: Edition, name: str, months: Sequence[Month], dates: Sequence[Occurrence]) -> bytes:
-    language = edition.language
+def _parts(edition: Edition, name: str, months: Sequence[Month], dates: Sequence[Occurrence]) -> Parts:
+    keys = [*(month_key(month.year, month.month) for month in months), *(one.key for one in dates)]
+    updated = edition.last_of(edition.entry(key) for key in keys)
+    return (edition.piece(_file, edition.imprint, name, months, dates, updated),)
+
+
+def _file(
+    imprint: Imprint, name: str, months: Sequence[Month], dates: Sequence[Occurrence], updated: datetime
+) -> bytes:
+    language = imprint.language
     return json_bytes({
-        "$schema": edition.site.address.rstrip("/") + "/feeds/schema/dates.schema.json",
+        "$schema": imprint.site_path("feeds/schema/dates.schema.json"),
         "version": VERSION,
-        "calendar": edition.almanac.calendar_id,
-        "title": edition.name,
+        "calendar": imprint.calendar_id,
+        "title": imprint.name,
         "language": language.code,
         "direction": language.direction,
-        "site": edition.page(),
-        "source": edition.feed(name),
-        "updated": utc(edition.last_change),
+        "site": imprint.page(),
+        "source": imprint.feed(name),
+        "updated": utc(updated),
         "months": [
             {
                 "year": month.year,
@@ -69,17 +79,16 @@ def _file(edition: Edition, name: str, months: Sequence[Month], dates: Sequence[
             }
             for month in months
         ],
-        "dates": [_date(edition, one) for one in dates],
+        "dates": [_date(imprint, one) for one in dates],
     })
 
 
-def _date(edition: Edition, one: Occurrence) -> dict[str, Any]:
-    language = edition.language
-    name = edition.say(edition.almanac.observances[one.observance].name)
+def _date(imprint: Imprint, one: Occurrence) -> dict[str, Any]:
+    language = imprint.language
     return {
         "key": one.key,
         "observance": one.observance,
-        "title": words.occurrence_title(name, one, language),
+        "title": words.occurrence_title(imprint.observance(one.observance), one, language),
         "when": words.span(one.starts, one.ends, language),
         "starts": one.starts.isoformat(),
         "ends": one.ends.isoformat(),
@@ -91,7 +100,7 @@ def _date(edition: Edition, one: Occurrence) -> dict[str, Any]:
         "standing_text": words.standing(one.standing, language),
         "closeness": one.closeness,
         "tags": list(one.tags),
-        "page": edition.page(f"observances/{one.observance}/"),
+        "page": imprint.page(f"observances/{one.observance}/"),
     }
 
 

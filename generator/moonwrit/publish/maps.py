@@ -22,7 +22,7 @@ import numpy.typing as npt
 
 from moonwrit.almanac import Almanac
 from moonwrit.content.models import in_language
-from moonwrit.policy import NamedPlace
+from moonwrit.policy import Month, NamedPlace
 from moonwrit.policy.conditions import CLOSE_SHARE
 from moonwrit.policy.everywhere import Asked, asked_everywhere
 from moonwrit.policy.scopes import MAX_LATITUDE_DEG
@@ -148,20 +148,54 @@ class Chart:
         return float(surface.grid.latitude_deg[row]), float(surface.grid.longitude_deg[column])
 
 
-def charts(almanac: Almanac) -> dict[date, Chart]:
-    """A chart for the 29th evening before each month; none where the policy does not ask the sky itself."""
-    places = [
-        NamedPlace.of(in_language(place.name, almanac.site.language), place)
-        for place in almanac.places.values()
-    ]
-    outlined = None
-    if almanac.outline:
-        outlined = outline({"type": "MultiPolygon", "coordinates": list(almanac.outline)})
-    months = list(almanac.months)
-    return {
-        month.evidence.evening: Chart(month.evidence.evening, asked, places, outlined)
-        for month, asked in zip(months, asked_everywhere(almanac.method, months), strict=False)
-    }
+class Charts:
+    """A chart for the 29th evening before each month of a calendar, made when it is asked for."""
+
+    def __init__(self, almanac: Almanac) -> None:
+        self.method, self._months = almanac.method, almanac.months
+        self.places = tuple(
+            NamedPlace.of(in_language(place.name, almanac.site.language), place) for place in almanac.places.values()
+        )
+        self.outlined: Outline | None = None
+        if almanac.outline:
+            self.outlined = outline({"type": "MultiPolygon", "coordinates": list(almanac.outline)})
+        self._years: dict[int, list[Asked]] = {}
+        self._made: dict[int, Chart] = {}
+
+    def of(self, index: int) -> Charted | None:
+        """Of the month with this index; None where the policy does not ask the sky itself."""
+        return Charted(self, index, self._months[index]) if self.method.eras else None
+
+    def made(self, index: int) -> Chart:
+        if index not in self._made:
+            on = self._months[index].evidence.evening
+            self._made[index] = Chart(on, self._asked(index), self.places, self.outlined)
+        return self._made[index]
+
+    def _asked(self, index: int) -> Asked:
+        """Twelve are asked together, which is faster; always the same twelve, so that the bytes are the same."""
+        year, month = divmod(index, 12)
+        if year not in self._years:
+            self._years[year] = asked_everywhere(self.method, list(self._months[year * 12:year * 12 + 12]))
+        return self._years[year][month]
+
+
+@dataclass(frozen=True, slots=True)
+class Charted:
+    """A chart to be: all that it hangs on."""
+
+    charts: Charts
+    index: int
+    month: Month
+
+    @property
+    def digested(self) -> object:
+        charts = self.charts
+        return (charts.method.eras, charts.places, charts.outlined, self.month.ordinal, self.month.evidence.evening)
+
+    @property
+    def chart(self) -> Chart:
+        return self.charts.made(self.index)
 
 
 # --- surfaces -----------------------------------------------------------------------------------------

@@ -2,21 +2,20 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
-from datetime import UTC, datetime
-from typing import Any
+from datetime import UTC, datetime, time
 from xml.etree import ElementTree as ET
 
 from moonwrit import __version__
-from moonwrit.calendars import month_slug
 from moonwrit.content.record import Decision
 from moonwrit.policy import Month
 from moonwrit.publish import words
 from moonwrit.publish.basis import json_bytes, utc
-from moonwrit.publish.edition import Edition
+from moonwrit.publish.edition import Edition, Imprint, month_path
 from moonwrit.publish.language import Language
 from moonwrit.publish.own import own_notices
+from moonwrit.publish.pieces import Parts
 
 _ATOM = "http://www.w3.org/2005/Atom"
 KEPT = 60
@@ -44,53 +43,61 @@ def notices(edition: Edition) -> list[Notice]:
     return sorted(found, key=lambda notice: (notice.at, notice.name), reverse=True)[:KEPT]
 
 
-def atom_feed(edition: Edition) -> bytes:
+def atom_feed(edition: Edition) -> Parts:
     """``feeds/notices.atom``"""
-    address = edition.feed("notices.atom")
-    root = ET.Element("feed", {"xmlns": _ATOM, "xml:lang": edition.language.code})
+    found = tuple(notices(edition))
+    return (edition.piece(_atom, edition.imprint, found, _updated(edition, found)),)
+
+
+def json_feed(edition: Edition) -> Parts:
+    """``feeds/notices.json``"""
+    return (edition.piece(_json, edition.imprint, tuple(notices(edition))),)
+
+
+def _atom(imprint: Imprint, found: Sequence[Notice], updated: datetime) -> bytes:
+    address = imprint.feed("notices.atom")
+    root = ET.Element("feed", {"xmlns": _ATOM, "xml:lang": imprint.language.code})
     _add(root, "id", address)
-    _add(root, "title", _title(edition))
-    _add(root, "updated", str(utc(_updated(edition))))
+    _add(root, "title", _title(imprint))
+    _add(root, "updated", str(utc(updated)))
     ET.SubElement(root, "link", {"rel": "self", "href": address, "type": "application/atom+xml"})
-    ET.SubElement(root, "link", {"rel": "alternate", "href": edition.page("changes/"), "type": "text/html"})
+    ET.SubElement(root, "link", {"rel": "alternate", "href": imprint.page("changes/"), "type": "text/html"})
     author = ET.SubElement(root, "author")
-    _add(author, "name", edition.say(edition.site.community))
+    _add(author, "name", imprint.say(imprint.site.community))
     _add(root, "generator", "Moonwrit").set("version", __version__)
-    for notice in notices(edition):
+    for notice in found:
         entry = ET.SubElement(root, "entry")
-        _add(entry, "id", _id(edition, notice))
+        _add(entry, "id", _id(imprint, notice))
         _add(entry, "title", notice.title)
         _add(entry, "updated", str(utc(notice.at)))
         _add(entry, "published", str(utc(notice.at)))
-        ET.SubElement(entry, "link", {"rel": "alternate", "href": edition.page(notice.path), "type": "text/html"})
+        ET.SubElement(entry, "link", {"rel": "alternate", "href": imprint.page(notice.path), "type": "text/html"})
         _add(entry, "content", notice.html or notice.text).set("type", "html" if notice.html else "text")
     ET.indent(root, " ")
     text = ET.tostring(root, encoding="unicode")
     return f'<?xml version="1.0" encoding="utf-8"?>\n{text}\n'.encode()
 
 
-def json_feed(edition: Edition) -> bytes:
-    """``feeds/notices.json``"""
-    value: dict[str, Any] = {
+def _json(imprint: Imprint, found: Sequence[Notice]) -> bytes:
+    return json_bytes({
         "version": "https://jsonfeed.org/version/1.1",
-        "title": _title(edition),
-        "home_page_url": edition.page("changes/"),
-        "feed_url": edition.feed("notices.json"),
-        "language": edition.language.code,
-        "authors": [{"name": edition.say(edition.site.community)}],
+        "title": _title(imprint),
+        "home_page_url": imprint.page("changes/"),
+        "feed_url": imprint.feed("notices.json"),
+        "language": imprint.language.code,
+        "authors": [{"name": imprint.say(imprint.site.community)}],
         "items": [
             {
-                "id": _id(edition, notice),
-                "url": edition.page(notice.path),
+                "id": _id(imprint, notice),
+                "url": imprint.page(notice.path),
                 "title": notice.title,
                 "content_text": notice.text,
                 **({"content_html": notice.html} if notice.html else {}),
                 "date_published": utc(notice.at),
             }
-            for notice in notices(edition)
+            for notice in found
         ],
-    }
-    return json_bytes(value)
+    })
 
 
 def _decisions(edition: Edition) -> Iterable[Notice]:
@@ -103,7 +110,7 @@ def _decisions(edition: Edition) -> Iterable[Notice]:
                 f"decision-{month.year}-{month.month:02d}-{number}",
                 _decision_title(month, decision, edition.language),
                 _decision_text(month, decision, edition),
-                f"{month.year}/{month_slug(month.month)}/",
+                month_path(month),
                 decision.at.astimezone(UTC),
             )
 
@@ -120,17 +127,17 @@ def _decision_text(month: Month, decision: Decision, edition: Edition) -> str:
     if decision is not month.decision:
         parts.append(_("This decision has been superseded since."))
     if decision.text is not None:
-        parts.append(edition.say(decision.text))
+        parts.append(edition.imprint.say(decision.text))
     if decision is month.decision:
         parts += [words.basis_sentence(month, language), words.margin_sentence(month.margin, language)]
     return " ".join(parts)
 
 
 def _changes(edition: Edition) -> Iterable[Notice]:
-    _, language = edition.language.gettext, edition.language
+    _, language, imprint = edition.language.gettext, edition.language, edition.imprint
     for entry in edition.ledger.moved(edition.almanac.calendar_id):
         names = {
-            "what": words.published_name(entry.key, edition.almanac.observances, edition.site.language, language),
+            "what": words.published_name(entry.key, imprint.observances, imprint.site.language, language),
             "was": language.full_date(entry.was or entry.starts),
             "is": language.full_date(entry.starts),
             "reason": words.reason(entry.because, language),
@@ -144,21 +151,25 @@ def _changes(edition: Edition) -> Iterable[Notice]:
 
 
 def _own(edition: Edition) -> Iterable[Notice]:
+    zone = next(iter(edition.almanac.places.values())).zone
     for one in own_notices(edition):
-        html = one.html(edition.page(one.path))
-        yield Notice(one.path.strip("/").replace("/", "-"), one.title, one.text, one.path, one.at, html)
+        assert one.on is not None
+        # From the beginning of its date at the first place of the region.
+        at = datetime.combine(one.on, time(), zone).astimezone(UTC)
+        name = one.path.strip("/").replace("/", "-")
+        yield Notice(name, one.title, one.text, one.path, at, one.html(edition.imprint.page(one.path)))
 
 
-def _updated(edition: Edition) -> datetime:
-    return max([edition.last_change, *(notice.at for notice in notices(edition))])
+def _updated(edition: Edition, found: Sequence[Notice]) -> datetime:
+    return max([edition.last_change, *(notice.at for notice in found)])
 
 
-def _title(edition: Edition) -> str:
-    return edition.language.gettext("%(calendar)s: decisions and changes") % {"calendar": edition.name}
+def _title(imprint: Imprint) -> str:
+    return imprint.language.gettext("%(calendar)s: decisions and changes") % {"calendar": imprint.name}
 
 
-def _id(edition: Edition, notice: Notice) -> str:
-    return edition.page(f"changes/#{edition.uid(notice.name)}")
+def _id(imprint: Imprint, notice: Notice) -> str:
+    return imprint.page(f"changes/#{imprint.uid(notice.name)}")
 
 
 def _add(parent: ET.Element, name: str, text: str) -> ET.Element:

@@ -2,10 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
-from datetime import UTC, date, datetime, time, timedelta
-from functools import partial
+from datetime import date, timedelta
 
 from moonwrit.content.look import LightColours, Look
 from moonwrit.content.own import Placeholder, Written, in_tree
@@ -38,50 +37,36 @@ class Named:
 
 @dataclass(frozen=True, slots=True)
 class Shown:
-    """A page or a notice in the language of an edition; ``on`` is the date of a notice."""
+    """A page or a notice in the language of an edition. ``on`` is the date of a notice; ``values`` what stands in the
+    place of each placeholder; ``named`` the dates that the text names, each once, in the order in which it does."""
 
-    edition: Edition
     written: Written
     path: str
-    on: date | None = None
+    on: date | None
+    values: Mapping[Placeholder, str]
+    named: tuple[Named, ...]
 
     @property
     def title(self) -> str:
-        return self.written.heading(partial(value, self.edition))
+        return self.written.heading(self.values.__getitem__)
 
     @property
     def direction(self) -> str:
         return Language(self.written.language).direction
 
     def html(self, address: str = "") -> str:
-        return self.written.html(partial(value, self.edition), address)
+        return self.written.html(self.values.__getitem__, address)
 
     @property
     def text(self) -> str:
-        return self.written.text(partial(value, self.edition))
-
-    @property
-    def at(self) -> datetime:
-        """The beginning of a notice's date at the first place of the region."""
-        assert self.on is not None
-        zone = next(iter(self.edition.almanac.places.values())).zone
-        return datetime.combine(self.on, time(), zone).astimezone(UTC)
-
-    @property
-    def named(self) -> list[Named]:
-        """The dates that the text names, each once, in the order in which it does."""
-        found = (_dated(self.edition, one) for one in self.written.asked)
-        return list({(one.name, one.starts): one for one in found if one is not None}.values())
+        return self.written.text(self.values.__getitem__)
 
 
 def own_pages(edition: Edition) -> list[Shown]:
     """The community's pages, by name; they stand beside the main calendar."""
     if not edition.is_main:
         return []
-    return [
-        Shown(edition, in_tree(texts, edition.language.code, edition.site), f"pages/{name}/")
-        for name, texts in sorted(edition.own.pages.items())
-    ]
+    return [_shown(edition, texts, f"pages/{name}/") for name, texts in sorted(edition.own.pages.items())]
 
 
 def own_notices(edition: Edition) -> list[Shown]:
@@ -89,9 +74,17 @@ def own_notices(edition: Edition) -> list[Shown]:
     if not edition.is_main:
         return []
     return [
-        Shown(edition, in_tree(texts, edition.language.code, edition.site), f"notices/{name}/", on)
+        _shown(edition, texts, f"notices/{name}/", on)
         for (on, name), texts in edition.own.notices.items() if on <= edition.almanac.as_of
     ]
+
+
+def _shown(edition: Edition, texts: Mapping[str, Written], path: str, on: date | None = None) -> Shown:
+    written = in_tree(texts, edition.language.code, edition.almanac.site)
+    asked = [part for part in (*written.title, *written.body) if isinstance(part, Placeholder)]
+    found = (_dated(edition, one) for one in written.asked)
+    named = {(one.name, one.starts): one for one in found if one is not None}
+    return Shown(written, path, on, {one: value(edition, one) for one in asked}, tuple(named.values()))
 
 
 def recent(notices: list[Shown], today: date) -> list[Shown]:
@@ -101,9 +94,9 @@ def recent(notices: list[Shown], today: date) -> list[Shown]:
 def value(edition: Edition, asked: Placeholder) -> str:
     """What stands in the place of a placeholder, as plain text."""
     if asked.kind == "community":
-        return edition.say(edition.site.community)
+        return edition.imprint.say(edition.almanac.site.community)
     if asked.kind == "authority":
-        return edition.say(edition.site.authority)
+        return edition.imprint.say(edition.almanac.site.authority)
     found, language = _dated(edition, asked), edition.language
     if found is None:
         return language.gettext("not in %(year)s") % {"year": language.digits(asked.year)}
@@ -129,7 +122,7 @@ def _dated(edition: Edition, asked: Placeholder) -> Named | None:
 
 
 def _of(edition: Edition, one: Occurrence) -> Named:
-    name = words.occurrence_title(edition.say(edition.almanac.observances[one.observance].name), one, edition.language)
+    name = words.occurrence_title(edition.imprint.observance(one.observance), one, edition.language)
     month = edition.month_of[one.year, one.month]
     return Named(name, one.starts, one.ends, one.standing, one.closeness, month, one.night)
 

@@ -1,31 +1,37 @@
-"""Which pages there are, and what each is given."""
+"""Which pages there are, and what each is given: values alone, cut to what the page shows.
+
+A page is made again when one of its values is another (see ``pieces``), so that nothing is given that is not shown:
+neither the whole almanac, nor a month where its name is enough.
+"""
 
 from __future__ import annotations
 
 import re
-from collections.abc import Iterator, Sequence
+from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from datetime import date, timedelta
+from zoneinfo import ZoneInfo
 
 import segno
 from markupsafe import Markup, escape
 
-from moonwrit.almanac import Almanac, Evening
-from moonwrit.calendars import month_slug
+from moonwrit.almanac import Almanac, Evening, Other
 from moonwrit.concordance import TITLES, in_calendar
-from moonwrit.journal import Entry, Ledger, month_key
+from moonwrit.content.models import OtherCalendar
+from moonwrit.journal import Entry, month_key
 from moonwrit.observances import Occurrence
 from moonwrit.observances.fasting import FastingMonth
 from moonwrit.policy import Month
-from moonwrit.policy.differ import Beside
+from moonwrit.policy.differ import Beside, LongRun
+from moonwrit.policy.evening import Row
 from moonwrit.publish import maps, pictures, words
 from moonwrit.publish.asked import asked_in_words
 from moonwrit.publish.civil import civil_months, civil_years
-from moonwrit.publish.edition import Edition, tree
+from moonwrit.publish.edition import Edition, Imprint, Name, evening_path, fasting_path, month_path, tree
 from moonwrit.publish.icalendar import tags
 from moonwrit.publish.language import Language
 from moonwrit.publish.own import Shown, own_notices, own_pages, recent
-from moonwrit.publish.render import Page, svg
+from moonwrit.publish.render import Frame, Later, Page, svg
 from moonwrit.publish.schemas import schemas
 
 NOTED_DAYS = 60
@@ -45,84 +51,70 @@ class Cell:
 
 def pages(edition: Edition, editions: Sequence[Edition]) -> Iterator[Page]:
     """Every page of one calendar in one language; ``editions`` are all calendars in it, the main one first."""
-    almanac, ledger, language = edition.almanac, edition.ledger, edition.language
+    almanac, ledger, language, imprint = edition.almanac, edition.ledger, edition.language, edition.imprint
     _ = language.gettext
-    frame = _Frame(edition, editions)
+    frame = _frame(edition, editions)
+
+    def page(folder: str, template: str, title: str, **given: object) -> Page:
+        return Page(f"{imprint.base}{folder}index.html", template, title, frame, given)
+
     notices = own_notices(edition)
-    yield frame.page("", "home", edition.name, **_home(almanac), notices=recent(notices, almanac.as_of))
+    yield page("", "home", imprint.name, **_home(edition), notices=recent(notices, almanac.as_of))
     months = almanac.months
     for year in range(months[0].year, months[-1].year + 1):
-        title = _("Year %(year)s") % {"year": language.digits(year)}
-        yield frame.page(f"{year}/", "year", title, **_year(almanac, year, language))
+        yield page(f"{year}/", "year", _("Year %(year)s") % {"year": language.digits(year)}, **_year(edition, year))
     for year in civil_years(almanac):
-        yield frame.page(
-            f"civil/{year}/", "civil", _("Civil year %(year)s") % {"year": language.digits(year)},
-            year=year, civil_months=civil_months(almanac, year, language.first_weekday),
-        )
+        title = _("Civil year %(year)s") % {"year": language.digits(year)}
+        yield page(f"civil/{year}/", "civil", title, **_civil(edition, year))
     for index, month in enumerate(months):
-        yield frame.page(
-            month_path(month), "month", words.month_title(month, language),
-            **_month(almanac, ledger, index),
-        )
-    for name, observance in almanac.observances.items():
-        found = [one for one in almanac.occurrences if one.observance == name]
-        yield frame.page(
-            f"observances/{name}/", "observance", edition.say(observance.name), observance=observance, found=found,
-            notes=[entry for one in found if (entry := _noted(almanac, ledger, one.key))],
-        )
-    yield frame.page("observances/", "observances", _("Observances"))
-    for evening in almanac.evenings:
+        yield page(month_path(month), "month", words.month_title(month, language), **_month(edition, index))
+    for name in almanac.observances:
+        yield page(f"observances/{name}/", "observance", imprint.observance(name), **_observance(edition, name))
+    yield page("observances/", "observances", _("Observances"))
+    for index, evening in enumerate(almanac.evenings):
         title = _("Evening of %(date)s") % {"date": language.long_date(evening.on)}
-        yield frame.page(evening_path(evening), "evening", title, **_evening(edition, evening))
+        yield page(evening_path(evening.on), "evening", title, **_evening(edition, index))
     for table in almanac.fasting:
         title = _("Fasting days of %(month)s") % {"month": words.month_title(table.month, language)}
-        yield frame.page(fasting_path(table.month), "fasting", title, **_fasting(edition, table))
-    yield frame.page("places/", "places", _("Places"), next_evening=_next_evening(almanac))
-    yield frame.page("policy/", "policy", _("The policy"), asked=asked_in_words(almanac.method, language))
+        yield page(fasting_path(table.month.year), "fasting", title, **_fasting(edition, table))
+    yield page("places/", "places", _("Places"), places=almanac.places, next_evening=_next_evening(almanac))
+    yield page(
+        "policy/", "policy", _("The policy"), method=almanac.method, asked=asked_in_words(almanac.method, language),
+        places=almanac.places,
+    )
     if almanac.others:
-        title = _("Why it is another day elsewhere")
-        yield frame.page("differences/", "differences", title, **_differences(almanac, language))
-    yield frame.page("changes/", "changes", _("Changes"), moved=ledger.moved(almanac.calendar_id))
-    yield frame.page("subscribe/", "subscribe", _("Subscribe"), **_subscribe(edition))
-    yield frame.page("embed/", "embed", _("Put this calendar on your site"), **_embed(edition))
-    yield frame.page("reading/", "reading", _("How to read these pages"))
+        yield page("differences/", "differences", _("Why it is another day elsewhere"), **_differences(edition))
+    yield page("changes/", "changes", _("Changes"), moved=ledger.moved(almanac.calendar_id))
+    yield page("subscribe/", "subscribe", _("Subscribe"), **_subscribe(edition))
+    yield page("embed/", "embed", _("Put this calendar on your site"), **_embed(imprint))
+    yield page("reading/", "reading", _("How to read these pages"))
     for one in (*own_pages(edition), *notices):
-        yield frame.page(one.path, "own", one.title, one=one, body=_clean(one))
+        yield page(one.path, "own", one.title, one=one, body=Later(_clean, one))
     if notices:
-        yield frame.page("notices/", "notices", _("Notices"), notices=notices)
-    if edition.is_main and not edition.tree:
-        yield Page("404.html", "missing", _("No such page"), frame.common)
+        yield page("notices/", "notices", _("Notices"), notices=notices)
+    if edition.is_main and not imprint.tree:
+        yield Page("404.html", "missing", _("No such page"), frame)
 
 
-class _Frame:
-    """What every page of a calendar is given."""
-
-    def __init__(self, edition: Edition, editions: Sequence[Edition]) -> None:
-        almanac = edition.almanac
-        self.base = edition.base
-        self.common = {
-            "edition": edition,
-            "almanac": almanac,
-            "base": edition.base,
-            "feeds": edition.feeds,
-            "calendars": [(one.base, one.name) for one in editions],
-            "languages": [
-                (code, tree(edition.site, code), Language(code)) for code in edition.site.all_languages
-            ],
-            "civil_years": civil_years(almanac),
-            "years": range(almanac.months[0].year, almanac.months[-1].year + 1),
-            "own_pages": own_pages(editions[0]),
-            "has_notices": bool(own_notices(editions[0])),
-            "month_path": month_path,
-            "evening_path": evening_path,
-            "fasting_path": fasting_path,
-            "next_fasting": _next_fasting(almanac),
-            "month_of": edition.month_of.__getitem__,
-            "reach": pictures.reach,
-        }
-
-    def page(self, folder: str, template: str, title: str, **given: object) -> Page:
-        return Page(f"{self.base}{folder}index.html", template, title, {**self.common, **given})
+def _frame(edition: Edition, editions: Sequence[Edition]) -> Frame:
+    almanac, site = edition.almanac, edition.almanac.site
+    main = editions[0]
+    return Frame(
+        imprint=edition.imprint,
+        base=edition.imprint.base,
+        feeds=edition.imprint.feeds,
+        region=almanac.region,
+        observances=almanac.observances,
+        calendars=tuple((one.imprint.base, one.imprint.name) for one in editions),
+        languages=tuple((code, tree(site, code), Language(code)) for code in site.all_languages),
+        civil_years=civil_years(almanac),
+        years=range(almanac.months[0].year, almanac.months[-1].year + 1),
+        own_pages=tuple((one.path, one.title, one.written.language) for one in own_pages(main)),
+        has_notices=bool(own_notices(main)),
+        has_others=bool(almanac.others),
+        fasting_years=tuple(table.month.year for table in almanac.fasting),
+        next_fasting=_next_fasting(almanac),
+    )
 
 
 def _clean(one: Shown) -> Markup:
@@ -130,29 +122,21 @@ def _clean(one: Shown) -> Markup:
     return Markup(one.html())
 
 
-def month_path(month: Month) -> str:
-    return f"{month.year}/{month_slug(month.month)}/"
-
-
-def evening_path(evening: Evening) -> str:
-    return f"evenings/{evening.on.isoformat()}/"
-
-
-def fasting_path(month: Month) -> str:
-    return f"fasting/{month.year}/"
-
-
-def _home(almanac: Almanac) -> dict[str, object]:
+def _home(edition: Edition) -> dict[str, object]:
+    almanac = edition.almanac
     today = almanac.as_of
     current = next((month for month in almanac.months if month.starts <= today <= month.ends), None)
     coming = [one for one in almanac.occurrences if one.ends >= today]
+    coming = [one for one in coming if "main" in one.tags][:6] or coming[:6]
+    next_evening = _next_evening(almanac)
     return {
         "today": today,
         "current": current,
         "lunar_day": (today - current.starts).days + 1 if current else None,
-        "coming": [one for one in coming if "main" in one.tags][:6] or coming[:6],
+        "coming": coming,
+        "entries": _entries(edition, coming),
         "next_month": next((month for month in almanac.months if month.starts > today), None),
-        "next_evening": _next_evening(almanac),
+        "next_evening": next_evening and next_evening.on,
     }
 
 
@@ -160,82 +144,128 @@ def _next_evening(almanac: Almanac) -> Evening | None:
     return next((evening for evening in almanac.evenings if evening.on >= almanac.as_of), None)
 
 
-def _next_fasting(almanac: Almanac) -> Month | None:
-    """The present or next month of fasting that has a table, or else the last."""
+def _next_fasting(almanac: Almanac) -> int | None:
+    """The year of the present or next month of fasting that has a table, or else the last."""
     months = [table.month for table in almanac.fasting]
-    return next((month for month in months if month.ends >= almanac.as_of), months[-1] if months else None)
+    coming = [month for month in months if month.ends >= almanac.as_of]
+    return (coming[0] if coming else months[-1]).year if months else None
+
+
+def _entries(edition: Edition, shown: Iterable[Occurrence]) -> Mapping[str, Entry]:
+    return {one.key: edition.entry(one.key) for one in shown}
+
+
+def _names(edition: Edition) -> dict[str, str]:
+    """The names of the region's places."""
+    return {place: edition.imprint.say(value.name) for place, value in edition.almanac.places.items()}
 
 
 def _fasting(edition: Edition, table: FastingMonth) -> dict[str, object]:
     return {
         "table": table,
         "month": table.month,
-        "declared": edition.site.fasting,
-        "names": {place: edition.say(value.name) for place, value in edition.almanac.places.items()},
-        "noted": _noted(edition.almanac, edition.ledger, month_key(table.month.year, table.month.month)),
-        "tables": [one.month for one in edition.almanac.fasting],
+        "declared": edition.almanac.site.fasting,
+        "names": _names(edition),
+        "noted": _noted(edition, month_key(table.month.year, table.month.month)),
     }
 
 
-def _year(almanac: Almanac, year: int, language: Language) -> dict[str, object]:
-    months = [month for month in almanac.months if month.year == year]
+def _year(edition: Edition, year: int) -> dict[str, object]:
+    almanac, language = edition.almanac, edition.language
+    months = tuple(month for month in almanac.months if month.year == year)
+    drifting = tuple((month.year, month.starts) for month in almanac.months if month.month == 9)
     return {
         "year": year,
         "months": months,
-        "strip": svg(pictures.margins_strip(months, language)),
+        "strip": Later(_drawn, pictures.margins_strip, months, language),
         "found": [one for one in almanac.occurrences if one.year == year and "main" in one.tags],
-        "drift": svg(pictures.seasons(almanac, 9, language)),
+        "drift": Later(_drawn, pictures.seasons, drifting, 9, language),
     }
 
 
-def _month(almanac: Almanac, ledger: Ledger, index: int) -> dict[str, object]:
+def _drawn(picture: Callable[..., str], *given: object) -> Markup:
+    return svg(picture(*given))
+
+
+def _civil(edition: Edition, year: int) -> dict[str, object]:
+    almanac = edition.almanac
+    months = tuple(one for one in almanac.months if one.starts.year <= year <= one.ends.year)
+    main = tuple(one for one in almanac.occurrences if one.starts.year == year and "main" in one.tags)
+    return {
+        "year": year,
+        "today": almanac.as_of if almanac.as_of.year == year else None,
+        "civil_months": Later(civil_months, months, main, year, edition.language.first_weekday),
+    }
+
+
+def _month(edition: Edition, index: int) -> dict[str, object]:
+    almanac = edition.almanac
     month = almanac.months[index]
+    first, last = month.starts, month.ends
+    near = tuple(one for one in almanac.occurrences if one.ends >= first and one.starts <= last)
+    today = almanac.as_of if first <= almanac.as_of <= last else None
     return {
         "month": month,
-        "before": almanac.months[index - 1] if index else None,
-        "after": almanac.months[index + 1] if index + 1 < len(almanac.months) else None,
-        "evening": almanac.evenings[index],
-        "cells": _cells(almanac, month),
+        "before": _name(almanac.months[index - 1]) if index else None,
+        "after": _name(almanac.months[index + 1]) if index + 1 < len(almanac.months) else None,
+        "evening_on": almanac.evenings[index].on,
+        "cells": Later(_cells, month.starts, month.length, near, today, almanac.site.also),
         "superseded": almanac.superseded.get(month.ordinal, ()),
-        "noted": _noted(almanac, ledger, month_key(month.year, month.month)),
+        "noted": _noted(edition, month_key(month.year, month.month)),
         "also": [TITLES[calendar] for calendar in almanac.site.also],
     }
 
 
-def _cells(almanac: Almanac, month: Month) -> list[Cell]:
-    days = [month.starts + timedelta(days=offset) for offset in range(month.length)]
-    near = [one for one in almanac.occurrences if one.ends >= month.starts and one.starts <= month.ends]
+def _name(month: Month) -> Name:
+    return Name(month.year, month.month)
+
+
+def _cells(
+    starts: date, length: int, near: Sequence[Occurrence], today: date | None, also: Sequence[OtherCalendar]
+) -> list[Cell]:
+    days = [starts + timedelta(days=offset) for offset in range(length)]
 
     def on(day: date) -> tuple[Occurrence, ...]:
         return tuple(one for one in near if one.starts <= day <= one.ends)
     return [
-        Cell(
-            number, day, on(day), day == almanac.as_of,
-            tuple(in_calendar(day, calendar) for calendar in almanac.site.also),
-        )
+        Cell(number, day, on(day), day == today, tuple(in_calendar(day, calendar) for calendar in also))
         for number, day in enumerate(days, 1)
     ]
 
 
-def _differences(almanac: Almanac, language: Language) -> dict[str, object]:
+def _observance(edition: Edition, name: str) -> dict[str, object]:
+    almanac = edition.almanac
+    found = [one for one in almanac.occurrences if one.observance == name]
+    return {
+        "observance": almanac.observances[name],
+        "found": found,
+        "entries": _entries(edition, found),
+        "notes": [entry for one in found if (entry := _noted(edition, one.key))],
+    }
+
+
+def _differences(edition: Edition) -> dict[str, object]:
+    almanac, language = edition.almanac, edition.language
     shown = [other.beside for other in almanac.others]
     rows = []
     for index, month in enumerate(almanac.months):
         theirs = [one.months[index].starts for one in shown]
-        rows.append((month, [(day, (day - month.starts).days) for day in theirs]))
+        rows.append((_name(month), month.starts, [(day, (day - month.starts).days) for day in theirs]))
     feasts = [one for one in almanac.occurrences if "main" in one.tags and not one.night]
     return {
+        "ours": almanac.method.title,
         "others": almanac.others,
-        "agreements": [
-            (name, svg(pictures.agreement(other.long_run, name, language)))
-            for other in almanac.others if other.long_run is not None
-            for name in [language.name(other.beside.method.title)]
-        ],
+        "agreements": Later(_agreements, almanac.others, language),
         "rows": rows,
-        "feasts": [
-            (one, [(other, _shift(other, one)) for other in shown]) for one in feasts
-        ],
+        "feasts": [(one, [_shift(other, one) for other in shown]) for one in feasts],
     }
+
+
+def _agreements(others: Sequence[Other], language: Language) -> list[tuple[str, Markup]]:
+    runs: list[tuple[str, LongRun]] = [
+        (language.name(other.beside.method.title), other.long_run) for other in others if other.long_run is not None
+    ]
+    return [(name, svg(pictures.agreement(run, name, language))) for name, run in runs]
 
 
 def _shift(beside: Beside, one: Occurrence) -> int:
@@ -243,21 +273,19 @@ def _shift(beside: Beside, one: Occurrence) -> int:
     return next((d.days for d in beside.differences if (d.ours.year, d.ours.month) == (one.year, one.month)), 0)
 
 
-def _evening(edition: Edition, evening: Evening) -> dict[str, object]:
+def _evening(edition: Edition, index: int) -> dict[str, object]:
     almanac, language = edition.almanac, edition.language
-    names = {place: edition.say(value.name) for place, value in almanac.places.items()}
-    index = almanac.evenings.index(evening)
+    evening, names = almanac.evenings[index], _names(edition)
+    zones = {place: value.zone for place, value in almanac.places.items()}
+    chart = edition.charts.of(index) if edition.charts is not None else None
     return {
         "evening": evening,
         "month": evening.month,
         "names": names,
-        "zones": {place: value.zone for place, value in almanac.places.items()},
-        "horizons": [
-            (names[place], svg(drawn)) for place, value in almanac.places.items()
-            if (drawn := pictures.horizon(evening.at[place], value.zone, names[place], language))
-        ],
-        "maps": _maps(edition, evening),
-        "before": almanac.months[index - 1] if index else None,
+        "zones": zones,
+        "horizons": Later(_horizons, evening.at, zones, names, language),
+        "maps": chart and Later(_maps, chart, language, edition.imprint.say(almanac.region.name)),
+        "before": _name(almanac.months[index - 1]) if index else None,
         "coming": evening.on >= almanac.as_of,
         "elsewhere": [
             (language.name(other.beside.method.title), other.beside.months[index].starts) for other in almanac.others
@@ -265,12 +293,18 @@ def _evening(edition: Edition, evening: Evening) -> dict[str, object]:
     }
 
 
-def _maps(edition: Edition, evening: Evening) -> dict[str, object] | None:
-    chart, language = edition.charts.get(evening.on), edition.language
-    if chart is None:
-        return None
+def _horizons(
+    at: Mapping[str, Row], zones: Mapping[str, ZoneInfo], names: Mapping[str, str], language: Language
+) -> list[tuple[str, Markup]]:
+    """The western horizon at each place where there is one to draw."""
+    drawn = ((names[place], pictures.horizon(at[place], zone, names[place], language)) for place, zone in zones.items())
+    return [(name, svg(picture)) for name, picture in drawn if picture]
+
+
+def _maps(charted: maps.Charted, language: Language, region: str) -> dict[str, object]:
+    chart = charted.chart
     return {
-        "world": svg(maps.world_map(chart, language, edition.say(edition.almanac.region.name))),
+        "world": svg(maps.world_map(chart, language, region)),
         "region": svg(maps.region_map(chart, language)),
         "key": [(svg(swatch), name) for swatch, name in maps.key(language)],
         "told": maps.told(chart, language),
@@ -278,16 +312,16 @@ def _maps(edition: Edition, evening: Evening) -> dict[str, object] | None:
 
 
 def _subscribe(edition: Edition) -> dict[str, object]:
-    _ = edition.language.gettext
+    _, imprint = edition.language.gettext, edition.imprint
     feeds = [
-        _Feed(edition, "observances.ics", _("Observances"), _("Named days, nights and runs of days.")),
-        _Feed(edition, "months.ics", _("First days of the months"), _("One entry for each lunar month.")),
-        _Feed(edition, "evenings.ics", _("Evenings for observers"),
+        _Feed(imprint, "observances.ics", _("Observances"), _("Named days, nights and runs of days.")),
+        _Feed(imprint, "months.ics", _("First days of the months"), _("One entry for each lunar month.")),
+        _Feed(imprint, "evenings.ics", _("Evenings for observers"),
               _("Each 29th evening at each place, from sunset to moonset.")),
     ]
-    some = [_Feed(edition, f"tags/{tag}.ics", tag, "") for tag in tags(edition)]
+    some = [_Feed(imprint, f"tags/{tag}.ics", tag, "") for tag in tags(edition)]
     places = edition.almanac.places if edition.almanac.fasting else {}
-    fasting = [_Feed(edition, f"fasting/{place}.ics", edition.say(one.name), "") for place, one in places.items()]
+    fasting = [_Feed(imprint, f"fasting/{place}.ics", imprint.say(one.name), "") for place, one in places.items()]
     return {"subscriptions": feeds, "by_tag": some, "fasting": fasting, "schemas": list(schemas())}
 
 
@@ -295,14 +329,14 @@ def _subscribe(edition: Edition) -> dict[str, object]:
 class _Feed:
     """A feed to subscribe to."""
 
-    edition: Edition
+    imprint: Imprint
     name: str
     title: str
     about: str
 
     @property
     def address(self) -> str:
-        return self.edition.feed(self.name)
+        return self.imprint.feed(self.name)
 
     @property
     def webcal(self) -> str:
@@ -312,16 +346,16 @@ class _Feed:
     @property
     def qr(self) -> Markup:
         """Dark on light whatever the page's colours, with the quiet zone that readers need (ISO/IEC 18004)."""
-        title = self.edition.language.gettext("QR code: %(address)s") % {"address": self.webcal}
+        title = self.imprint.language.gettext("QR code: %(address)s") % {"address": self.webcal}
         made = segno.make(self.webcal, error="m", micro=False)
         return svg(made.svg_inline(scale=4, border=4, light="#fff", dark="#000", title=title, omitsize=True,
                                    svgclass="qr", lineclass=None))
 
 
-def _embed(edition: Edition) -> dict[str, object]:
-    _ = edition.language.gettext
-    script, frame = (edition.site_path(f"embed/{edition.base}{edition.language.code}{end}") for end in (".js", ".html"))
-    link = f'<a href="{escape(edition.page())}">{escape(edition.name)}</a>'
+def _embed(imprint: Imprint) -> dict[str, object]:
+    stem = imprint.site_path(f"embed/{imprint.base}{imprint.language.code}")
+    script, frame = f"{stem}.js", f"{stem}.html"
+    link = f'<a href="{escape(imprint.page())}">{escape(imprint.name)}</a>'
     return {
         "script": script,
         "frame": frame,
@@ -329,15 +363,16 @@ def _embed(edition: Edition) -> dict[str, object]:
             f'<script async src="{escape(script)}"></script>\n<moonwrit-dates count="5">{link}</moonwrit-dates>'
         ),
         "frame_text": (
-            f'<iframe src="{escape(frame)}" title="{escape(edition.name)}" width="100%" height="360" '
+            f'<iframe src="{escape(frame)}" title="{escape(imprint.name)}" width="100%" height="360" '
             'loading="lazy" style="border:0"></iframe>'
         ),
     }
 
 
-def _noted(almanac: Almanac, ledger: Ledger, key: str) -> Entry | None:
+def _noted(edition: Edition, key: str) -> Entry | None:
     """The last change of a published date, while it is to be pointed out."""
-    entry = ledger.current.get((almanac.calendar_id, key))
+    almanac = edition.almanac
+    entry = edition.ledger.current.get((almanac.calendar_id, key))
     if entry is None or entry.was is None:
         return None
     return entry if almanac.as_of - entry.at.date() <= timedelta(days=NOTED_DAYS) else None

@@ -13,7 +13,6 @@ from math import acos, asin, atan2, ceil, copysign, cos, degrees, floor, log10, 
 from typing import NamedTuple
 from zoneinfo import ZoneInfo
 
-from moonwrit.almanac import Almanac
 from moonwrit.policy import Margin, Month, Standing
 from moonwrit.policy.conditions import EDGE_SHARE
 from moonwrit.policy.differ import LongRun
@@ -354,8 +353,8 @@ _ROUND = 33
 """Lunar years in which a month goes once round the seasons, nearly."""
 
 
-def seasons(almanac: Almanac, month: int, language: Language) -> str:
-    """The drift of one lunar month through the civil year: its first days over the years of the calendar, and on
+def seasons(known: Sequence[tuple[int, date]], month: int, language: Language) -> str:
+    """The drift of one lunar month through the civil year: the years known and its first days in them, and on
     by the mean lunar year through a whole round of the seasons."""
     _ = language.gettext
     size, centre, radius = 360, 180, 128
@@ -368,26 +367,25 @@ def seasons(almanac: Almanac, month: int, language: Language) -> str:
         parts.append(_line("grid", *at(civil / 12, radius), *at(civil / 12, radius + 8)))
         x, y = at((civil + 0.5) / 12, radius + 22)
         parts.append(_text(x, y + 5, language.short_civil_month(date(2025, civil + 1, 1)), "tick", "middle"))
-    known = [one for one in almanac.months if one.month == month]
-    start = known[0].starts.timetuple().tm_yday - 1
+    start = known[0][1].timetuple().tm_yday - 1
     for later in range(_ROUND):
         days = start + later * _LUNAR_YEAR_DAYS
         if later < len(known):
-            days = known[later].starts.timetuple().tm_yday - 1
+            days = known[later][1].timetuple().tm_yday - 1
         x, y = at(days / _SEASONS_DAYS, radius - 10 - later * 2.4)
         kind, r = ("disc", 4.5) if later < len(known) else ("ring", 3)
         parts.append(f'<circle class="mark {kind}" cx="{x:.1f}" cy="{y:.1f}" r="{r}"/>')
         if later in {0, len(known) - 1, _ROUND - 1}:
             x, y = at(days / _SEASONS_DAYS, radius - 34 - later * 2.4)
-            parts.append(_text(x, y + 5, language.digits(known[0].year + later), "name", "middle"))
+            parts.append(_text(x, y + 5, language.digits(known[0][0] + later), "name", "middle"))
     names = {
-        "month": language.month(month), "first": language.digits(known[0].year),
-        "last": language.digits(known[0].year + _ROUND - 1),
+        "month": language.month(month), "first": language.digits(known[0][0]),
+        "last": language.digits(known[0][0] + _ROUND - 1),
     }
     told = [
         _("The civil year as a ring; from %(first)s to %(last)s the first day of %(month)s moves once round it, each "
           "year about eleven days earlier.") % names,
-        *(f"{language.digits(one.year)}: {language.long_date(one.starts)}." for one in known),
+        *(f"{language.digits(year)}: {language.long_date(starts)}." for year, starts in known),
     ]
     title = _("The first day of %(month)s moves through the seasons") % names
     return _svg(size, size, title, " ".join(told), "seasons", parts)

@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from contextlib import contextmanager
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, fields
 from datetime import datetime
 from pathlib import Path
 from traceback import extract_tb
@@ -27,16 +27,52 @@ from jinja2.bccache import Bucket
 from jinja2.nodes import EvalContext
 from markupsafe import Markup, escape
 
-from moonwrit.content.models import Site, in_language
+from moonwrit.content.models import Observance, Region, Site, in_language
 from moonwrit.content.own import Own
 from moonwrit.errors import ContentError
 from moonwrit.publish import labels, words
-from moonwrit.publish.edition import tree
+from moonwrit.publish.edition import Imprint, evening_path, fasting_path, month_path, tree
 from moonwrit.publish.language import Language
+from moonwrit.publish.pictures import reach
 from moonwrit.publish.sandbox import Sandbox
 from moonwrit.resources import themes_folder
 
 THEME = "moonwrit"
+
+
+@dataclass(frozen=True, slots=True)
+class Frame:
+    """What every page of a calendar is given. ``calendars``: folder and name; ``languages``: code, tree and language;
+    ``own_pages``: path, title and language; ``next_fasting``: of ``fasting_years`` the present or next."""
+
+    imprint: Imprint
+    base: str
+    feeds: str
+    region: Region
+    observances: Mapping[str, Observance]
+    calendars: tuple[tuple[str, str], ...]
+    languages: tuple[tuple[str, str, Language], ...]
+    civil_years: range
+    years: range
+    own_pages: tuple[tuple[str, str, str], ...]
+    has_notices: bool
+    has_others: bool
+    fasting_years: tuple[int, ...]
+    next_fasting: int | None
+
+
+class Later:
+    """A value of a page that is made when the page is: ``make`` with what it is given."""
+
+    def __init__(self, make: Callable[..., object], *given: object) -> None:
+        self._make, self._given = make, given
+
+    @property
+    def digested(self) -> object:
+        return self._make, self._given
+
+    def make(self) -> object:
+        return self._make(*self._given)
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,7 +82,8 @@ class Page:
     path: str
     template: str
     title: str
-    given: dict[str, Any] = field(default_factory=dict)
+    frame: Frame | None = None
+    given: Mapping[str, object] = field(default_factory=dict)
     has_sheet: bool = False
 
     @property
@@ -91,7 +128,9 @@ class Renderer:
     """
 
     def __init__(self, site: Site, language: Language, own: Own | None = None) -> None:
-        own = own or Own()
+        # Pages and notices are given to their own pages, not to all.
+        own = Own(own.look, own.logo, theme=own.theme) if own else Own()
+        self._of = (site, language, own)
         self.up = "../" if tree(site, language.code) else ""
         self.theme = own.theme
         self.environment: Environment = (Environment if own.theme is None else Sandbox)(
@@ -125,20 +164,27 @@ class Renderer:
             clock=lambda iso, zone: language.clock(datetime.fromisoformat(iso).astimezone(zone)),
             outcomes=labels.OUTCOMES,
             aids=labels.AIDS,
+            month_path=month_path, evening_path=evening_path, fasting_path=fasting_path, reach=reach,
             own=own, logo_alt=_logo_alt(own, site, language),
         )
 
-    def text(self, template: str, given: dict[str, Any]) -> bytes:
+    @property
+    def digested(self) -> object:
+        return self._of
+
+    def text(self, template: str, given: Mapping[str, object]) -> bytes:
         """A plain text, not escaped."""
         return self._made(template, given)
 
-    def sitemap(self, pages: Sequence[Page]) -> bytes:
+    def sitemap(self, folders: Sequence[str]) -> bytes:
         """``sitemap.xml`` (sitemaps.org 0.9), each page with its other languages."""
-        return self._made("sitemap.xml", {"pages": pages})
+        return self._made("sitemap.xml", {"folders": folders})
 
     def render(self, page: Page) -> bytes:
+        frame = page.frame
         return self._made(f"pages/{page.template}.html", {
-            **page.given,
+            **({one.name: getattr(frame, one.name) for one in fields(frame)} if frame else {}),
+            **{name: value.make() if isinstance(value, Later) else value for name, value in page.given.items()},
             "page": page,
             "url": lambda path: (page.root + path) or "./",
             "top": lambda path: (page.root + self.up + path) or "./",

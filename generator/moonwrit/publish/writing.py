@@ -13,21 +13,44 @@ import sys
 from collections.abc import Iterator, Mapping
 from contextlib import contextmanager, suppress
 from pathlib import Path, PurePosixPath
+from types import MappingProxyType
+from typing import Any
 
 from moonwrit.errors import RequestError
 
 MARKER = ".moonwrit"
 _MARKER_TEXT = "This folder was built by moonwrit and is replaced whole at every build.\n"
 _KEPT = ".gitkeep"
+_NONE: Mapping[str, Any] = MappingProxyType({})
 
 
-def put_in_place(files: Mapping[str, bytes], output: Path, marker: str = _MARKER_TEXT) -> None:
-    """Make ``output`` hold exactly ``files`` (relative path with slashes -> content), and the text of the ``marker``.
+Stamp = tuple[int, int, int]
+"""What tells a file from one that was written later under its name: inode, size, and time of change in nanoseconds."""
+
+
+class ChangedMeanwhileError(Exception):
+    """A file that was to be kept is no longer the same: another build was put in place first."""
+
+
+def stamp(file: Path) -> Stamp | None:
+    """None where there is no such file."""
+    try:
+        found = file.lstat()
+    except OSError:
+        return None
+    return found.st_ino, found.st_size, found.st_mtime_ns
+
+
+def put_in_place(
+    files: Mapping[str, bytes], output: Path, marker: str = _MARKER_TEXT, kept: Mapping[str, Stamp] = _NONE
+) -> dict[str, Stamp]:
+    """Make ``output`` hold exactly ``files`` (relative path with slashes -> content), what is ``kept`` of the old site,
+    and the text of the ``marker``. Returns the stamp of each file.
 
     A ``.gitkeep`` that was there stays. Raises RequestError where the folder is not ours, where a path would leave
-    it, or where it cannot be written; the old site is then untouched.
+    it, or where it cannot be written, and ChangedMeanwhileError; the old site is then untouched.
     """
-    for path in files:
+    for path in (*files, *kept):
         parts = PurePosixPath(path).parts
         if not parts or path.startswith("/") or ".." in parts or "\\" in path or "\0" in path:
             raise RequestError(f'the page "{path}" would lie outside the output folder', "give it another name")
@@ -35,7 +58,7 @@ def put_in_place(files: Mapping[str, bytes], output: Path, marker: str = _MARKER
     try:
         output.parent.mkdir(parents=True, exist_ok=True)
         with _alone_in(output.parent):
-            _swap(files, output, marker)
+            return _swap(files, output, marker, kept)
     except OSError as fault:
         raise RequestError(
             f"{output} cannot be written ({fault.strerror or fault})",
@@ -60,15 +83,21 @@ def _alone_in(folder: Path) -> Iterator[None]:
         os.close(opened)
 
 
-def _swap(files: Mapping[str, bytes], output: Path, marker: str) -> None:
+def _swap(
+    files: Mapping[str, bytes], output: Path, marker: str, kept: Mapping[str, Stamp]
+) -> dict[str, Stamp]:
     new, old = (output.parent / f".{output.name}.moonwrit-{word}" for word in ("new", "old"))
     _settle(output, new, old)
     _refuse_what_is_not_ours(output)
     try:
         _write(files, new, marker, keep=(output / _KEPT).exists())
+        _keep(kept, output, new)
+        # Before the swap: afterwards another build may be in its place.
+        stamps = {path: found for path in (*files, *kept) if (found := stamp(new / path)) is not None}
         if output.exists():
             os.replace(output, old)
         os.replace(new, output)
+        return stamps
     finally:
         _settle(output, new, old)
 
@@ -104,3 +133,16 @@ def _write(files: Mapping[str, bytes], new: Path, marker: str, *, keep: bool) ->
         target = new / path
         target.parent.mkdir(parents=True, exist_ok=True)
         target.write_bytes(files[path])
+
+
+def _keep(kept: Mapping[str, Stamp], output: Path, new: Path) -> None:
+    """The same file in the old site and the new one, until the old one is removed; a copy where that cannot be."""
+    for path in sorted(kept):
+        target = new / path
+        target.parent.mkdir(parents=True, exist_ok=True)
+        if stamp(output / path) != kept[path]:
+            raise ChangedMeanwhileError(path)
+        try:
+            os.link(output / path, target)
+        except OSError:
+            shutil.copy2(output / path, target)
