@@ -36,7 +36,7 @@ MAX_EFFORT = 2_000_000_000
 """Markdown looks from each bracket, line and star to the end of its paragraph, and from each paragraph to the first:
 the sum of the lengths of paragraphs, each times these signs as they weigh, and of what was before. A list of 300 links
 without an empty line makes most of this; all of it takes some five seconds."""
-_WEIGHTS = (("[", 200), ("\n", 20), ("*", 1), ("_", 1), ("`", 1), ("\\", 1))
+_WEIGHTS = (("[", 200), ("\n", 20), *((sign, 1) for sign in "*_`\\&"))
 MAX_DEPTH = 40
 """Of lists and quotations in one another, as elements."""
 FIRST_YEAR, LAST_YEAR = 1900, 2199
