@@ -4,10 +4,13 @@ from __future__ import annotations
 
 import re
 from collections.abc import Iterable
-from pathlib import Path
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from pathlib import Path
 
 # What would begin a line, command a terminal, turn the writing, or not be writable: names of files may hold all of it.
-_UNSAID = re.compile(r"[\x00-\x1f\x7f-\x9f\u2028-\u202e\u2066-\u2069\ud800-\udfff]")
+_UNSAID = r"[\x00-\x1f\x7f-\x9f\u2028-\u202e\u2066-\u2069\ud800-\udfff]"
 
 
 class MoonwritError(Exception):
@@ -41,7 +44,7 @@ class ContentError(MoonwritError):
 
     def __str__(self) -> str:
         where = f"{self.file}:{self.line}" if self.line else f"{self.file}"
-        return _UNSAID.sub("\ufffd", f"{where}: {super().__str__()}")
+        return re.sub(_UNSAID, "\ufffd", f"{where}: {super().__str__()}")
 
 
 class UsageError(MoonwritError):

@@ -1,0 +1,5 @@
+"""``python -m moonwrit.cli``"""
+
+from moonwrit.cli import main
+
+main()
