@@ -12,7 +12,7 @@ import pytest
 from moonwrit.content.record import Decision
 from moonwrit.policy import FIXED, Margin, Method, Month, NamedPlace, method
 from moonwrit.policy.conditions import Scoped
-from moonwrit.policy.evening import evening_at
+from moonwrit.policy.evening import evening_at, evenings_at
 from moonwrit.policy.scopes import AtPlaces
 from moonwrit.policy.uncertainty import delta_t_error_s, uncertainty_note
 from moonwrit.policy.walk import Era
@@ -276,6 +276,36 @@ def test_after_a_decision_the_window_is_what_the_rules_leave_open() -> None:
             assert window(found) == (min(earliest, found.starts), max(latest, found.starts))
             spans.add(((window(found)[0] - start).days, (window(found)[1] - start).days))
     assert spans == {(29, 30), (29, 29), (30, 30)}  # open, and closed by the Moon on either side
+
+
+@pytest.mark.parametrize(("place", "dark"), [(MELBOURNE, False), (TROMSO, True)])
+def test_the_windows_of_thirty_years_are_reckoned_from_one_month_to_the_next(place: NamedPlace, dark: bool) -> None:
+    """By the same rules, with the sunsets of each conjunction's date and its neighbours; where the Sun does not set
+    around it, the month is planned for as late as the walk looks. Now and then a sunset follows the conjunction within
+    the hour, and counts."""
+    months = method("yallop-b", None, place).months(1430, 1460)
+    conjunctions = [month.evidence.conjunction or datetime.max for month in months]
+    around = [[moment.date() + timedelta(days=n) for n in (-1, 0, 1, 2)] for moment in conjunctions]
+    rows = evenings_at([day for days in around for day in days], [place])
+    sunsets = [row["sunset_utc"] for (row,) in rows]
+    soon = without = 0
+    earliest, latest = window(months[0])
+    for index in range(1, len(months)):
+        month, conjunction, days = months[index], conjunctions[index], around[index]
+        after = [
+            (day, datetime.fromisoformat(at) - conjunction)
+            for day, at in zip(days, sunsets[4 * index : 4 * index + 4], strict=True)
+            if isinstance(at, str) and datetime.fromisoformat(at) > conjunction
+        ]
+        first = (after[0][0] if after else days[-1]) + timedelta(days=1)
+        soon += bool(after) and after[0][1] < timedelta(hours=1)
+        without += not after
+        earliest = max(earliest + timedelta(days=29), first)
+        latest = max(earliest, min(latest + timedelta(days=30), first + timedelta(days=2)))
+        earliest, latest = min(earliest, month.starts), max(latest, month.starts)
+        assert window(month) == (earliest, latest)
+    assert soon > 3
+    assert (without > 3) == dark
 
 
 def window(month: Month) -> tuple[date, date]:
