@@ -308,6 +308,15 @@ def test_the_windows_of_thirty_years_are_reckoned_from_one_month_to_the_next(pla
     assert (without > 3) == dark
 
 
+def test_the_first_month_of_a_policy_leaves_nothing_open_and_the_next_at_most_a_day() -> None:
+    """There is nothing before it from which it might have come out otherwise."""
+    since_1447 = Era((1447 - 1) * 12, Scoped(criterion("yallop-1997").rule(), MELBOURNE.scope()))
+    first, second, *_ = Method("here", "Here", "", "record", eras=(since_1447,)).months(1447, 1447)
+    assert window(first) == (first.starts, first.starts)
+    assert first.starts + timedelta(days=29) <= window(second)[0]
+    assert window(second)[1] <= first.starts + timedelta(days=30)
+
+
 def window(month: Month) -> tuple[date, date]:
     assert month.window is not None
     return month.window
