@@ -11,7 +11,7 @@ import pytest
 
 from moonwrit.content.record import Decision
 from moonwrit.policy import FIXED, Margin, Method, Month, NamedPlace, method
-from moonwrit.policy.conditions import Scoped
+from moonwrit.policy.conditions import Either, Every, Scoped
 from moonwrit.policy.evening import evening_at, evenings_at
 from moonwrit.policy.scopes import AtPlaces
 from moonwrit.policy.uncertainty import delta_t_error_s, uncertainty_note
@@ -306,6 +306,23 @@ def test_the_windows_of_thirty_years_are_reckoned_from_one_month_to_the_next(pla
         assert window(month) == (earliest, latest)
     assert soon > 3
     assert (without > 3) == dark
+
+
+def test_tests_at_two_places_joined_plan_as_one_test_at_both() -> None:
+    """Melbourne, and Reykjavik ten hours later: between their sunsets comes the conjunction of many a month, so that
+    a month may begin in one of them on an evening on which it may not in every one."""
+    rule = criterion("yallop-1997").rule()
+    both = AtPlaces(("Melbourne", "Reykjavik"), Places.of([MELBOURNE.row, REYKJAVIK.row]))
+    parts = (Scoped(rule, MELBOURNE.scope()), Scoped(rule, REYKJAVIK.scope()))
+    planned = []
+    for joined, needed in ((Every(parts), 1.0), (Either(parts), 0.0)):
+        months, others = (
+            Method("here", "Here", "", "record", eras=(Era(0, condition),)).months(1440, 1446)
+            for condition in (joined, Scoped(rule, replace(both, needed=needed)))
+        )
+        planned.append([(month.starts, window(month)) for month in months])
+        assert planned[-1] == [(month.starts, window(month)) for month in others]
+    assert sum(every != either for every, either in zip(*planned, strict=True)) > 20
 
 
 def test_the_first_month_of_a_policy_leaves_nothing_open_and_the_next_at_most_a_day() -> None:
