@@ -4,6 +4,7 @@
 #   make test        style, types, layers, tests
 #   make judges      the programs that the tests are held against, where the machine lacks them
 #   make fuzz        hostile input for SECONDS=300, guided by coverage; installs atheris
+#   make mutants     do the tests notice a change? SAMPLE=50 of them, of FILE=generator/moonwrit/...py, against TESTS
 #   make benchmarks  tests/benchmarks/, alone on the machine
 #   make catalogues  the texts of theme and code brought into the message catalogues
 #   make lock        requirements.lock again, after a change of pyproject.toml
@@ -13,7 +14,7 @@ PYTHON ?= python3
 BIN := .venv/bin
 READY := .venv/.ready
 
-.PHONY: site test judges fuzz benchmarks catalogues lock clean
+.PHONY: site test judges fuzz mutants benchmarks catalogues lock clean
 
 site: $(READY)
 	$(BIN)/moonwrit publish
@@ -32,6 +33,10 @@ SECONDS ?= 300
 fuzz: $(READY)
 	$(BIN)/python -m pip install --quiet 'atheris>=2.3,<4'
 	$(BIN)/python tests/fuzz/guided.py $(SECONDS)
+
+SAMPLE ?= 50
+mutants: $(READY)
+	$(BIN)/python tests/mutants.py $(FILE) $(SAMPLE) $(TESTS)
 
 benchmarks: $(READY)
 	$(BIN)/python tests/benchmarks/run.py
