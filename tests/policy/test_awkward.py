@@ -326,10 +326,15 @@ def test_tests_at_two_places_joined_plan_as_one_test_at_both() -> None:
 
 
 def test_the_first_month_of_a_policy_leaves_nothing_open_and_the_next_at_most_a_day() -> None:
-    """There is nothing before it from which it might have come out otherwise."""
+    """There is nothing before it from which it might have come out otherwise: it begins on the first evening that
+    meets the test, and no rule about the month before had to do with it."""
     since_1447 = Era((1447 - 1) * 12, Scoped(criterion("yallop-1997").rule(), MELBOURNE.scope()))
     first, second, *_ = Method("here", "Here", "", "record", eras=(since_1447,)).months(1447, 1447)
     assert window(first) == (first.starts, first.starts)
+    assert (first.basis, first.evidence.met, first.evidence.evening, first.evidence.notes) == (
+        "calculated", True, first.eve, ())
+    assert first.margin.day_share is not None
+    assert first.margin.day_share > 0
     assert first.starts + timedelta(days=29) <= window(second)[0]
     assert window(second)[1] <= first.starts + timedelta(days=30)
 
