@@ -13,6 +13,7 @@ from moonwrit.content.record import Decision
 from moonwrit.errors import RequestError
 from moonwrit.policy import Method, Month, NamedPlace, method
 from moonwrit.policy.conditions import Either, Every, Scoped
+from moonwrit.policy.evening import evening_at
 from moonwrit.policy.walk import Era
 from moonwrit.sky.comparison import Comparison, age, lag
 
@@ -152,6 +153,19 @@ def test_each_month_is_asked_by_the_condition_of_its_era() -> None:
     assert found is not None
     assert [margin for _, margin in found] == [month.margin for month in reversed(months)]
     assert asked.starts(1447, 1448) == tuple(month.starts for month in months)
+
+
+def test_what_is_found_on_an_evening_does_not_depend_on_how_far_the_conjunction_is() -> None:
+    """From two weeks before the conjunction to two weeks after it, the circumstances are those that the evening has
+    by itself; only the age is reckoned from the conjunction of the month that is asked for."""
+    asked = method("yallop-b", None, HERE)
+    month = asked.months(1447, 1447)[5]
+    evenings = [month.evidence.evening + timedelta(days=days) for days in range(-14, 15)]
+    together = asked.on_evenings([(month.ordinal, evening) for evening in evenings])
+    assert together is not None
+    for evening, (evidence, _) in zip(evenings, together, strict=True):
+        alone = {**evening_at(evening, [HERE])[0], "age_h": None}
+        assert {name: alone[name] for name in evidence.circumstances} == {**evidence.circumstances, "age_h": None}
 
 
 def test_years_before_the_first_era_cannot_be_asked() -> None:
