@@ -88,7 +88,8 @@ def read(file: Path) -> Catalog:
         if others := {name for name in _CHARSET.findall(head) if name.lower() != "utf-8"}:
             raise ValueError(f"its charset is {min(others)}, not utf-8")
         catalogue = read_po(BytesIO(data), locale=file.stem.replace("-", "_"), charset="utf-8", abort_invalid=True)
-        forms = [c2py(catalogue.plural_expr)(number) for number in range(1000)]
+        form_of = c2py(catalogue.plural_expr)
+        forms = [form_of(number) for number in range(1000)]
     except UnicodeDecodeError as fault:
         line = data.count(b"\n", 0, fault.start) + 1
         raise ContentError(file, line, "a character is not UTF-8", "save the file as UTF-8") from None

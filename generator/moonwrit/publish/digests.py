@@ -40,7 +40,8 @@ class Digests:
         return _hashed(self._all(values))
 
     def _all(self, values: Iterable[object]) -> str:
-        return ",".join([self._text(value) for value in values])
+        known = self._known
+        return ",".join([known[id(one)][1] if id(one) in known else self._text(one) for one in values])
 
     def _text(self, value: Any) -> str:
         kind: type = type(value)
@@ -48,9 +49,6 @@ class Digests:
             return f"{kind.__name__} {value!r}"
         if kind is tuple or kind is list:
             return f"({self._all(value)})"
-        known = self._known.get(id(value))
-        if known is not None:
-            return known[1]
         text = f"{kind.__module__}.{kind.__qualname__} {_hashed(self._all(_parts_of(kind)(value))).hex()}"
         self._known[id(value)] = (value, text)
         return text

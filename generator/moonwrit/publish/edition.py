@@ -113,6 +113,11 @@ class Edition:
         return self.ledger.entry(self.almanac.calendar_id, key)
 
     @cached_property
+    def events(self) -> dict[str, Piece]:
+        """Events of the feeds by key: most stand in several."""
+        return {}
+
+    @cached_property
     def month_of(self) -> Mapping[tuple[int, int], Month]:
         """The month by its year and number."""
         return {(month.year, month.month): month for month in self.almanac.months}

@@ -119,8 +119,11 @@ _Dated = tuple[Entry, Piece]
 
 def _occurrences(edition: Edition, wanted: Callable[[Occurrence], bool]) -> Iterable[_Dated]:
     for one in filter(wanted, edition.almanac.occurrences):
-        entry, month = edition.entry(one.key), edition.month_of[one.year, one.month]
-        yield entry, edition.piece(_occurrence, edition.imprint, one, month, entry)
+        entry = edition.entry(one.key)
+        if one.key not in edition.events:
+            month = edition.month_of[one.year, one.month]
+            edition.events[one.key] = edition.piece(_occurrence, edition.imprint, one, month, entry)
+        yield entry, edition.events[one.key]
 
 
 def _occurrence(imprint: Imprint, one: Occurrence, month: Month, entry: Entry) -> bytes:

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from datetime import datetime
 from typing import Any
 
@@ -14,20 +13,27 @@ from moonwrit.publish import words
 from moonwrit.publish.basis import json_bytes, utc
 from moonwrit.publish.edition import Edition, Imprint
 from moonwrit.publish.icalendar import was_sentence
-from moonwrit.publish.pieces import Parts
+from moonwrit.publish.pieces import Parts, plain
+
+_BETWEEN = plain(b",\n")
+_END = plain(b"\n ]\n}\n")
 
 
 def calendar_feed(edition: Edition) -> Parts:
-    """All-day events: a start without a zone, a duration in days, ``showWithoutTime``."""
-    dated = tuple(
+    """All-day events: a start without a zone, a duration in days, ``showWithoutTime``. The parts are a head with no
+    event in it yet, the events, and the end."""
+    imprint = edition.imprint
+    dated = [
         (one, edition.month_of[one.year, one.month], edition.entry(one.key))
         for one in edition.almanac.occurrences if one.year >= edition.first_rolling_year
-    )
-    return (edition.piece(_group, edition.imprint, dated, edition.last_of(entry for _, _, entry in dated)),)
+    ]
+    events = [piece for one in dated for piece in (_BETWEEN, edition.piece(_event, imprint, *one))]
+    head = edition.piece(_group, imprint, edition.last_of(entry for _, _, entry in dated))
+    return (head, *events[1:], _END)
 
 
-def _group(imprint: Imprint, dated: Sequence[tuple[Occurrence, Month, Entry]], updated: datetime) -> bytes:
-    return json_bytes({
+def _group(imprint: Imprint, updated: datetime) -> bytes:
+    empty = json_bytes({
         "@type": "Group",
         "uid": imprint.uid("calendar"),
         "prodId": f"-//Moonwrit//Moonwrit {__version__}//EN",
@@ -35,11 +41,12 @@ def _group(imprint: Imprint, dated: Sequence[tuple[Occurrence, Month, Entry]], u
         "title": imprint.name,
         "locale": imprint.language.code,
         "source": imprint.feed("calendar.json"),
-        "entries": [_event(imprint, *one) for one in dated],
+        "entries": [],
     })
+    return empty.removesuffix(b"]\n}\n") + b"\n"
 
 
-def _event(imprint: Imprint, one: Occurrence, month: Month, entry: Entry) -> dict[str, Any]:
+def _event(imprint: Imprint, one: Occurrence, month: Month, entry: Entry) -> bytes:
     language = imprint.language
     event: dict[str, Any] = {
         "@type": "Event",
@@ -66,4 +73,4 @@ def _event(imprint: Imprint, one: Occurrence, month: Month, entry: Entry) -> dic
     }
     if one.tags:
         event["keywords"] = dict.fromkeys(one.tags, True)
-    return event
+    return b"  " + json_bytes(event).removesuffix(b"\n").replace(b"\n", b"\n  ")

@@ -77,7 +77,7 @@ def pages(edition: Edition, editions: Sequence[Edition]) -> Iterator[Page]:
     for table in almanac.fasting:
         title = _("Fasting days of %(month)s") % {"month": words.month_title(table.month, language)}
         yield page(fasting_path(table.month.year), "fasting", title, **_fasting(edition, table))
-    yield page("places/", "places", _("Places"), places=almanac.places, next_evening=_next_evening(almanac))
+    yield page("places/", "places", _("Places"), **_places(almanac))
     yield page(
         "policy/", "policy", _("The policy"), method=almanac.method, asked=asked_in_words(almanac.method, language),
         places=almanac.places,
@@ -149,6 +149,11 @@ def _next_fasting(almanac: Almanac) -> int | None:
     months = [table.month for table in almanac.fasting]
     coming = [month for month in months if month.ends >= almanac.as_of]
     return (coming[0] if coming else months[-1]).year if months else None
+
+
+def _places(almanac: Almanac) -> dict[str, object]:
+    evening = _next_evening(almanac)
+    return {"places": almanac.places, "next_evening": evening and evening.on, "at": evening and evening.at}
 
 
 def _entries(edition: Edition, shown: Iterable[Occurrence]) -> Mapping[str, Entry]:

@@ -191,7 +191,7 @@ class Before(Mapping[str, bytes]):
 
     def _stands(self, path: str) -> bool:
         assert self._output is not None
-        return stamp(self._output / path) == self._files[path][0]
+        return stamp(os.path.join(self._output, path)) == self._files[path][0]
 
     def note(self, output: Path, files: Files, made: Mapping[bytes, bytes], stamps: Mapping[str, Stamp]) -> None:
         """Note what each file that now stands in the folder was made of."""

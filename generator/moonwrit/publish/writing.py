@@ -10,7 +10,7 @@ from __future__ import annotations
 import os
 import shutil
 import sys
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterable, Iterator, Mapping
 from contextlib import contextmanager, suppress
 from pathlib import Path, PurePosixPath
 from types import MappingProxyType
@@ -32,10 +32,10 @@ class ChangedMeanwhileError(Exception):
     """A file that was to be kept is no longer the same: another build was put in place first."""
 
 
-def stamp(file: Path) -> Stamp | None:
+def stamp(file: str) -> Stamp | None:
     """None where there is no such file."""
     try:
-        found = file.lstat()
+        found = os.lstat(file)
     except OSError:
         return None
     return found.st_ino, found.st_size, found.st_mtime_ns
@@ -93,7 +93,7 @@ def _swap(
         _write(files, new, marker, keep=(output / _KEPT).exists())
         _keep(kept, output, new)
         # Before the swap: afterwards another build may be in its place.
-        stamps = {path: found for path in (*files, *kept) if (found := stamp(new / path)) is not None}
+        stamps = {path: found for path in (*files, *kept) if (found := stamp(os.path.join(new, path))) is not None}
         if output.exists():
             os.replace(output, old)
         os.replace(new, output)
@@ -129,20 +129,30 @@ def _write(files: Mapping[str, bytes], new: Path, marker: str, *, keep: bool) ->
     (new / MARKER).write_text(marker, encoding="utf-8")
     if keep:
         (new / _KEPT).touch()
-    for path in sorted(files):
-        target = new / path
-        target.parent.mkdir(parents=True, exist_ok=True)
-        target.write_bytes(files[path])
+    for target, path in _targets(files, new):
+        with open(target, "wb") as file:
+            file.write(files[path])
 
 
 def _keep(kept: Mapping[str, Stamp], output: Path, new: Path) -> None:
     """The same file in the old site and the new one, until the old one is removed; a copy where that cannot be."""
-    for path in sorted(kept):
-        target = new / path
-        target.parent.mkdir(parents=True, exist_ok=True)
-        if stamp(output / path) != kept[path]:
+    for target, path in _targets(kept, new):
+        source = os.path.join(output, path)
+        if stamp(source) != kept[path]:
             raise ChangedMeanwhileError(path)
         try:
-            os.link(output / path, target)
+            os.link(source, target)
         except OSError:
-            shutil.copy2(output / path, target)
+            shutil.copy2(source, target)
+
+
+def _targets(paths: Iterable[str], new: Path) -> Iterator[tuple[str, str]]:
+    """Where each path comes to lie, in a folder that is there."""
+    there = set()
+    for path in sorted(paths):
+        target = os.path.join(new, path)
+        folder = os.path.dirname(target)
+        if folder not in there:
+            os.makedirs(folder, exist_ok=True)
+            there.add(folder)
+        yield target, path

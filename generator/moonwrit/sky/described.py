@@ -17,9 +17,12 @@ _STATES = {Crossing.CROSSES: "sets", Crossing.STAYS_ABOVE: "stays above", Crossi
 
 def instant(sky: Ephemeris, tt: float) -> datetime | None:
     """TT -> UTC to the whole second; None for an instant that does not happen."""
-    if not np.isfinite(tt):
+    return _utc(float(sky.ut(np.array([tt]))[0]))
+
+
+def _utc(ut: float) -> datetime | None:
+    if not np.isfinite(ut):
         return None
-    ut = float(sky.ut(np.array([tt]))[0])
     return datetime(1, 1, 1, tzinfo=UTC) + timedelta(seconds=round((ut - 1721425.5) * 86400))
 
 
@@ -65,17 +68,19 @@ def described(c: Circumstances) -> Callable[[tuple[int, int, int]], dict[str, fl
         "odeh_v": number(v.of(c), 4),
     }
 
+    sunset_ut, moonset_ut, best_ut = (c.sky.ut(tt) for tt in (c.sunset_tt, c.moonset_tt, c.best_tt))
+
     def at(index: tuple[int, int, int]) -> dict[str, float | str | None]:
-        def moment(tt: Array) -> str | None:
-            return iso(instant(c.sky, float(tt[index])))
+        def moment(ut: Array) -> str | None:
+            return iso(_utc(float(ut[index])))
 
         values = ((name, float(column[index]), places) for name, (column, places) in numbers.items())
         return {
-            "sunset_utc": moment(c.sunset_tt),
+            "sunset_utc": moment(sunset_ut),
             "sun": _STATES[Crossing(int(c.sunset_state[index]))],
-            "moonset_utc": moment(c.moonset_tt),
+            "moonset_utc": moment(moonset_ut),
             "moon": _STATES[Crossing(int(c.moonset_state[index]))],
-            "best_time_utc": moment(c.best_tt),
+            "best_time_utc": moment(best_ut),
             **{
                 name: round(value, places) + 0.0 if np.isfinite(value) else None for name, value, places in values
             },
