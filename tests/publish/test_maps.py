@@ -17,7 +17,8 @@ from moonwrit.policy.evening import evening_at
 from moonwrit.policy.everywhere import Asked, asked_everywhere
 from moonwrit.policy.published import published
 from moonwrit.publish.language import ENGLISH, Language
-from moonwrit.publish.maps import WIDTH, Box, Chart, Charts, key, region_map, told, world_map
+from moonwrit.publish.maps import Chart, Charts, key, region_map, told, world_map
+from moonwrit.publish.plate import WIDTH, Box
 from moonwrit.resources import starter_folder
 from moonwrit.sky.land import Outline
 
