@@ -216,5 +216,16 @@ def test_dates_to_which_the_month_may_still_come_are_there_without_a_number() ->
     assert not table(starts, "Melbourne").has_other_days
 
 
+def test_each_month_of_fasting_has_a_table_whatever_stands_before_it() -> None:
+    """Two years of months in their order, and in each the ninth; without a window there is no date beside its own."""
+    starts = date(2026, 2, 19)
+    months = [month(starts + 30 * n * DAY, number=1 + (n + 7) % 12) for n in range(24)]
+    found = fasting_months(Fasting(dawn_depression=18), months, {"Melbourne": PLACES["Melbourne"]})
+    assert [one.month for one in found] == [months[1], months[13]]
+    for one in found:
+        assert [day.on for day in one.at["Melbourne"]] == [one.month.starts + n * DAY for n in range(30)]
+        assert not one.has_other_days
+
+
 def test_other_months_have_no_table() -> None:
     assert fasting_months(Fasting(dawn_depression=18), [month(date(2027, 3, 11), number=10)], PLACES) == ()

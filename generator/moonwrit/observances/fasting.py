@@ -86,8 +86,8 @@ def fasting_months(
 def _reach(month: Month, after: Month | None) -> tuple[date, date]:
     """From the earliest first day to the latest last one."""
     first = month.window[0] if month.window else month.starts
-    latest_after = after.window[1] if after and after.window else month.ends + timedelta(days=1)
-    return min(first, month.starts), max(month.ends, latest_after - timedelta(days=1))
+    last = after.window[1] - timedelta(days=1) if after and after.window else month.ends
+    return min(first, month.starts), max(month.ends, last)
 
 
 def _moments(
