@@ -155,6 +155,15 @@ def test_each_month_is_asked_by_the_condition_of_its_era() -> None:
     assert asked.starts(1447, 1448) == tuple(month.starts for month in months)
 
 
+def test_first_days_alone_are_asked_for_within_the_same_years() -> None:
+    """As with months, a year that cannot be computed is refused, at either end."""
+    asked = method("yallop-b", None, HERE)
+    assert asked.starts(1318, 1318) == tuple(month.starts for month in asked.months(1318, 1318))
+    for first, last, said in [(1317, 1320, "1317"), (1474, 1476, "1476")]:
+        with pytest.raises(RequestError, match=f"the year {said} was asked for"):
+            asked.starts(first, last)
+
+
 def test_what_is_found_on_an_evening_does_not_depend_on_how_far_the_conjunction_is() -> None:
     """From two weeks before the conjunction to two weeks after it, the circumstances are those that the evening has
     by itself; only the age is reckoned from the conjunction of the month that is asked for."""
