@@ -122,13 +122,10 @@ class Method:
         chosen = [min(same, key=lambda month: month.starts) for same in zip(*per_authority, strict=True)]
         titles = {authority.name: authority.title for authority in self.adopts}
         out = []
-        for index, month in enumerate(chosen):
+        for month in chosen:
             note = Note("Adopted from %(authority)s.", {"authority": titles[month.policy]})
-            length = month.length
-            if index + 1 < len(chosen):
-                length = (chosen[index + 1].starts - month.starts).days
             out.append(replace(
-                month, basis="adopted", standing=self.standing, policy=self.name, length=length,
+                month, basis="adopted", standing=self.standing, policy=self.name,
                 evidence=replace(month.evidence, notes=(note, *month.evidence.notes)),
             ))
         return tuple(out)
@@ -176,7 +173,7 @@ def _by_decision(month: Month, decision: Decision | None) -> Month:
 
 
 def _overridden(months: tuple[Month, ...], decisions: Mapping[int, Decision]) -> tuple[Month, ...]:
-    """Months reckoned ahead, single ones moved by decisions; lengths follow."""
+    """Months reckoned ahead, single ones moved by decisions; lengths follow from where the next one begins."""
     moved = [_by_decision(month, decisions.get(month.ordinal)) for month in months]
     end = months[-1].ends + timedelta(days=1)
     starts = [*(month.starts for month in moved[1:]), end]
