@@ -82,6 +82,19 @@ def test_weights_say_how_much_a_place_counts() -> None:
     assert replace(weighed, needed=0.6).decide(rule, asked).latitude_deg[0, 0] == 10
 
 
+@pytest.mark.parametrize(("needed", "share"), [(0.0, [3, 3, -2, 2]), (0.5, [2, 3, -2, 2]), (1.0, [1, 2, -3, 2])])
+def test_each_evening_is_judged_by_the_places_that_have_a_sunset_then(needed: float, share: list[float]) -> None:
+    """Four evenings at three places, with none, one or two of them left out; met or not."""
+    asked, nothing = evenings(1447, 4), np.nan
+    shares = np.array([[1, 2, 3], [3, nothing, 2], [nothing, -2, -3], [nothing, nothing, 2]])
+    by_evening = Quantity("made up", "", "", 1.0, lambda c: shares[np.searchsorted(asked.day[:, 0], c.day)])
+    found = replace(places(10, 20, 30), needed=needed).decide(Comparison(by_evening, ">=", 0), asked)
+    assert found.share[:, 0].tolist() == share
+    for row, place in enumerate(found.place[:, 0]):
+        assert shares[row, place] == share[row]
+        assert found.latitude_deg[row, 0] == (10, 20, 30)[place]
+
+
 def test_without_any_sunset_nothing_is_met() -> None:
     found = places(85, 89).decide(Comparison(LATITUDE, ">=", 15), evenings(1447, 1))
     assert np.isnan(found.share).all()

@@ -90,7 +90,7 @@ class AtPlaces:
             place = np.where(gone, place + len(self.names), place)
         weights = np.ones(len(self.names)) if self.weights is None else self.weights
         usable = np.where(np.isnan(share), 0.0, weights)
-        order = np.argsort(-np.nan_to_num(share, nan=-np.inf), axis=-1, kind="stable")
+        order = np.argsort(-share, axis=-1, kind="stable")  # what is not a number comes last
         reached = np.cumsum(np.take_along_axis(usable, order, -1), axis=-1)
         goal = self.needed * usable.sum(axis=-1, keepdims=True)
         # The first place, best share first, with which the weight that is needed is reached.
@@ -104,7 +104,6 @@ class AtPlaces:
             np.where(enough.any(axis=-1), chosen(share), np.nan),
             chosen(latitude), chosen(longitude), chosen(place).astype(np.int64),
         )
-
 
     def met(self, rule: Rule, evenings: Evenings) -> Flags:
         return met(self.decide(rule, evenings).share)
