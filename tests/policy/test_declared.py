@@ -177,7 +177,89 @@ def test_conjunction_before_midnight_is_the_old_rule_of_makkah(declared: Declare
     assert declared(text).starts(1400, 1419) == method("umm-al-qura").starts(1400, 1419)
 
 
+AGED = " and age (since the geocentric conjunction, at sunset) > 0 h"
+IN_WORDS = {
+    "altitude, frame: geocentric, more_than: 3": "altitude (geocentric, centre, airless, at sunset) > 3 deg",
+    "altitude, frame: topocentric, air: airless, at_most: 3":
+        f"altitude (topocentric, centre, airless, at sunset) <= 3 deg{AGED}",
+    "altitude, frame: topocentric, air: refracted, limb: upper, at: best-time, less_than: 3":
+        f"altitude (topocentric, upper limb, with refraction, at best time) < 3 deg{AGED}",
+    "altitude, frame: topocentric, air: airless, limb: lower, at_least: 3":
+        "altitude (topocentric, lower limb, airless, at sunset) >= 3 deg",
+    "elongation, frame: topocentric, at_least: 7": f"elongation (topocentric, at sunset) >= 7 deg{AGED}",
+    "elongation, frame: geocentric, at: best-time, more_than: 7":
+        f"elongation (geocentric, at best time) > 7 deg{AGED}",
+    "arc-of-vision, frame: geocentric, at_least: 10": "arc of vision (geocentric, airless, at best time) >= 10 deg",
+    "arc-of-vision, frame: topocentric, at: sunset, at_least: 10":
+        "arc of vision (topocentric, airless, at sunset) >= 10 deg",
+    "relative-azimuth, frame: topocentric, at_most: 9": f"relative azimuth (topocentric, at best time) <= 9 deg{AGED}",
+    "relative-azimuth, frame: geocentric, at: sunset, at_least: 9":
+        f"relative azimuth (geocentric, at sunset) >= 9 deg{AGED}",
+    "width, frame: topocentric, at_least: 0.2": f"width (topocentric, at best time) >= 0.2 arcmin{AGED}",
+    "width, frame: geocentric, at: sunset, at_least: 0.2": f"width (geocentric, at sunset) >= 0.2 arcmin{AGED}",
+    "lag, more_than: 0": "lag (moonset minus sunset) > 0 min",
+    "age, at_least: 8": "age (since the geocentric conjunction, at sunset) >= 8 h",
+    "age, less_than: 8": f"age (since the geocentric conjunction, at sunset) < 8 h{AGED}",
+    "illuminated-percent, at_least: 1": f"illuminated part (geocentric, at sunset) >= 1 %{AGED}",
+    "illuminated-percent, at: best-time, at_least: 1": f"illuminated part (geocentric, at best time) >= 1 %{AGED}",
+    "conjunction, before_hour_ut: 12": "conjunction before the hour (before 12:00 UT of the date) > 0 h",
+    "conjunction, before_hour_ut: 12.5": "conjunction before the hour (before 12:30 UT of the date) > 0 h",
+    "conjunction, before_dawn: 15": "conjunction before dawn (Sun 15 deg below the horizon) > 0 h",
+}
+
+
+@pytest.mark.parametrize("test", IN_WORDS)
+def test_a_threshold_asks_for_what_it_says(declared: Declared, test: str) -> None:
+    """Quantity, frame, limb, air, moment and sign; and the conjunction past, where the old Moon could meet it too."""
+    asked = declared(f"test: {{quantity: {test}}}\nwhere: {{place: melbourne}}")
+    assert asked.in_words == f"{IN_WORDS[test]}, at Melbourne"
+
+
+def test_the_old_moon_is_kept_out_where_every_part_lets_it_in_or_any_does(declared: Declared) -> None:
+    """All parts must hold: one that the old Moon fails is enough. Any part may: one that it meets is too much."""
+    new, old = "{quantity: lag, at_least: 40}", "{quantity: elongation, frame: geocentric, at_least: 8}"
+    for join, parts, kept_out in [
+        ("all", (new, old), False), ("all", (old, old), True), ("any", (new, old), True), ("any", (new, new), False),
+    ]:
+        words = declared(f"test: {{{join}: [{', '.join(parts)}]}}\nwhere: {{place: melbourne}}").in_words
+        assert words.endswith(f"{AGED}, at Melbourne") == kept_out
+
+
 # --- scopes ---------------------------------------------------------------------------------------
+
+EARTH = "anywhere on Earth between 60 S and 60 N"
+SCOPES = {
+    "{place: melbourne}": "at Melbourne",
+    "{any_of: [melbourne, perth]}": "at any of Melbourne, Perth",
+    "{every_of: all}": "at every one of Melbourne, Perth",
+    "{share: 0.5, of: all}": "at 50% at least of Melbourne, Perth",
+    "{share: 0.25, of_area: americas}": "over 25% at least of the area of the outline",
+    "{within: americas}": "anywhere inside the outline",
+    "{anywhere: earth}": EARTH,
+    "{anywhere: earth, before: {hour_ut: 24}}": f"{EARTH} before 24:00 UT of the date",
+    "{anywhere: earth, before: {hour_ut: 12.5}}": f"{EARTH} before 12:30 UT of the date",
+    "{anywhere: earth, before: {dawn_at: makkah}}": f"{EARTH} before the dawn there (Sun 18 deg down)",
+    "{anywhere: earth, before: {dawn_at: makkah, depression: 12}}": f"{EARTH} before the dawn there (Sun 12 deg down)",
+    "{shares_night_with: london}": f"{EARTH} before the dawn there (Sun 18 deg down)",
+}
+
+
+@pytest.mark.parametrize("where", SCOPES)
+def test_a_scope_is_where_it_says(declared: Declared, where: str) -> None:
+    asked = declared(f"test: {{quantity: lag, at_least: 45}}\nwhere: {where}")
+    assert asked.in_words == f"lag (moonset minus sunset) >= 45 min, {SCOPES[where]}"
+
+
+def test_a_lower_sun_at_dawn_is_an_earlier_deadline(declared: Declared) -> None:
+    """Anywhere whose sunset comes before the dawn at Makkah: at 18 degrees no month is earlier than at 6, and without
+    more words the dawn is that of 18."""
+    test, dawn = "test: {criterion: istanbul-5-8}\n", "where: {anywhere: earth, before: {dawn_at: makkah"
+    early, late, plain = (
+        declared(f"{test}{dawn}{more}}}}}").starts(1440, 1447) for more in (", depression: 18", ", depression: 6", "")
+    )
+    assert plain == early != late
+    assert all(one <= other for one, other in zip(late, early, strict=True))
+    assert declared(f"{test}where: {{shares_night_with: makkah}}").starts(1440, 1447) == plain
 
 
 def test_a_region_is_its_places(declared: Declared) -> None:
@@ -234,6 +316,56 @@ def test_a_declared_fallback_is_used_and_named(declared: Declared, fallback: str
             f"The Sun does not set at Tromsø on this date: judged at {named}, as the policy says."
         )
     assert {month.evidence.evening.month for month in moved} >= {6, 12}
+
+
+def test_a_published_policy_bears_the_names_that_the_community_gives_it(declared: Declared) -> None:
+    """Name, title, summary and who decides are its own; the source too, or else the published one."""
+    head = "mine:\n  name: Mine\n  decided_by: record\n"
+    plain = declared("published: istanbul-5-8\nplace: london", head)
+    published = method("istanbul-5-8", None, LONDON)
+    assert (plain.name, plain.title, plain.source, plain.summary, plain.decided_by) == (
+        "mine", "Mine", published.source, "", "record")
+    assert (plain.note, plain.rests_on, plain.in_words) == (published.note, published.rests_on, published.in_words)
+    told = declared("published: istanbul-5-8\nplace: london\nsource: Our book\nsummary: In short", head)
+    assert (told.source, told.summary) == ("Our book", "In short")
+    month = plain.months(1447, 1447)[0]
+    assert (month.policy, month.standing) == ("mine", "expected")
+
+
+@pytest.mark.parametrize(
+    "text",
+    ["test: {quantity: lag, at_least: 45}\nwhere: {place: london}", "arithmetic: {pattern: fatimid}",
+     "adopts: [umm-al-qura]"],
+)
+def test_a_policy_of_the_community_says_its_own_name_source_and_summary(declared: Declared, text: str) -> None:
+    """With what it asks as the only difference; without them it says nothing."""
+    told = declared(f"{text}\nsource: Our book\nsummary: In short")
+    plain = declared(text)
+    assert (plain.name, plain.title, plain.source, plain.summary, plain.decided_by) == (
+        "mine", "Mine", "", "", "calculation")
+    assert replace(told, source="", summary="").in_words == plain.in_words
+    assert (told.source, told.summary) == ("Our book", "In short")
+
+
+def test_a_policy_rests_on_every_criterion_that_it_names_once(declared: Declared) -> None:
+    """In the order written, wherever they stand."""
+    asked = declared("""\
+either:
+- test: {any: [{criterion: lag-48}, {all: [{quantity: age, more_than: 0}, {criterion: schoch-1930}]}]}
+  where: {place: london}
+- every:
+  - test: {criterion: lag-48}
+    where: {place: perth}
+  - test: {criterion: yallop-1997, accept: [A]}
+    where: {place: perth}
+""")
+    assert [each.name for each in asked.rests_on] == ["lag-48", "schoch-1930", "yallop-1997"]
+
+
+@pytest.mark.parametrize(("latitude", "named"), [("45", "45 N"), ("0.5", "0.5 N"), ("0", "0 N"), ("-45.5", "45.5 S")])
+def test_a_fallback_on_another_latitude_is_named_by_its_side(declared: Declared, latitude: str, named: str) -> None:
+    asked = declared("test: {criterion: lag-48}\nwhere: {place: tromso}\nfallback: {latitude: " + latitude + "}")
+    assert asked.in_words.endswith(f"at Tromsø (where the Sun does not set: {named} on the meridian of Tromsø)")
 
 
 # --- tables, and dates of others ------------------------------------------------------------------

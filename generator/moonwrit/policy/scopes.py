@@ -13,7 +13,7 @@ import numpy as np
 import numpy.typing as npt
 
 from moonwrit.sky import Array, Evenings, Places
-from moonwrit.sky.comparison import Rule, met
+from moonwrit.sky.comparison import Rule, clock, met
 from moonwrit.sky.land import Outline
 
 MAX_LATITUDE_DEG = 60.0
@@ -119,7 +119,7 @@ class Before:
 
     def __str__(self) -> str:
         if self.hour_ut is not None:
-            return f"before {self.hour_ut:g}:00 UT of the date"
+            return f"before {clock(self.hour_ut)} UT of the date"
         return f"before the dawn there (Sun {self.depression_deg:g} deg down)"
 
     def tt(self, evenings: Evenings) -> Array:

@@ -207,7 +207,13 @@ def conjunction_before_hour(hour: float) -> Quantity:
         return np.broadcast_to(gap, c.sunset_tt.shape)
 
     of_day = "of the day before" if hour < 0 else "of the date"
-    return Quantity("conjunction before the hour", f"before {hour % 24 or 24:g}:00 UT {of_day}", "h", 24.0, of)
+    return Quantity("conjunction before the hour", f"before {clock(hour % 24 or 24)} UT {of_day}", "h", 24.0, of)
+
+
+def clock(hour: float) -> str:
+    """12.5 -> 12:30"""
+    minutes = round(hour * 60)
+    return f"{minutes // 60}:{minutes % 60:02d}"
 
 
 def conjunction_before_dawn(depression_deg: float = 18.0) -> Quantity:
