@@ -250,6 +250,14 @@ def test_a_scope_is_where_it_says(declared: Declared, where: str) -> None:
     assert asked.in_words == f"lag (moonset minus sunset) >= 45 min, {SCOPES[where]}"
 
 
+@pytest.mark.parametrize("where", ["{share: 0.25, of_area: americas}", "{within: americas}"])
+def test_outlines_are_looked_at_every_half_degree(declared: Declared, where: str) -> None:
+    condition = declared(f"test: {{quantity: lag, at_least: 45}}\nwhere: {where}").eras[0].condition
+    assert isinstance(condition, Scoped)
+    assert isinstance(condition.scope, Within)
+    assert condition.scope.step_deg == 0.5
+
+
 def test_a_lower_sun_at_dawn_is_an_earlier_deadline(declared: Declared) -> None:
     """Anywhere whose sunset comes before the dawn at Makkah: at 18 degrees no month is earlier than at 6, and without
     more words the dawn is that of 18."""
