@@ -6,7 +6,7 @@ import os
 import shutil
 import subprocess
 import sys
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from dataclasses import replace
 from datetime import date
 from pathlib import Path
@@ -109,26 +109,40 @@ def test_another_day_is_another_site(desk: Desk) -> None:
         assert files(desk.output) == from_nothing(desk, now), now
 
 
-@pytest.mark.parametrize("damage", ["changed", "longer", "gone", "swapped", "note cut", "note of another program"])
-def test_what_is_not_as_it_was_built_is_built_again(desk: Desk, damage: str, monkeypatch: pytest.MonkeyPatch) -> None:
-    """Expected: whatever became of the site or of the note, a build mends it."""
+def test_what_is_not_as_it_was_built_is_built_again(desk: Desk, monkeypatch: pytest.MonkeyPatch) -> None:
+    """Expected: whatever became of the site or of the note, a build mends it; files that were for one user alone are
+    for all again, as new ones are, and as old as they were."""
+    desk.publish(NOON)
+    wanted = from_nothing(desk, NOON)
     page = desk.output / "1448/ramadan/index.html"
     text = page.read_bytes()
-    if damage == "changed":
-        page.write_bytes(text.replace(b"2027", b"2028"))
-    elif damage == "longer":
-        page.write_bytes(text + b"<!-- -->")
-    elif damage == "gone":
-        page.unlink()
-    elif damage == "swapped":
-        os.replace(desk.output / "1448/shawwal/index.html", page)
-    elif damage == "note cut":
-        (note,) = (desk.output.parent / "cache/sites").iterdir()
-        note.write_bytes(note.read_bytes()[:5000])
-    else:
-        monkeypatch.setattr(pieces, "_program_digest", lambda theme: "another")
+
+    def notes_are_cut() -> None:
+        for note in (desk.output.parent / "cache/sites").iterdir():
+            note.write_bytes(note.read_bytes()[:5000])
+
+    def all_are_for_one_alone() -> None:
+        for path in desk.output.rglob("*.html"):
+            path.chmod(0o600)
+
+    damages: list[Callable[[], object]] = [
+        lambda: page.write_bytes(text.replace(b"2027", b"2028")), lambda: page.write_bytes(text + b"<!-- -->"),
+        page.unlink, lambda: os.replace(desk.output / "1448/shawwal/index.html", page), notes_are_cut,
+        all_are_for_one_alone,
+    ]
+    for number, damage in enumerate(damages):
+        damage()
+        before = page.stat().st_mtime_ns if damage is all_are_for_one_alone else None
+        desk.publish(NOON)
+        assert files(desk.output) == wanted, number
+        modes = {path.stat().st_mode for path in desk.output.rglob("*") if path.is_file()}
+        assert modes == {(desk.output / MARKER).stat().st_mode}, number
+        assert before in (None, page.stat().st_mtime_ns)
+    held = inodes(desk.output)
+    monkeypatch.setattr(pieces, "_program_digest", lambda theme: "another")
     desk.publish(NOON)
-    assert files(desk.output) == from_nothing(desk, NOON)
+    assert files(desk.output) == wanted
+    assert not set(held.values()) & set(inodes(desk.output).values()), "another program keeps nothing"
 
 
 def test_many_processes_make_what_one_makes(desk: Desk, tmp_path: Path) -> None:
@@ -172,6 +186,31 @@ def test_a_site_that_another_build_put_in_place_is_not_mixed(desk: Desk, monkeyp
     monkeypatch.setattr(pieces.Before, "kept", meanwhile)
     desk.publish(NOON)
     assert files(desk.output) == wanted
+
+
+def test_a_site_that_goes_while_sheets_are_drawn_from_it_is_built_from_nothing(
+    desk: Desk, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Expected: the pages that were to be kept are gone when their sheets are drawn; the whole site is made then."""
+    monkeypatch.setattr(site, "sheet", _as_sheet)
+    desk.do(NOON, "publish", "--output", str(desk.output), "--pdf", "a4")
+    wanted = from_nothing(desk, NOON, "--pdf", "letter")
+    kept = pieces.Before.kept
+
+    def meanwhile(self: pieces.Before, files: pieces.Files) -> object:
+        found = kept(self, files)
+        shutil.rmtree(desk.output, ignore_errors=True)
+        return found
+
+    monkeypatch.setattr(pieces.Before, "kept", meanwhile)
+    desk.do(NOON, "publish", "--output", str(desk.output), "--pdf", "letter")
+    assert files(desk.output) == wanted
+    assert wanted["1448/ramadan/sheet.pdf"].startswith(b"letter <!doctype html>")
+
+
+def _as_sheet(path: str, contents: Mapping[str, bytes], paper: str) -> bytes:
+    """Quickly drawn, and of all that a sheet is made from."""
+    return paper.encode() + b" " + contents[path]
 
 
 def test_processes_end_with_the_one_that_was_asked(tmp_path: Path) -> None:

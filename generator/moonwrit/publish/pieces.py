@@ -21,7 +21,7 @@ from typing import Any
 
 from moonwrit import cache
 from moonwrit.publish.digests import SIZE, Digests
-from moonwrit.publish.writing import Stamp, stamp
+from moonwrit.publish.writing import ChangedMeanwhileError, Stamp, stamp
 from moonwrit.resources import program_files
 
 _WORTH_IT = 200
@@ -170,8 +170,10 @@ class Before(Mapping[str, bytes]):
         """Those of the pieces wanted that are in the files which stand."""
         found: dict[bytes, bytes] = {}
         for path, (_, parts) in self._files.items():
-            if any(key in wanted and key not in found for key, _ in parts) and self._stands(path):
-                content, at = self[path], 0
+            if not any(key in wanted and key not in found for key, _ in parts):
+                continue
+            if (content := self._content(path)) is not None:
+                at = 0
                 for key, length in parts:
                     if key in wanted:
                         found[key] = content[at:at + length]
@@ -179,9 +181,12 @@ class Before(Mapping[str, bytes]):
         return found
 
     def __getitem__(self, path: str) -> bytes:
-        if self._output is None or path not in self._files:
+        """Raises ChangedMeanwhileError where the file is not, or no longer, what was built."""
+        if path not in self._files:
             raise KeyError(path)
-        return (self._output / path).read_bytes()
+        if (content := self._content(path)) is None:
+            raise ChangedMeanwhileError(path)
+        return content
 
     def __iter__(self) -> Iterator[str]:
         return iter(self._files)
@@ -192,6 +197,15 @@ class Before(Mapping[str, bytes]):
     def _stands(self, path: str) -> bool:
         assert self._output is not None
         return stamp(os.path.join(self._output, path)) == self._files[path][0]
+
+    def _content(self, path: str) -> bytes | None:
+        """What stands, if it is what was built: another build may put its own there at any moment."""
+        assert self._output is not None
+        try:
+            with open(self._output / path, "rb") as file:
+                return file.read() if stamp(file.fileno()) == self._files[path][0] else None
+        except OSError:
+            return None
 
     def note(self, output: Path, files: Files, made: Mapping[bytes, bytes], stamps: Mapping[str, Stamp]) -> None:
         """Note what each file that now stands in the folder was made of."""

@@ -32,10 +32,10 @@ class ChangedMeanwhileError(Exception):
     """A file that was to be kept is no longer the same: another build was put in place first."""
 
 
-def stamp(file: str) -> Stamp | None:
-    """None where there is no such file."""
+def stamp(file: str | int) -> Stamp | None:
+    """Of a path, or of an open file; None where there is no such file."""
     try:
-        found = os.lstat(file)
+        found = os.fstat(file) if isinstance(file, int) else os.lstat(file)
     except OSError:
         return None
     return found.st_ino, found.st_size, found.st_mtime_ns
@@ -135,15 +135,24 @@ def _write(files: Mapping[str, bytes], new: Path, marker: str, *, keep: bool) ->
 
 
 def _keep(kept: Mapping[str, Stamp], output: Path, new: Path) -> None:
-    """The same file in the old site and the new one, until the old one is removed; a copy where that cannot be."""
+    """The same file in the old site and the new one, until the old one is removed; a copy, as old as the file, where
+    that cannot be, or where others may read and write the file than what is written now."""
+    access = _access(os.path.join(new, MARKER))
     for target, path in _targets(kept, new):
         source = os.path.join(output, path)
         if stamp(source) != kept[path]:
             raise ChangedMeanwhileError(path)
-        try:
-            os.link(source, target)
-        except OSError:
-            shutil.copy2(source, target)
+        if _access(source) == access:
+            with suppress(OSError):
+                os.link(source, target)
+                continue
+        shutil.copyfile(source, target)
+        os.utime(target, ns=(kept[path][2], kept[path][2]))
+
+
+def _access(file: str) -> tuple[int, int, int]:
+    found = os.lstat(file)
+    return found.st_mode, found.st_uid, found.st_gid
 
 
 def _targets(paths: Iterable[str], new: Path) -> Iterator[tuple[str, str]]:
