@@ -197,6 +197,20 @@ def test_uncertainty_grows_with_the_years_before_those_measured() -> None:
     assert errors == [0.1, 1.0, 2.0, 5.0, 20.0, 20.0]
 
 
+@pytest.mark.parametrize(
+    ("year", "error_s"),
+    [
+        (1600, 20.0), (1699, 20.0), (1700, 5.0), (1749, 5.0), (1750, 2.0), (1799, 2.0), (1800, 1.0), (1899, 1.0),
+        (1900, 0.1), (2026, 0.1), (2027, 0.1),
+        # by hand: 365.25 N sqrt(N x 0.058/3 x (1 + N/2500)) / 1000 with N = 2, 100 and 500 (the root of 11.6)
+        (2028, 0.1437), (2126, 51.792), (2526, 621.998),
+    ],
+)
+def test_uncertainty_of_single_years(year: int, error_s: float) -> None:
+    """The steps of the table stand at its years; from 2026 on the formula, but never less than 0.1 s."""
+    assert delta_t_error_s(year) == pytest.approx(error_s, rel=1e-4)
+
+
 @pytest.mark.parametrize("seconds", [0.0, 0.05, 0.19])
 @pytest.mark.parametrize("sign", [1, -1])
 def test_a_margin_within_two_errors_is_said_to_be_so(seconds: float, sign: int) -> None:
