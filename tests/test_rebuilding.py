@@ -243,6 +243,22 @@ def test_processes_end_with_the_one_that_was_asked(tmp_path: Path) -> None:
     assert left == []
 
 
+def test_an_interruption_while_processes_start_is_heard() -> None:
+    """Expected: one that comes within a fork, where Python would only print it, ends the build all the same."""
+    program = (
+        "import os, signal\n"
+        "from moonwrit.publish import pieces\n"
+        "os.register_at_fork(before=lambda: signal.raise_signal(signal.SIGINT))\n"
+        "files = {str(n): (pieces.Piece(n.to_bytes(4, 'big'), lambda: b'x'),) for n in range(2000)}\n"
+        "try:\n"
+        "    pieces.made(files, pieces.Before(None, None), 2)\n"
+        "except KeyboardInterrupt:\n"
+        "    print('interrupted')\n"
+    )
+    done = subprocess.run([sys.executable, "-c", program], capture_output=True, text=True, check=False, timeout=60)
+    assert (done.returncode, done.stdout, done.stderr) == (0, "interrupted\n", "")
+
+
 def _runs(pid: str) -> bool:
     try:
         return ") Z" not in Path(f"/proc/{pid}/stat").read_text()

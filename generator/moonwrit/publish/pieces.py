@@ -12,11 +12,13 @@ import signal
 import sys
 import warnings
 from collections.abc import Callable, Container, Iterator, Mapping, Sequence
+from contextlib import contextmanager
 from dataclasses import dataclass
 from hashlib import blake2b
 from multiprocessing import get_context
 from multiprocessing.connection import Connection, wait
 from pathlib import Path
+from threading import current_thread, main_thread
 from typing import Any
 
 from moonwrit import cache
@@ -90,15 +92,15 @@ def _by_many(missing: Sequence[Piece], processes: int) -> Iterator[tuple[bytes, 
     ends = [context.Pipe(duplex=False) for _ in range(processes)]
     readers = {reader for reader, _ in ends}
     workers = []
-    with warnings.catch_warnings():
-        # The threads of linear algebra are at rest, and the copy asks nothing of them that they hold.
-        warnings.simplefilter("ignore", DeprecationWarning)
-        for number, (_, writer) in enumerate(ends):
-            worker = context.Process(target=_work, args=(runs[number::processes], writer, readers), daemon=True)
-            worker.start()
-            writer.close()
-            workers.append(worker)
     try:
+        with _uninterrupted(), warnings.catch_warnings():
+            # The threads of linear algebra are at rest, and the copy asks nothing of them that they hold.
+            warnings.simplefilter("ignore", DeprecationWarning)
+            for number, (_, writer) in enumerate(ends):
+                worker = context.Process(target=_work, args=(runs[number::processes], writer, readers), daemon=True)
+                worker.start()
+                writer.close()
+                workers.append(worker)
         while readers:
             for reader in wait(list(readers)):
                 assert isinstance(reader, Connection)
@@ -113,6 +115,22 @@ def _by_many(missing: Sequence[Piece], processes: int) -> Iterator[tuple[bytes, 
         for worker in workers:
             worker.terminate()
             worker.join()
+
+
+@contextmanager
+def _uninterrupted() -> Iterator[None]:
+    """An interruption is heard afterwards: within a fork Python would print it and go on."""
+    if current_thread() is not main_thread():  # which alone hears of it
+        yield
+        return
+    heard = []
+    before = signal.signal(signal.SIGINT, lambda *_: heard.append(True))
+    try:
+        yield
+    finally:
+        signal.signal(signal.SIGINT, before)
+    if heard:
+        signal.raise_signal(signal.SIGINT)
 
 
 def _work(runs: Sequence[Sequence[Piece]], writer: Connection, readers: set[Connection]) -> None:
