@@ -24,8 +24,8 @@ Row = dict[str, float | str | None]
 def evening_at(on: date, places: Sequence[NamedPlace]) -> list[Row]:
     """One mapping of names with units for each place; instants are UTC.
 
-    The conjunction is the last one before the end of the next civil date. Raises RequestError for a date outside
-    the ephemeris.
+    The conjunction is the last one before the end of the next civil date, which is taken to half an hour. Raises
+    RequestError for a date outside the ephemeris.
     """
     return evenings_at([on], places)[0]
 
