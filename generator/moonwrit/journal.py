@@ -163,7 +163,7 @@ def append(folder: Path, added: Sequence[Entry]) -> None:
         return
     file = folder / FILE
     try:
-        file.parent.mkdir(parents=True, exist_ok=True)
+        file.parent.mkdir(exist_ok=True)
         before = file.read_bytes() if file.exists() else b""
         whole = before[: before.rfind(b"\n") + 1]
         text = "".join(_line(entry) + "\n" for entry in added).encode()
