@@ -61,12 +61,15 @@ def previewed(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Previewed]:
     (content.parent / "secret.txt").write_text("secret", encoding="utf-8")
     made = Previewed(content)
     stop = threading.Event()
-    thread = threading.Thread(target=serve, args=(content, 0, None, made.said.append, stop), daemon=True)
-    thread.start()
-    yield made
-    stop.set()
-    thread.join(30)
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setenv("MOONWRIT_CACHE", str(content.parent / "cache"))
+        thread = threading.Thread(target=serve, args=(content, 0, None, made.said.append, stop), daemon=True)
+        thread.start()
+        yield made
+        stop.set()
+        thread.join(30)
     assert not thread.is_alive()
+    assert list((content.parent / "cache/sites").iterdir()) == [], "nothing is kept of the folder that went"
 
 
 def test_the_site_is_served_with_its_types(previewed: Previewed) -> None:

@@ -48,6 +48,14 @@ def keep(kind: str, key: object, content: bytes, most: int | None = None) -> Non
                 old.unlink(missing_ok=True)
 
 
+def drop(kind: str, key: object) -> None:
+    """What nobody will ask for again."""
+    file = _file(kind, key)
+    if file is not None:
+        with suppress(OSError):
+            file.unlink()
+
+
 def _file(kind: str, key: object) -> Path | None:
     where = _folder()
     return None if where is None else where / kind / sha256(repr(key).encode()).hexdigest()
@@ -88,4 +96,4 @@ def _write(file: Path, content: bytes) -> None:
         aside.unlink(missing_ok=True)
 
 
-__all__ = ["keep", "kept", "recalled"]
+__all__ = ["drop", "keep", "kept", "recalled"]

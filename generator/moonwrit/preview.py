@@ -8,7 +8,8 @@ from __future__ import annotations
 import http.server
 import tempfile
 import threading
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
 from dataclasses import replace
 from datetime import date
 from functools import partial
@@ -76,21 +77,32 @@ def serve(
     """Serve and rebuild until ``stop`` is set or the user interrupts. Raises RequestError where the port is taken."""
     from watchfiles import watch
 
+    from moonwrit.publish.pieces import forget
+
     with tempfile.TemporaryDirectory(prefix="moonwrit-") as made:
         output = Path(made) / "site"
-        _try(folder, output, as_of, say)
         try:
-            server = http.server.ThreadingHTTPServer((HOST, port), partial(_Handler, directory=str(output)))
-        except OSError as fault:
-            raise RequestError(f"port {port} cannot be used ({fault.strerror})", "name another with --port") from None
-        threading.Thread(target=server.serve_forever, daemon=True).start()
-        say(f"http://{HOST}:{server.server_address[1]}/ shows {folder}; it is built again when a file changes")
-        try:
-            for _ in watch(folder, themes_folder(), stop_event=stop, raise_interrupt=False):
-                _try(folder, output, as_of, say)
+            _try(folder, output, as_of, say)
+            with _server(output, port) as server:
+                say(f"http://{HOST}:{server.server_address[1]}/ shows {folder}; it is built again when a file changes")
+                for _ in watch(folder, themes_folder(), stop_event=stop, raise_interrupt=False):
+                    _try(folder, output, as_of, say)
         finally:
-            server.shutdown()
-            server.server_close()
+            forget(output)
+
+
+@contextmanager
+def _server(output: Path, port: int) -> Iterator[http.server.ThreadingHTTPServer]:
+    try:
+        server = http.server.ThreadingHTTPServer((HOST, port), partial(_Handler, directory=str(output)))
+    except OSError as fault:
+        raise RequestError(f"port {port} cannot be used ({fault.strerror})", "name another with --port") from None
+    threading.Thread(target=server.serve_forever, daemon=True).start()
+    try:
+        yield server
+    finally:
+        server.shutdown()
+        server.server_close()
 
 
 def _try(folder: Path, output: Path, as_of: date | None, say: Callable[[str], None]) -> None:

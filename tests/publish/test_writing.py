@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import os
+import shutil
 import subprocess
 import sys
 import tempfile
@@ -200,3 +201,29 @@ def test_a_folder_that_cannot_be_written_is_one_message(name: str, read_only: Pa
     assert str(read_only / name) in str(caught.value)
     assert site(read_only / "site") == OLD
     assert [path.name for path in read_only.iterdir()] == ["site"]
+
+
+def test_a_site_that_was_made_read_only_is_replaced_and_leaves_nothing() -> None:
+    """Expected: twice, by a user whom modes bind; the old one goes, though its folders cannot be written."""
+    program = (
+        "import fcntl, os, sys\n"
+        "from pathlib import Path\n"
+        "from moonwrit.publish.writing import put_in_place\n"
+        "folder = Path(sys.argv[1])\n"
+        "if os.geteuid() == 0:\n"
+        "    os.chown(folder, 65534, 65534)\n"
+        "    os.seteuid(65534)\n"
+        "for text in (b'one', b'two', b'three'):\n"
+        "    put_in_place({'index.html': text, 'a/b/index.html': text}, folder / 'site')\n"
+        "    for path in (folder / 'site/a/b', folder / 'site/a', folder / 'site'):\n"
+        "        path.chmod(0o555)\n"
+    )
+    home = tempfile.mkdtemp()
+    try:
+        subprocess.run([sys.executable, "-c", program, home], check=True)
+        assert site(Path(home) / "site") == {"index.html": b"three", "a/b/index.html": b"three"}
+        assert [path.name for path in Path(home).iterdir()] == ["site"]
+    finally:
+        for path in (Path(home), *Path(home).rglob("*")):
+            path.chmod(0o755)
+        shutil.rmtree(home)

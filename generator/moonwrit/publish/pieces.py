@@ -11,6 +11,7 @@ import os
 import signal
 import sys
 import warnings
+import zlib
 from collections.abc import Callable, Container, Iterator, Mapping, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass
@@ -30,8 +31,8 @@ _WORTH_IT = 200
 """So many pieces are made sooner by several processes than by one."""
 _SHARES = 12
 """Runs of pieces for each process, so that all end at about the same time."""
-_SITES = 40
-"""Sites of which a note is kept."""
+_SITES = 100
+"""Sites of which a note is kept: up to 2 MB each."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -166,13 +167,14 @@ class Before(Mapping[str, bytes]):
         if output is None:
             return
         try:
-            program, files = json.loads(cache.recalled("sites", os.path.abspath(output)) or '["", {}]')
+            note = cache.recalled("sites", os.path.abspath(output))
+            program, files = json.loads(zlib.decompress(note)) if note else ("", {})
             if program == self._program:
                 self._files = {
                     path: ((ino, size, at), [(bytes.fromhex(key), length) for key, length in parts])
                     for path, ((ino, size, at), parts) in files.items()
                 }
-        except (ValueError, TypeError, AttributeError):
+        except (ValueError, TypeError, AttributeError, zlib.error):
             self._files = {}
 
     def kept(self, files: Files) -> dict[str, Stamp]:
@@ -234,7 +236,12 @@ class Before(Mapping[str, bytes]):
             for path, parts in files.items()
         }
         text = json.dumps([self._program, noted], separators=(",", ":"))
-        cache.keep("sites", os.path.abspath(output), text.encode(), most=_SITES)
+        cache.keep("sites", os.path.abspath(output), zlib.compress(text.encode(), 1), most=_SITES)
+
+
+def forget(output: Path) -> None:
+    """Drop the note of a folder that goes away."""
+    cache.drop("sites", os.path.abspath(output))
 
 
 def _program_digest(theme: Path | None) -> str:
@@ -247,4 +254,4 @@ def _program_digest(theme: Path | None) -> str:
     return found.hexdigest()
 
 
-__all__ = ["Before", "Files", "Parts", "Piece", "Pieces", "joined", "made", "plain"]
+__all__ = ["Before", "Files", "Parts", "Piece", "Pieces", "forget", "joined", "made", "plain"]

@@ -108,6 +108,11 @@ def _settle(output: Path, new: Path, old: Path) -> None:
         os.replace(old, output)
     for aside in (new, old):
         shutil.rmtree(aside, ignore_errors=True)
+        if aside.is_dir():  # its folders were made read-only
+            for folder, _, _ in os.walk(aside):
+                with suppress(OSError):
+                    os.chmod(folder, 0o700)
+            shutil.rmtree(aside, ignore_errors=True)
 
 
 def _refuse_what_is_not_ours(output: Path) -> None:
