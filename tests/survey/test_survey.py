@@ -366,6 +366,27 @@ def test_what_cannot_be_asked(tmp_path: Path, words: list[str], message: str) ->
     assert not (tmp_path / "out" / "survey.json").exists()
 
 
+@pytest.mark.parametrize(("one", "other"), [
+    ("where: {shares_night_with: wattle-harbour}", "where: {shares_night_with: lantern-harbour}"),
+    ("where: {place: wattle-harbour}", "where: {place: lantern-harbour}"),
+    ("where: {anywhere: earth, before: {hour_ut: 12}}", "where: {anywhere: earth, before: {hour_ut: 13}}"),
+])
+def test_units_are_those_of_what_is_asked(content: Path, tmp_path: Path, one: str, other: str) -> None:
+    """Expected: policies that ask otherwise have other digests, whatever words they have for it; another title for the
+    same question has the same digest."""
+    def digest(where: str, title: str = "Trial") -> str:
+        folder = tmp_path / f"{len(list(tmp_path.iterdir()))}"
+        shutil.copytree(content, folder)
+        with (folder / "policies.yaml").open("a", encoding="utf-8") as file:
+            file.write(f"\ntrial:\n  name: {title}\n  decided_by: calculation\n"
+                       f"  test: {{criterion: yallop-1997, accept: [A]}}\n  {where}\n")
+        asked = plan(("trial",), [], 30.0, 1440, 1441, "", folder)
+        return str(asked.as_json()["policies"][0]["digest"])
+
+    assert digest(one) != digest(other)
+    assert digest(one) == digest(one, "Another title")
+
+
 def test_a_folder_of_something_else_is_refused(tmp_path: Path) -> None:
     """Neither foreign files nor another survey's are mixed with these."""
     (tmp_path / "foreign").mkdir()

@@ -9,7 +9,7 @@ from moonwrit.policy.conditions import Condition, Every, Scoped
 from moonwrit.policy.scopes import MAX_LATITUDE_DEG, Anywhere, AtPlaces, Before, Scope, Within
 from moonwrit.publish import labels, words
 from moonwrit.publish.language import Language
-from moonwrit.sky.comparison import All, Any, Comparison, Rule
+from moonwrit.sky.comparison import All, Any, Comparison, Rule, clock
 
 
 def asked_in_words(method: Method, language: Language) -> str:
@@ -108,7 +108,7 @@ def _places(scope: AtPlaces, language: Language) -> str:
 def _before(before: Before, language: Language) -> str:
     _ = language.gettext
     if before.hour_ut is not None:
-        return _("before %(hour)s:00 UT of the date") % {"hour": language.number(before.hour_ut)}
+        return _("before %(time)s UT of the date") % {"time": language.digits(clock(before.hour_ut))}
     return _("before the dawn there (Sun %(degrees)s° below the horizon)") % {
         "degrees": language.number(before.depression_deg)}
 

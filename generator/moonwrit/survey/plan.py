@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from functools import cached_property, lru_cache
-from hashlib import sha256
 from pathlib import Path
 from typing import Any, NamedTuple
 from zoneinfo import ZoneInfo
@@ -14,6 +13,7 @@ from moonwrit import __version__
 from moonwrit.calendars import TABULAR_NAMES
 from moonwrit.content import Content, load
 from moonwrit.content.models import zone_named
+from moonwrit.digests import Digests
 from moonwrit.errors import RequestError
 from moonwrit.policy import Method, NamedPlace, method, named_place
 from moonwrit.policy.conditions import point_name
@@ -139,7 +139,7 @@ class Plan:
             "moonwrit": __version__,
             "policies": [
                 {"name": name, "title": self.method(name).title, "source": self.method(name).source,
-                 "at_each_place": self.leaves_place_open(name), "digest": _digest(self.method(name))}
+                 "at_each_place": self.leaves_place_open(name), "digest": Digests().of(_asked(self.method(name))).hex()}
                 for name in self.policies
             ],
             "grid_deg": self.grid_deg,
@@ -219,8 +219,6 @@ def _method(folder: Path | None, name: str) -> Method:
     return method(name, None if folder is None else _content(folder), _SOMEWHERE)
 
 
-def _digest(policy: Method) -> str:
-    """Changes with whatever the policy asks."""
-    table = sorted(policy.table.items()) if policy.table else ""
-    parts = [policy.in_words, str(table), *map(_digest, policy.adopts)]
-    return sha256("\n".join(parts).encode()).hexdigest()[:16]
+def _asked(policy: Method) -> object:
+    """All of a policy on which its months depend."""
+    return policy.eras, policy.tabular, policy.table, tuple(_asked(one) for one in policy.adopts)
