@@ -15,8 +15,8 @@ import pytest
 
 from demonstration import Desk, desk_of_one_year
 from moonwrit.building import assembled, content_of, held
+from moonwrit.digests import Digests
 from moonwrit.publish import pieces, site
-from moonwrit.publish.digests import Digests
 from moonwrit.publish.render import Later
 from moonwrit.publish.writing import MARKER
 

@@ -23,7 +23,7 @@ from threading import current_thread, main_thread
 from typing import Any
 
 from moonwrit import cache
-from moonwrit.publish.digests import SIZE, Digests
+from moonwrit.digests import SIZE, Digests
 from moonwrit.publish.writing import ChangedMeanwhileError, Stamp, stamp
 from moonwrit.resources import program_files
 
