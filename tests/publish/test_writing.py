@@ -100,7 +100,7 @@ def test_a_build_stopped_at_any_step_leaves_a_whole_site_and_the_next_completes(
         put_in_place(NEW, folder / "site")
         assert site(folder / "site") == NEW
         assert [path.name for path in folder.iterdir()] == ["site"], "nothing is left beside the site"
-    assert left == sorted(left, reverse=True), "no build stopped up to some step puts the new site in place, and all others do"
+    assert left == sorted(left, reverse=True), "up to some step no new site is in place, and then it always is"
     assert left[0]
 
 
