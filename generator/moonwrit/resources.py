@@ -22,7 +22,7 @@ def program_files(own_theme: Path | None) -> list[Path]:
     folders = [_PACKAGE, themes_folder(), *([own_theme] if own_theme else [])]
     return [
         file for folder in folders for file in sorted(folder.rglob("*"))
-        if file.is_file() and "__pycache__" not in file.parts
+        if file.is_file() and file.suffix != ".pyc"
     ]
 
 
