@@ -79,14 +79,15 @@ def held(content: Content, folder: Path, almanacs: Sequence[Almanac], as_of: dat
 
 def publish(
     folder: Path, output: Path, as_of: date | None, paper: Paper | None = None,
-    progress: Progress = lambda _: nullcontext(), processes: int = 1,
+    progress: Progress = lambda _: nullcontext(), processes: int = 1, note: Callable[[str], None] = lambda _: None,
 ) -> int:
     """Build the site of a content folder, put it in place, and write down what was published; the number of files.
 
-    ``paper``: with PDF sheets of that size. ``processes``: how many of this machine may make pages. A replay
-    (``as_of``) leaves the journal alone. Raises MoonwritError, and then nothing has changed.
+    ``paper``: with PDF sheets of that size. ``processes``: how many of this machine may make pages. ``note`` is told
+    what the officer should know. A replay (``as_of``) leaves the record alone. Raises MoonwritError, and then nothing
+    has changed.
     """
-    from moonwrit import journal
+    from moonwrit import clocks, journal
     from moonwrit.publish.site import publish as put
     from moonwrit.publish.writing import MARKER
 
@@ -104,6 +105,10 @@ def publish(
         files = put(almanacs, told, output, paper, content.own, processes)
     if as_of is None:
         journal.append(folder, ledger.added)
+        then, now_told = clocks.read(folder), clocks.clocks(almanacs)
+        for said in clocks.notes(then, now_told):
+            note(said)
+        clocks.keep(folder, then, now_told)
     return files
 
 
@@ -152,10 +157,11 @@ def _outcome(folder: Path, output: Path, as_of: date | None, paper: Paper | None
     if epoch is not None:
         os.environ["SOURCE_DATE_EPOCH"] = epoch
     try:
-        files = publish(folder, output / folder.name, as_of, paper)
+        notes: list[str] = []
+        files = publish(folder, output / folder.name, as_of, paper, note=notes.append)
     except MoonwritError as fault:
         return Outcome(folder, str(fault), fault.exit_code)
-    return Outcome(folder, f"{files} files in {output / folder.name}", 0)
+    return Outcome(folder, "; ".join([f"{files} files in {output / folder.name}", *notes]), 0)
 
 
 __all__ = ["Outcome", "assembled", "content_of", "end_of", "held", "now", "publish", "publish_many", "today", "zone"]

@@ -37,7 +37,10 @@ def publish(
     from moonwrit.building import publish_many
 
     if len(folders) == 1:
-        click.echo(f"{build(folders[0], output, as_of, paper, progress, workers)} files in {output}")
+        files = build(
+            folders[0], output, as_of, paper, progress, workers, lambda said: click.echo(f"note: {said}", err=True)
+        )
+        click.echo(f"{files} files in {output}")
         return
     worst = 0
     for outcome in publish_many(folders, output, as_of, paper, workers, scheduler):

@@ -24,7 +24,7 @@ def vtimezone(zone: ZoneInfo, first_year: int, last_year: int) -> Timezone:
     out.add("tzid", zone.key)
     before = first.astimezone(zone)
     out.add_component(_observance(before.replace(tzinfo=None), before, before))
-    for moment in _changes(zone, first, last):
+    for moment in changes(zone, first, last):
         earlier, after = (moment - _HOUR).astimezone(zone), moment.astimezone(zone)
         offset = earlier.utcoffset() or timedelta(0)
         # The onset is told by the clock as it was (RFC 5545, 3.6.5).
@@ -32,7 +32,7 @@ def vtimezone(zone: ZoneInfo, first_year: int, last_year: int) -> Timezone:
     return out
 
 
-def _changes(zone: ZoneInfo, first: datetime, last: datetime) -> Iterator[datetime]:
+def changes(zone: ZoneInfo, first: datetime, last: datetime) -> Iterator[datetime]:
     """The first minute (UTC) of each other offset or name; found day by day, and then by halving."""
     day = first
     while day < last:
@@ -60,4 +60,4 @@ def _observance(onset: datetime, before: datetime, after: datetime) -> TimezoneS
     return made
 
 
-__all__ = ["vtimezone"]
+__all__ = ["changes", "vtimezone"]
