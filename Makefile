@@ -4,6 +4,7 @@
 #   make test        style, types, layers, tests
 #   make judges      the programs that the tests are held against, where the machine lacks them
 #   make fuzz        hostile input for SECONDS=300, guided by coverage; installs atheris
+#   make kills       builds killed at COUNT=200 random moments
 #   make mutants     do the tests notice a change? SAMPLE=50 of them, of FILE=generator/moonwrit/...py, against TESTS
 #   make benchmarks  tests/benchmarks/, alone on the machine
 #   make catalogues  the texts of theme and code brought into the message catalogues
@@ -14,7 +15,7 @@ PYTHON ?= python3
 BIN := .venv/bin
 READY := .venv/.ready
 
-.PHONY: site test judges fuzz mutants benchmarks catalogues lock clean
+.PHONY: site test judges fuzz kills mutants benchmarks catalogues lock clean
 
 site: $(READY)
 	$(BIN)/moonwrit publish
@@ -37,6 +38,10 @@ fuzz: $(READY)
 SAMPLE ?= 50
 mutants: $(READY)
 	$(BIN)/python tests/mutants.py $(FILE) $(SAMPLE) $(TESTS)
+
+COUNT ?= 200
+kills: $(READY)
+	$(BIN)/python tests/fuzz/killed.py $(COUNT)
 
 benchmarks: $(READY)
 	$(BIN)/python tests/benchmarks/run.py
