@@ -28,6 +28,7 @@ from hypothesis import example, given, settings
 from hypothesis import strategies as st
 from pydantic import TypeAdapter, ValidationError
 
+from blotted import shape
 from demonstration import one_language
 from moonwrit import journal
 from moonwrit.building import assembled, content_of, held
@@ -201,15 +202,6 @@ def test_no_line_is_added_to_a_calendar_feed(sites: dict[str, dict[str, bytes]])
     assert titles
     assert all(title.startswith(mark(eid) + HARM) for title in titles)
     assert mark(place) + HARM in values("feeds/evenings.ics", "location")
-
-
-def shape(value: Any) -> Any:
-    """A JSON value with every text blotted out."""
-    if isinstance(value, dict):
-        return {key: shape(below) for key, below in value.items()}
-    if isinstance(value, list):
-        return [shape(below) for below in value]
-    return "" if isinstance(value, str) else value
 
 
 def test_json_and_atom_keep_their_structure(sites: dict[str, dict[str, bytes]]) -> None:

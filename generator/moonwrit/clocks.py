@@ -7,7 +7,6 @@ kept beside the journal, so that a build can tell. Leap seconds change nothing: 
 
 from __future__ import annotations
 
-import os
 from collections.abc import Iterable, Mapping, Sequence
 from datetime import UTC, datetime, timedelta
 from pathlib import Path
@@ -16,6 +15,7 @@ from pydantic import AwareDatetime, BaseModel, ConfigDict, TypeAdapter, Validati
 
 from moonwrit.almanac import Almanac
 from moonwrit.errors import ContentError
+from moonwrit.files import put
 from moonwrit.publish.timezones import changes
 
 FILE = "record/clocks.json"
@@ -108,10 +108,7 @@ def keep(folder: Path, before: Clocks, after: Clocks) -> None:
     file = folder / FILE
     rows: Sequence[str] = [f'"{name}":{clock.model_dump_json()}' for name, clock in after.items()]
     try:
-        file.parent.mkdir(parents=True, exist_ok=True)
-        aside = file.with_name(".clocks.new")
-        aside.write_text("{\n" + ",\n".join(rows) + "\n}\n", encoding="utf-8", newline="\n")
-        os.replace(aside, file)
+        put(file, ("{\n" + ",\n".join(rows) + "\n}\n").encode())
     except OSError as fault:
         raise ContentError(file, 0, f"the clocks cannot be written ({fault.strerror})", "mend its folder") from None
 

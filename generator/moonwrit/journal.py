@@ -9,7 +9,6 @@ from two copies: their lines merge, and a key that both changed differently is r
 from __future__ import annotations
 
 import json
-import os
 import re
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import asdict, dataclass, replace
@@ -23,6 +22,7 @@ from moonwrit.almanac import Almanac
 from moonwrit.content.models import Text
 from moonwrit.content.record import Amendment, Decision
 from moonwrit.errors import ContentError, MoonwritError
+from moonwrit.files import put
 from moonwrit.policy import Month
 
 FILE = "record/journal.jsonl"
@@ -163,16 +163,10 @@ def append(folder: Path, added: Sequence[Entry]) -> None:
         return
     file = folder / FILE
     try:
-        file.parent.mkdir(exist_ok=True)
         before = file.read_bytes() if file.exists() else b""
         whole = before[: before.rfind(b"\n") + 1]
         text = "".join(_line(entry) + "\n" for entry in added).encode()
-        aside = file.with_name(".journal.new")
-        with aside.open("wb") as stream:
-            stream.write(whole + text)
-            stream.flush()
-            os.fsync(stream.fileno())
-        os.replace(aside, file)
+        put(file, whole + text)
     except OSError as fault:
         raise ContentError(file, 0, f"the journal cannot be written ({fault.strerror})", "mend its folder") from None
 

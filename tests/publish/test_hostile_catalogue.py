@@ -8,13 +8,13 @@ import time
 from collections.abc import Callable, Iterator
 from html.parser import HTMLParser
 from pathlib import Path
-from typing import Any
 from xml.etree import ElementTree as ET
 
 import pytest
 from babel.messages.catalog import Catalog
 from babel.messages.pofile import read_po, write_po
 
+from blotted import shape
 from demonstration import desk_of_one_year
 from moonwrit.errors import ContentError
 from moonwrit.publish import catalogue
@@ -78,15 +78,6 @@ class Tags(HTMLParser):
 
     def handle_comment(self, data: str) -> None:
         self.found.append("<!--")
-
-
-def shape(value: Any) -> Any:
-    """A JSON value with every text blotted out."""
-    if isinstance(value, dict):
-        return {key: shape(below) for key, below in value.items()}
-    if isinstance(value, list):
-        return [shape(below) for below in value]
-    return "" if isinstance(value, str) else value
 
 
 READ: dict[str, Callable[[str], object]] = {

@@ -29,6 +29,7 @@ from xml.etree.ElementTree import Element
 from moonwrit.content.look import Logo, Look
 from moonwrit.content.models import _IDENTIFIER, Observance, Site
 from moonwrit.errors import ContentError, did_you_mean
+from moonwrit.files import utf8
 from moonwrit.resources import themes_folder
 
 MAX_BYTES = 256 * 1024
@@ -194,11 +195,7 @@ def _text_of(file: Path) -> str:
         data = stream.read(MAX_BYTES + 1)
     if len(data) > MAX_BYTES:
         raise ContentError(file, 0, f"the text is larger than {MAX_BYTES // 1024} kB", "split or shorten it")
-    try:
-        return data.decode("utf-8-sig").replace("\r\n", "\n")
-    except UnicodeDecodeError as error:
-        line = data.count(b"\n", 0, error.start) + 1
-        raise ContentError(file, line, "a character is not UTF-8", "save the file as UTF-8") from None
+    return utf8(data, file)
 
 
 def _named(file: Path, site: Site) -> tuple[str, str]:

@@ -18,6 +18,7 @@ from typing import Any
 import yaml
 
 from moonwrit.errors import ContentError
+from moonwrit.files import utf8
 
 MAX_BYTES = 2 * 1024 * 1024
 MAX_DEPTH = 40
@@ -97,11 +98,7 @@ def parse(data: bytes, file: Path, empty: Any = None) -> Document:
     """Read YAML from ``data``, as ``read`` does; ``file`` is the name that errors give."""
     if len(data) > MAX_BYTES:
         raise ContentError(file, 0, "the file is larger than 2 MB", "split or shorten it")
-    try:
-        text = data.decode("utf-8-sig").replace("\r\n", "\n")
-    except UnicodeDecodeError as error:
-        line = data.count(b"\n", 0, error.start) + 1
-        raise ContentError(file, line, "a character is not UTF-8", "save the file as UTF-8") from None
+    text = utf8(data, file)
     if refused := _REFUSED.search(text):
         line = text.count("\n", 0, refused.start()) + 1
         if refused.group() == "\t":

@@ -2,12 +2,12 @@
 
 from __future__ import annotations
 
-import json
 from collections.abc import Sequence
 from dataclasses import asdict
 from datetime import datetime
 from typing import TYPE_CHECKING, Any
 
+from moonwrit.files import json_bytes
 from moonwrit.policy.months import Finding, Margin, Month
 
 if TYPE_CHECKING:
@@ -89,8 +89,3 @@ def basis_feed(site: Site, calendar: str, method: Method, months: Sequence[Month
         "policy": {"name": method.name, "title": method.title, "source": method.source, "note": method.note},
         "months": [month_json(month) for month in months],
     })
-
-
-def json_bytes(value: Any) -> bytes:
-    """Readable JSON in UTF-8, a line feed at its end."""
-    return (json.dumps(value, ensure_ascii=False, indent=1, allow_nan=False) + "\n").encode()

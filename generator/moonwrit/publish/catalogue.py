@@ -19,6 +19,7 @@ from babel.messages.mofile import write_mo
 from babel.messages.pofile import PoFileError, read_po
 
 from moonwrit.errors import ContentError
+from moonwrit.files import utf8
 from moonwrit.resources import themes_folder
 
 SOURCE = "en"
@@ -81,8 +82,8 @@ def read(file: Path) -> Catalog:
         data = stream.read(MAX_BYTES + 1)
     if len(data) > MAX_BYTES:
         raise ContentError(file, 0, f"the catalogue is larger than {MAX_BYTES // 1024 // 1024} MB", "shorten it")
+    head = _JOINED.sub("", utf8(data, file))
     try:
-        head = _JOINED.sub("", data.decode("utf-8"))
         if any(int(number) > MAX_FORMS for number in _FORMS.findall(head)):
             raise ValueError(f"more than {MAX_FORMS} plural forms")
         if others := {name for name in _CHARSET.findall(head) if name.lower() != "utf-8"}:
@@ -90,9 +91,6 @@ def read(file: Path) -> Catalog:
         catalogue = read_po(BytesIO(data), locale=file.stem.replace("-", "_"), charset="utf-8", abort_invalid=True)
         form_of = c2py(catalogue.plural_expr)
         forms = [form_of(number) for number in range(1000)]
-    except UnicodeDecodeError as fault:
-        line = data.count(b"\n", 0, fault.start) + 1
-        raise ContentError(file, line, "a character is not UTF-8", "save the file as UTF-8") from None
     except PoFileError as fault:
         mend = "look at the quotes here"
         raise ContentError(file, fault.lineno + 1, f"this is no catalogue ({fault})", mend) from None

@@ -6,11 +6,12 @@ from collections.abc import Sequence
 from datetime import datetime, timedelta
 from typing import Any
 
+from moonwrit.files import json_bytes
 from moonwrit.journal import month_key
 from moonwrit.observances import Occurrence
 from moonwrit.policy import Month
 from moonwrit.publish import words
-from moonwrit.publish.basis import VERSION, json_bytes, utc
+from moonwrit.publish.basis import VERSION, utc
 from moonwrit.publish.edition import Edition, Imprint
 from moonwrit.publish.pieces import Parts
 

@@ -6,11 +6,12 @@ from datetime import datetime
 from typing import Any
 
 from moonwrit import __version__
+from moonwrit.files import json_bytes
 from moonwrit.journal import Entry
 from moonwrit.observances import Occurrence
 from moonwrit.policy import Month
 from moonwrit.publish import words
-from moonwrit.publish.basis import json_bytes, utc
+from moonwrit.publish.basis import utc
 from moonwrit.publish.edition import Edition, Imprint
 from moonwrit.publish.icalendar import was_sentence
 from moonwrit.publish.pieces import Parts, plain

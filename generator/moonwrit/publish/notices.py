@@ -9,9 +9,10 @@ from xml.etree import ElementTree as ET
 
 from moonwrit import __version__
 from moonwrit.content.record import Decision
+from moonwrit.files import json_bytes
 from moonwrit.policy import Month
 from moonwrit.publish import words
-from moonwrit.publish.basis import json_bytes, utc
+from moonwrit.publish.basis import utc
 from moonwrit.publish.edition import Edition, Imprint, month_path
 from moonwrit.publish.language import Language
 from moonwrit.publish.own import own_notices

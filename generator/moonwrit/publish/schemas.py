@@ -7,7 +7,8 @@ from __future__ import annotations
 
 from typing import Any
 
-from moonwrit.publish.basis import VERSION, json_bytes
+from moonwrit.files import json_bytes
+from moonwrit.publish.basis import VERSION
 
 _TEXT = {"type": "string"}
 _DATE = {"type": "string", "format": "date", "pattern": r"^\d{4}-\d{2}-\d{2}$"}

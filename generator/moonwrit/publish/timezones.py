@@ -6,7 +6,6 @@ single changes are read alike by every client that was tried.
 
 from __future__ import annotations
 
-from collections.abc import Iterator
 from datetime import UTC, datetime, timedelta
 from functools import cache
 from zoneinfo import ZoneInfo
@@ -32,9 +31,10 @@ def vtimezone(zone: ZoneInfo, first_year: int, last_year: int) -> Timezone:
     return out
 
 
-def changes(zone: ZoneInfo, first: datetime, last: datetime) -> Iterator[datetime]:
+@cache
+def changes(zone: ZoneInfo, first: datetime, last: datetime) -> tuple[datetime, ...]:
     """The first minute (UTC) of each other offset or name; found day by day, and then by halving."""
-    day = first
+    day, found = first, []
     while day < last:
         end = min(day + timedelta(days=1), last)
         if _told(zone, day) != _told(zone, end):
@@ -42,8 +42,9 @@ def changes(zone: ZoneInfo, first: datetime, last: datetime) -> Iterator[datetim
             while high - low > timedelta(minutes=1):
                 middle = low + (high - low) / 2
                 low, high = (low, middle) if _told(zone, middle) != _told(zone, low) else (middle, high)
-            yield high.replace(second=0, microsecond=0)  # clocks change at whole minutes
+            found.append(high.replace(second=0, microsecond=0))  # clocks change at whole minutes
         day = end
+    return tuple(found)
 
 
 def _told(zone: ZoneInfo, moment: datetime) -> tuple[timedelta | None, str | None]:

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import os
 from collections.abc import Mapping
 from pathlib import Path
 from typing import Any, TypeVar
@@ -15,6 +14,7 @@ from moonwrit.content.faults import validated
 from moonwrit.content.record import Decision, Report
 from moonwrit.content.yaml import Document, parse
 from moonwrit.errors import RequestError, did_you_mean
+from moonwrit.files import put
 
 _HEADS = {
     "reports.yaml": "# Reports of observers, one entry each; entries are only ever added.\n",
@@ -48,11 +48,8 @@ def append(file: Path, entry: Mapping[str, Any]) -> None:
     The file is replaced in one step. Raises RequestError where it cannot be written.
     """
     text = _with(file, entry)
-    aside = file.with_name(f".{file.name}.new")
     try:
-        file.parent.mkdir(parents=True, exist_ok=True)
-        aside.write_text(text, encoding="utf-8")
-        os.replace(aside, file)
+        put(file, text.encode())
     except OSError as fault:
         raise RequestError(f"{file} cannot be written ({fault})", "free space, or mend its permissions") from None
 

@@ -11,9 +11,10 @@ from itertools import combinations
 from pathlib import Path
 
 from moonwrit.errors import RequestError
+from moonwrit.files import json_bytes
 from moonwrit.survey.part import PAIR_SUMS, POLICY_SUMS, AtPlace, Part, cell_deg, gathered
 from moonwrit.survey.plan import Plan
-from moonwrit.survey.running import in_order, json_bytes, write
+from moonwrit.survey.running import in_order, write
 from moonwrit.survey.schema import TABLES, Row, schema
 from moonwrit.survey.unit import CLOSENESSES
 

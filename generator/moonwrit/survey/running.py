@@ -17,6 +17,7 @@ from typing import TypeVar
 
 from moonwrit.cluster import connected
 from moonwrit.errors import RequestError
+from moonwrit.files import json_bytes
 from moonwrit.survey.plan import Plan, Unit
 from moonwrit.survey.unit import computed
 
@@ -79,11 +80,6 @@ def write(path: Path, data: bytes) -> None:
     except OSError as fault:
         raise RequestError(f"{path} cannot be written ({fault.strerror or fault})",
                            "free space, or name another folder with --output; what is finished is kept") from None
-
-
-def json_bytes(value: object) -> bytes:
-    """Readable JSON in UTF-8, a line feed at its end."""
-    return (json.dumps(value, ensure_ascii=False, indent=1, allow_nan=False) + "\n").encode()
 
 
 def _here(plan: Plan, todo: list[Unit], workers: int) -> Finished:
