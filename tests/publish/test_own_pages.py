@@ -203,7 +203,7 @@ def test_pages_in_colours_of_ones_own_are_accessible(site: Path, node: Callable[
     assert [look for look in found if look["violations"] or look["faults"] or look["wider"] > 0] == []
 
 
-@pytest.mark.judge("chromium")
+@pytest.mark.judge("playwright")
 def test_the_chosen_colours_are_those_that_a_browser_shows(
     site: Path, node: Callable[..., Any], chromium: str, tmp_path: Path
 ) -> None:
